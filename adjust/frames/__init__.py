@@ -1,0 +1,8 @@
+"""Frames: the plane and the ellipsoid, coordinates ↔ geometry."""
+
+from adjust.frames.base import Frame, Sight
+from adjust.frames.geoid import GeoidGrid
+from adjust.frames.geometry import Geometry
+from adjust.frames.plane import PlaneFrame
+
+__all__ = ["Frame", "GeoidGrid", "Geometry", "PlaneFrame", "Sight"]

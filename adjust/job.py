@@ -1,0 +1,96 @@
+"""A job as read from the field: marks, observations of every kind, and what the job file says of them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from enum import IntEnum
+from functools import cached_property
+from typing import Literal
+
+from adjust.arrays import FloatArray, IntArray
+from adjust.frames import Frame, GeoidGrid
+from adjust.observations import Observations, Provenance
+
+
+class Control(IntEnum):
+    """How a mark's given coordinates count."""
+
+    FREE = 0
+    """Only a start, if given at all."""
+    WEIGHTED = 1
+    """An observation with the sd given."""
+    FIXED = 2
+    """Not an unknown."""
+
+
+@dataclass(frozen=True)
+class Marks:
+    """The marks of a job in the order of `marks.csv`; arrays have one row for each mark.
+
+    `given` (n, 3) holds the frame's coordinates, NaN where none were given: easting, northing, height in a plane
+    frame; longitude, latitude (radians) and height in an ellipsoid frame, the height in the job's own height system.
+    `control` (n, 2) holds a `Control` for plan and for height. `sd` (n, 3) is metres
+    along the grid's east, north and up, NaN where none is stated. `geoid` (n,) is the geoid's height above the
+    ellipsoid, `deflection` (n, 2) the north and east components, astronomic minus geodetic, radians; 0 where unknown.
+    """
+
+    names: tuple[str, ...]
+    given: FloatArray
+    control: IntArray
+    sd: FloatArray
+    geoid: FloatArray
+    deflection: FloatArray
+    descriptions: tuple[str, ...]
+    provenance: Provenance
+
+    def __len__(self) -> int:
+        return len(self.names)
+
+    @cached_property
+    def index(self) -> dict[str, int]:
+        """Row of each mark by its name."""
+        return {name: row for row, name in enumerate(self.names)}
+
+
+@dataclass(frozen=True)
+class Datum:
+    """What carries the datum: the control of `marks.csv`, or inner constraints over `marks` (indices; empty: all)."""
+
+    mode: Literal["control", "inner"] = "control"
+    marks: tuple[int, ...] = ()
+
+
+@dataclass(frozen=True)
+class Statistics:
+    """The test levels of a job. Defaults: common practice, no source; 0.001 and 0.80 as in Baarda (1968)."""
+
+    confidence: float = 0.95
+    significance: float = 0.001
+    power: float = 0.80
+    sd_basis: Literal["prior", "posterior"] = "prior"
+
+
+@dataclass(frozen=True)
+class Job:
+    """Everything one adjustment starts from. Nothing mutates it."""
+
+    title: str
+    frame: Frame
+    marks: Marks
+    observations: tuple[Observations, ...]
+    """One entry for each kind that has rows in use, in the order of the registry."""
+    setups: tuple[str, ...] = ()
+    """Names of the setups of directions; `Directions.setup` indexes them."""
+    date: str | None = None
+    datum: Datum = field(default_factory=Datum)
+    statistics: Statistics = field(default_factory=Statistics)
+    orthometric: bool = False
+    """What heights mean in an ellipsoid frame: above the geoid, or above the ellipsoid."""
+    geoid_grid: GeoidGrid | None = None
+    """Gives geoid heights at the marks' present positions, in place of `marks.geoid`."""
+    refraction_coefficient: float = 0.13
+    left_out: tuple[Observations, ...] = ()
+    """Rows with `use = no`: kept in the books, not adjusted."""
+    notes: tuple[str, ...] = ()
+    """What reading decided for the surveyor and has to be said in the listing."""
+    input_sha256: str = ""
