@@ -1,0 +1,42 @@
+"""Error ellipses from the covariance of two coordinates."""
+
+from __future__ import annotations
+
+from typing import NamedTuple
+
+import numpy as np
+
+from adjust.arrays import FloatArray
+
+
+class Ellipses(NamedTuple):
+    """Semi-axes in the unit of the coordinates, azimuth of the major axis in radians clockwise from north, [0, π)."""
+
+    semi_major: FloatArray
+    semi_minor: FloatArray
+    azimuth: FloatArray
+
+    def scaled(self, factor: float) -> Ellipses:
+        """The same ellipse with semi-axes `factor` times as long."""
+        return Ellipses(self.semi_major * factor, self.semi_minor * factor, self.azimuth)
+
+
+def standard_ellipse(covariance: FloatArray) -> Ellipses:
+    """Standard (1σ) ellipses of covariances (…, 2, 2) in the order east, north; arrays (…,) come back.
+
+    a² = (s_E² + s_N²)/2 + √(((s_N² − s_E²)/2)² + s_EN²), azimuth = ½ atan2(2 s_EN, s_N² − s_E²).
+    The minor axis comes from the determinant, b = √det / a: the difference of mean and root would lose every digit
+    of a long thin ellipse. Of a circle the azimuth is 0. NaN stays NaN. The azimuth of the difference of two marks
+    comes from the covariance of that difference.
+    Source: the eigenvalues of the covariance; Mikhail and Gracie (1981), Analysis and adjustment of survey
+    measurements, chapter on error ellipses (from memory).
+    """
+    east, north, cross = covariance[..., 0, 0], covariance[..., 1, 1], covariance[..., 0, 1]
+    major_square = (east + north) / 2 + np.hypot((north - east) / 2, cross)
+    semi_major = np.sqrt(major_square)
+    both = np.sqrt(east * north)
+    determinant = np.maximum((both - np.abs(cross)) * (both + np.abs(cross)), 0)
+    point = major_square == 0
+    semi_minor = np.where(point, 0, np.sqrt(determinant) / np.where(point, 1, semi_major))
+    azimuth = np.arctan2(2 * cross, north - east) / 2 % np.pi
+    return Ellipses(semi_major, np.minimum(semi_minor, semi_major), np.where(azimuth >= np.pi, 0, azimuth))
