@@ -5,7 +5,7 @@ Pure functions of arrays. Nothing here knows what was observed; lengths and angl
 
 from adjust.quality.accuracy import circle_radius, ellipse_factor, half_interval
 from adjust.quality.critical_values import chi_square_quantile, critical_tau, critical_w, non_centrality
-from adjust.quality.ellipse import Ellipses, standard_ellipse
+from adjust.quality.ellipse import Ellipse, standard_ellipse
 from adjust.quality.global_test import GlobalTest, global_test
 from adjust.quality.residuals import (
     LEAST_REDUNDANCY,
@@ -18,7 +18,7 @@ from adjust.quality.residuals import (
 
 __all__ = [
     "LEAST_REDUNDANCY",
-    "Ellipses",
+    "Ellipse",
     "GlobalTest",
     "checked_information",
     "chi_square_quantile",

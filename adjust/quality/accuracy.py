@@ -64,7 +64,8 @@ def circle_radius(
     """Radius (n,) of the circle about a mark that holds the true place with probability `confidence`.
 
     From standard semi-axes (n,), in their unit; 0 for a point, NaN for NaN. Exact to 1e-10 of the radius (measured in
-    the tests): the probability outside the circle is an integral over directions, solved for the radius by Newton's method.
+    the tests): the probability outside the circle, an integral over directions, is solved for the radius by Newton's
+    method.
     Source: the distribution of a quadratic form in two normal variates, Hoyt (1947), Probability functions for the
     modulus and angle of the normal complex variate, Bell System Technical Journal 26, pages 318–359; on the
     estimated σ₀ the bivariate t distribution takes its place (Kotz and Nadarajah 2004, Multivariate t distributions

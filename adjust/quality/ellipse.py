@@ -9,19 +9,19 @@ import numpy as np
 from adjust.arrays import FloatArray
 
 
-class Ellipses(NamedTuple):
-    """Semi-axes in the unit of the coordinates, azimuth of the major axis in radians clockwise from north, [0, π)."""
+class Ellipse(NamedTuple):
+    """One ellipse or many: semi-axes in the unit of the coordinates, azimuth of the major axis in radians clockwise from north, [0, π)."""
 
     semi_major: FloatArray
     semi_minor: FloatArray
     azimuth: FloatArray
 
-    def scaled(self, factor: float) -> Ellipses:
+    def scaled(self, factor: float) -> Ellipse:
         """The same ellipse with semi-axes `factor` times as long."""
-        return Ellipses(self.semi_major * factor, self.semi_minor * factor, self.azimuth)
+        return Ellipse(self.semi_major * factor, self.semi_minor * factor, self.azimuth)
 
 
-def standard_ellipse(covariance: FloatArray) -> Ellipses:
+def standard_ellipse(covariance: FloatArray) -> Ellipse:
     """Standard (1σ) ellipses of covariances (…, 2, 2) in the order east, north; arrays (…,) come back.
 
     a² = (s_E² + s_N²)/2 + √(((s_N² − s_E²)/2)² + s_EN²), azimuth = ½ atan2(2 s_EN, s_N² − s_E²).
@@ -39,4 +39,4 @@ def standard_ellipse(covariance: FloatArray) -> Ellipses:
     point = major_square == 0
     semi_minor = np.where(point, 0, np.sqrt(determinant) / np.where(point, 1, semi_major))
     azimuth = np.arctan2(2 * cross, north - east) / 2 % np.pi
-    return Ellipses(semi_major, np.minimum(semi_minor, semi_major), np.where(azimuth >= np.pi, 0, azimuth))
+    return Ellipse(semi_major, np.minimum(semi_minor, semi_major), np.where(azimuth >= np.pi, 0, azimuth))
