@@ -10,7 +10,10 @@ from adjust.arrays import FloatArray
 
 
 class Ellipse(NamedTuple):
-    """One ellipse or many: semi-axes in the unit of the coordinates, azimuth of the major axis in radians clockwise from north, [0, π)."""
+    """One ellipse or many: semi-axes in the unit of the coordinates, azimuth of the major axis in radians.
+
+    The azimuth runs clockwise from north, 0 ≤ azimuth < π.
+    """
 
     semi_major: FloatArray
     semi_minor: FloatArray
