@@ -56,7 +56,7 @@ class Frame(ABC):
 
     @abstractmethod
     def displacement(self, start: FloatArray, end: FloatArray) -> FloatArray:
-        """The metres east, north, up (n, 3) that lead from `start` to `end`, for displacements small beside the Earth."""
+        """The metres east, north, up (n, 3) that lead from `start` to `end`, for steps small beside the Earth."""
 
     @abstractmethod
     def grid_rotation(self, coordinates: FloatArray) -> FloatArray:

@@ -31,7 +31,7 @@ class Geometry:
         """Coordinates (n, 3) with heights above the ellipsoid (plane frame: as they are)."""
         if not self.orthometric:
             return self.coordinates
-        return self.coordinates + np.column_stack([np.zeros((len(self.geoid), 2)), self.geoid])
+        return _raised(self.coordinates, self.geoid)
 
     @property
     def levelled_heights(self) -> FloatArray:
@@ -49,4 +49,18 @@ class Geometry:
 
     def moved(self, corrections: FloatArray) -> Geometry:
         """The same marks after `corrections` (n, 3), metres east, north, up."""
-        return replace(self, coordinates=self.frame.moved(self.coordinates, corrections))
+        moved = self.frame.moved(self.spatial, corrections)
+        return replace(self, coordinates=_raised(moved, -self.geoid) if self.orthometric else moved)
+
+    def displacement(self, start: FloatArray, marks: IntArray) -> FloatArray:
+        """Metres east, north, up (rows, 3) from `start` (rows, 3), heights in the job's height system, to `marks`."""
+        if not self.orthometric:
+            return self.frame.displacement(start, self.coordinates[marks])
+        return self.frame.displacement(_raised(start, self.geoid[marks]), self.spatial[marks])
+
+
+def _raised(coordinates: FloatArray, by: FloatArray) -> FloatArray:
+    """Coordinates (n, 3) with `by` (n,) metres added to their heights."""
+    raised = coordinates.copy()
+    raised[:, 2] += by
+    return raised

@@ -1,9 +1,41 @@
 """Kinds of observation, one file each, and the registry that lists them."""
 
+from adjust.observations.angle import Angles
+from adjust.observations.azimuth import Azimuths
 from adjust.observations.base import Observations, Precision, Provenance
+from adjust.observations.control import ControlCoordinates
 from adjust.observations.direction import Directions
+from adjust.observations.height_difference import HeightDifferences
+from adjust.observations.horizontal_distance import HorizontalDistances
+from adjust.observations.slope_distance import SlopeDistances
+from adjust.observations.vector import Vectors
+from adjust.observations.zenith import ZenithAngles
 
-KINDS: tuple[type[Observations], ...] = (Directions,)
+KINDS: tuple[type[Observations], ...] = (
+    Directions,
+    Angles,
+    Azimuths,
+    SlopeDistances,
+    HorizontalDistances,
+    ZenithAngles,
+    HeightDifferences,
+    Vectors,
+    ControlCoordinates,
+)
 """Every kind, in the order in which results list them."""
 
-__all__ = ["KINDS", "Directions", "Observations", "Precision", "Provenance"]
+__all__ = [
+    "KINDS",
+    "Angles",
+    "Azimuths",
+    "ControlCoordinates",
+    "Directions",
+    "HeightDifferences",
+    "HorizontalDistances",
+    "Observations",
+    "Precision",
+    "Provenance",
+    "SlopeDistances",
+    "Vectors",
+    "ZenithAngles",
+]

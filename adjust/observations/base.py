@@ -82,6 +82,8 @@ class Observations(Columns, ABC):
     """The columns that name marks: `at`, `to`; or `at`, `from`, `to`; or `from`, `to`."""
     components: ClassVar[tuple[str, ...]] = ("",)
     unit: ClassVar[Literal["m", "rad"]]
+    full_circle: ClassVar[bool] = False
+    """Whether an angle runs round the whole circle, so that values a full turn apart are the same."""
     determines_plan: ClassVar[bool]
     """Whether it can fix a plan coordinate: it makes its marks' east and north unknowns."""
     determines_height: ClassVar[bool]
@@ -106,6 +108,10 @@ class Observations(Columns, ABC):
     @abstractmethod
     def differentiate(self, geometry: Geometry) -> FloatArray:
         """Derivatives (rows, components, roles, 3) by metres east, north and up at each mark of the row."""
+
+    def linearise(self, geometry: Geometry) -> tuple[FloatArray, FloatArray]:
+        """`predict` and `differentiate` at once; kinds for which that saves work share it."""
+        return self.predict(geometry), self.differentiate(geometry)
 
     @abstractmethod
     def covariance(self, geometry: Geometry) -> FloatArray:

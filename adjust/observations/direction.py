@@ -8,30 +8,30 @@ import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
 from adjust.frames import Geometry, Sight
-from adjust.observations.sighted import SightedObservations
+from adjust.observations.sighted import SingleSight
 
 
-def azimuth_of(sight: Sight) -> FloatArray:
-    """Azimuths atan2(e, n) (rows,), radians clockwise from north, −π … π."""
-    return np.arctan2(sight.enu[:, 0], sight.enu[:, 1])
+def azimuth_of(enu: FloatArray) -> FloatArray:
+    """Azimuths atan2(e, n) (rows,) of sights (rows, 3), radians clockwise from north, −π … π."""
+    return np.arctan2(enu[:, 0], enu[:, 1])
 
 
-def azimuth_derivatives(sight: Sight) -> FloatArray:
-    """Derivatives (rows, 2, 3) of atan2(e, n) by metres at the station and at the target."""
-    east, north = sight.enu[:, 0], sight.enu[:, 1]
+def azimuth_gradient(enu: FloatArray) -> FloatArray:
+    """Derivatives (rows, 3) of atan2(e, n) by e, n, u, rad/m: (n, −e, 0) / (e² + n²); NaN for a vertical sight."""
+    east, north = enu[:, 0], enu[:, 1]
     square = east**2 + north**2
-    outer = np.stack([north / square, -east / square, np.zeros_like(east)], axis=1)
-    return np.stack([np.einsum("rk,rkm->rm", outer, sight.by_at), np.einsum("rk,rkm->rm", outer, sight.by_to)], axis=1)
+    with np.errstate(invalid="ignore"):
+        return np.column_stack([north, -east, np.zeros_like(east)]) / square[:, None]
 
 
 @dataclass(frozen=True, kw_only=True)
-class Directions(SightedObservations):
+class Directions(SingleSight):
     """Directions, radians clockwise: azimuth at the station minus the orientation of the setup."""
 
     kind = "direction"
     table = "directions"
-    roles = ("at", "to")
     unit = "rad"
+    full_circle = True
     determines_plan = True
     determines_height = False
 
@@ -42,10 +42,14 @@ class Directions(SightedObservations):
         """Setup of each row; its orientation is the azimuth of the circle's zero."""
         return self.setup_index
 
-    def predict(self, geometry: Geometry) -> FloatArray:
-        """Azimuths in axes turned to the plumb line."""
-        return azimuth_of(geometry.sight(self.marks[:, 0], self.marks[:, 1], plumb=True))[:, None]
+    def sight(self, geometry: Geometry) -> Sight:
+        """Mark to mark, in axes turned to the plumb line."""
+        return geometry.sight(self.marks[:, 0], self.marks[:, 1], plumb=True)
 
-    def differentiate(self, geometry: Geometry) -> FloatArray:
-        """See `azimuth_derivatives`."""
-        return azimuth_derivatives(geometry.sight(self.marks[:, 0], self.marks[:, 1], plumb=True))[:, None]
+    def value(self, enu: FloatArray, geometry: Geometry) -> FloatArray:
+        """Azimuth, without the orientation."""
+        return azimuth_of(enu)
+
+    def gradient(self, enu: FloatArray, geometry: Geometry) -> FloatArray:
+        """See `azimuth_gradient`."""
+        return azimuth_gradient(enu)
