@@ -10,16 +10,18 @@ from adjust.arrays import FloatArray, IntArray
 
 
 @dataclass(frozen=True)
-class Sight:
-    """Lines of sight and how they change.
-
-    `enu` (rows, 3): the vector from instrument to target along east, north, up at the station, metres.
-    `by_at` and `by_to` (rows, 3, 3): its derivatives by metres east, north, up at the station and at the target mark.
-    """
+class Sight(ABC):
+    """Lines of sight, and how they change as their marks move."""
 
     enu: FloatArray
-    by_at: FloatArray
-    by_to: FloatArray
+    """(rows, 3): from instrument to target along east, north, up at the station, metres."""
+
+    @abstractmethod
+    def differentiate(self, gradient: FloatArray) -> FloatArray:
+        """Derivatives (rows, 2, 3) of a quantity by metres east, north, up at the station and at the target mark.
+
+        `gradient` (rows, 3) holds the quantity's derivatives by `enu`.
+        """
 
 
 class Frame(ABC):
@@ -42,8 +44,8 @@ class Frame(ABC):
     ) -> Sight:
         """Sights from `at` to `to` (rows,), instrument and target `heights` (rows, 2) above the marks, metres.
 
-        `deflection` (rows, 2), radians, north and east components at the station, turns the axes from the ellipsoid's
-        normal to the plumb line; None leaves them on the normal.
+        `deflection` (n, 2), radians, north and east components at the marks, turns a station's axes from the
+        ellipsoid's normal to the plumb line; None leaves them on the normal.
         """
 
     @abstractmethod

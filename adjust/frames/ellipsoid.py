@@ -9,6 +9,7 @@ import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
 from adjust.frames.base import Frame, Sight
+from adjust.frames.ellipsoid_sight import EllipsoidSight, astronomic_axes
 from adjust.frames.projection import MapProjection, read_crs
 from adjust.frames.reference_ellipsoid import ReferenceEllipsoid, Stations, local_axes
 
@@ -67,18 +68,21 @@ class EllipsoidFrame(Frame):
     ) -> Sight:
         """Sights in geocentric axes, turned to east, north, up at the station; see `Frame.sight`.
 
-        The axes turn as the station moves, and the sticks of instrument and target lean with their marks' normals;
-        both are in the derivatives (docs/methods-observations.md). Undefined at the poles, where there is no east.
+        Undefined at the poles, where there is no east.
         """
-        station, target = self.ellipsoid.stations(coordinates[at]), self.ellipsoid.stations(coordinates[to])
+        station, target = self.stations(coordinates, at), self.stations(coordinates, to)
         line = target.positions - station.positions
         line += heights[:, 1:] * target.axes[:, 2] - heights[:, :1] * station.axes[:, 2]
-        slant = np.zeros((len(at), 2)) if deflection is None else deflection
-        axes = _astronomic_axes(coordinates[at], slant) if np.any(slant) else station.axes
-        enu = np.einsum("rij,rj->ri", axes, line)
-        by_at = -_tip_motion(axes, station, heights[:, 0])
-        by_at[:, :, :2] += _turning(axes, station, slant, enu)
-        return Sight(enu, by_at, _tip_motion(axes, target, heights[:, 1]))
+        slant = np.zeros((len(at), 2)) if deflection is None else deflection[at]
+        axes = astronomic_axes(coordinates[at], slant) if np.any(slant) else station.axes
+        enu: FloatArray = np.einsum("rij,rj->ri", axes, line)
+        return EllipsoidSight(enu, axes, station, target, heights, slant)
+
+    def stations(self, coordinates: FloatArray, rows: IntArray) -> Stations:
+        """Positions, axes and radii of the marks in `rows`; each mark is worked out once where it has many rows."""
+        if len(rows) < len(coordinates):
+            return self.ellipsoid.stations(coordinates[rows])
+        return self.ellipsoid.stations(coordinates).take(rows)
 
     def level_distance(self, coordinates: FloatArray, at: IntArray, to: IntArray) -> tuple[FloatArray, FloatArray]:
         """Chord between the verticals at the marks' mean ellipsoidal height; see `Frame.level_distance`."""
@@ -146,41 +150,6 @@ class EllipsoidFrame(Frame):
         if self._projection is None:
             return np.full((len(grid), 2), np.nan)
         return self._projection.inverse(grid)
-
-
-def _astronomic_axes(station: FloatArray, deflection: FloatArray) -> FloatArray:
-    """Axes (rows, 3, 3) of the plumb line, from deflections (rows, 2): Φ = φ + ξ, Λ = λ + η / cos φ.
-
-    Torge & Müller (2012), *Geodesy*, section 6.7.2 (definition of the deflection's components ξ and η).
-    """
-    longitude, latitude = station[:, 0], station[:, 1]
-    return local_axes(longitude + deflection[:, 1] / np.cos(latitude), latitude + deflection[:, 0])
-
-
-def _tip_motion(axes: FloatArray, stations: Stations, heights: FloatArray) -> FloatArray:
-    """How a point `heights` (rows,) up a mark's normal moves along `axes`, by metres east, north, up of the mark.
-
-    (rows, 3, 3). The normal leans by 1 / radius for each metre, so that the tip runs ahead of the mark.
-    """
-    motion: FloatArray = np.matmul(axes, stations.axes.transpose(0, 2, 1))
-    motion[:, :, :2] *= (1.0 + heights[:, None] / stations.radii)[:, None, :]
-    return motion
-
-
-def _turning(axes: FloatArray, station: Stations, deflection: FloatArray, enu: FloatArray) -> FloatArray:
-    """Change (rows, 3, 2) of a fixed vector's components `enu` as its axes turn, by metres east, north of the station.
-
-    From the derivatives of R(Φ, Λ): ∂(e, n, u)/∂Φ = (0, −u, n), ∂(e, n, u)/∂Λ = (n sin Φ − u cos Φ, −e sin Φ, e cos Φ).
-    """
-    east, north, up = enu.T
-    sine, cosine = axes[:, 2, 2], axes[:, 1, 2]
-    by_latitude = np.column_stack([np.zeros_like(east), -up, north])
-    by_longitude = np.column_stack([north * sine - up * cosine, -east * sine, east * cosine])
-    geodetic_sine, geodetic_cosine = station.axes[:, 2, 2], station.axes[:, 1, 2]
-    longitude_by_latitude = deflection[:, 1] * geodetic_sine / geodetic_cosine**2
-    by_east = by_longitude / (station.radii[:, 0] * geodetic_cosine)[:, None]
-    by_north = (by_latitude + by_longitude * longitude_by_latitude[:, None]) / station.radii[:, 1:]
-    return np.stack([by_east, by_north], axis=2)
 
 
 def _with_heights(coordinates: FloatArray, height: float) -> FloatArray:

@@ -41,7 +41,7 @@ class Geometry:
     def sight(self, at: IntArray, to: IntArray, heights: FloatArray | None = None, *, plumb: bool = False) -> Sight:
         """Sights between marks; `plumb` turns the axes to the plumb line at the station. See `Frame.sight`."""
         above = np.zeros((len(at), 2)) if heights is None else heights
-        return self.frame.sight(self.spatial, at, to, above, self.deflection[at] if plumb else None)
+        return self.frame.sight(self.spatial, at, to, above, self.deflection if plumb else None)
 
     def level_distance(self, at: IntArray, to: IntArray) -> tuple[FloatArray, FloatArray]:
         """See `Frame.level_distance`."""

@@ -11,6 +11,15 @@ from adjust.frames.base import Frame, Sight
 
 
 @dataclass(frozen=True)
+class PlaneSight(Sight):
+    """Sights along axes that are the same everywhere."""
+
+    def differentiate(self, gradient: FloatArray) -> FloatArray:
+        """A step of the target lengthens the sight as it is, a step of the station shortens it."""
+        return np.stack([-gradient, gradient], axis=1)
+
+
+@dataclass(frozen=True)
 class PlaneFrame(Frame):
     """Rectangular coordinates; `earth_curvature` lets zenith angles allow for curvature and refraction."""
 
@@ -28,15 +37,15 @@ class PlaneFrame(Frame):
         """Differences of coordinates; a plane frame knows no deflection."""
         enu = coordinates[to] - coordinates[at]
         enu[:, 2] += heights[:, 1] - heights[:, 0]
-        unit = np.broadcast_to(np.eye(3), (len(at), 3, 3))
-        return Sight(enu, -unit, unit)
+        return PlaneSight(enu)
 
     def level_distance(self, coordinates: FloatArray, at: IntArray, to: IntArray) -> tuple[FloatArray, FloatArray]:
         """Plan distance √(ΔE² + ΔN²)."""
         difference = coordinates[to, :2] - coordinates[at, :2]
         distance = np.hypot(difference[:, 0], difference[:, 1])
         derivatives = np.zeros((len(at), 2, 3))
-        derivatives[:, 1, :2] = difference / distance[:, None]
+        with np.errstate(invalid="ignore"):
+            derivatives[:, 1, :2] = difference / distance[:, None]
         derivatives[:, 0] = -derivatives[:, 1]
         return distance, derivatives
 

@@ -7,11 +7,11 @@ from functools import cached_property
 
 import numpy as np
 
-from adjust.arrays import FloatArray
+from adjust.arrays import FloatArray, IntArray
 
-REDUCED_LATITUDE_STEPS = 3
-"""Bowring's iteration gains about five digits a step near the Earth's surface; three reach the last bit of a double
-between 10 km below and 10,000 km above the ellipsoid (docs/methods-observations.md has the figures)."""
+REDUCED_LATITUDE_STEPS = 2
+"""Bowring's iteration: one step leaves 1 µm near the Earth's surface and 0.2 m in orbit, two leave only rounding from
+1,000 km below the ellipsoid to 40,000 km above it (docs/methods-observations.md)."""
 
 
 def local_axes(longitude: FloatArray, latitude: FloatArray) -> FloatArray:
@@ -48,6 +48,10 @@ class Stations:
     axes: FloatArray
     radii: FloatArray
 
+    def take(self, rows: IntArray) -> Stations:
+        """The same for a choice of points (rows,), which may repeat."""
+        return Stations(*(np.take(column, rows, axis=0) for column in (self.positions, self.axes, self.radii)))
+
 
 @dataclass(frozen=True)
 class ReferenceEllipsoid:
@@ -67,18 +71,19 @@ class ReferenceEllipsoid:
         return self.flattening * (2.0 - self.flattening)
 
     def prime_vertical_radius(self, latitude: FloatArray) -> FloatArray:
-        """ν = a / √(1 − e² sin² φ), metres. Torge & Müller (2012), *Geodesy*, section 4.1.2."""
+        """ν = a / √(1 − e² sin² φ), metres. ICSM, *GDA2020 Technical Manual*, radii of curvature."""
         return self.semi_major / np.sqrt(1.0 - self.eccentricity_squared * np.sin(latitude) ** 2)
 
     def meridian_radius(self, latitude: FloatArray) -> FloatArray:
-        """ρ = a (1 − e²) / (1 − e² sin² φ)^{3/2}, metres. Torge & Müller (2012), *Geodesy*, section 4.1.2."""
+        """ρ = a (1 − e²) / (1 − e² sin² φ)^{3/2}, metres. ICSM, *GDA2020 Technical Manual*, radii of curvature."""
         square = 1.0 - self.eccentricity_squared * np.sin(latitude) ** 2
         return self.semi_major * (1.0 - self.eccentricity_squared) / (square * np.sqrt(square))
 
     def stations(self, coordinates: FloatArray) -> Stations:
         """Position, axes and radii at longitude, latitude (radians) and ellipsoidal height (n, 3).
 
-        X = (ν + h) cos φ cos λ, Y = (ν + h) cos φ sin λ, Z = (ν (1 − e²) + h) sin φ.
+        X = (ν + h) cos φ cos λ, Y = (ν + h) cos φ sin λ, Z = (ν (1 − e²) + h) sin φ: ICSM, *GDA2020
+        Technical Manual*, geographic to Cartesian conversion.
         """
         longitude, latitude, height = coordinates.T
         axes = local_axes(longitude, latitude)
@@ -96,7 +101,8 @@ class ReferenceEllipsoid:
         """Longitude, latitude (radians, −π … π) and height (n, 3) of geocentric X, Y, Z (n, 3), metres.
 
         Latitude by Bowring (1976), *Survey Review* 23 (181), iterated on the reduced latitude; height by Bowring
-        (1985), *Survey Review* 28 (218), which holds its precision from the equator to the poles.
+        (1985), *Survey Review* 28 (218), which keeps its precision from the equator to the poles (both from memory;
+        tested against PROJ).
         """
         x, y, z = geocentric.T
         from_axis = np.hypot(x, y)

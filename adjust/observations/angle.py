@@ -9,7 +9,7 @@ import numpy as np
 from adjust.arrays import FloatArray, IntArray
 from adjust.frames import Geometry, Sight
 from adjust.observations.direction import azimuth_gradient, azimuth_of
-from adjust.observations.sighted import SightedObservations, through_sight
+from adjust.observations.sighted import SightedObservations
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -35,7 +35,7 @@ class Angles(SightedObservations):
     def linearise(self, geometry: Geometry) -> tuple[FloatArray, FloatArray]:
         """Prediction and derivatives of the same pairs of sights."""
         back, fore = self._sight(geometry, 1), self._sight(geometry, 2)
-        by_back, by_fore = (through_sight(azimuth_gradient(sight.enu), sight) for sight in (back, fore))
+        by_back, by_fore = (sight.differentiate(azimuth_gradient(sight.enu)) for sight in (back, fore))
         derivatives = np.stack([by_fore[:, 0] - by_back[:, 0], -by_back[:, 1], by_fore[:, 1]], axis=1)
         return self._difference(back, fore), derivatives[:, None]
 

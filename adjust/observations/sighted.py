@@ -72,7 +72,7 @@ class SingleSight(SightedObservations):
     def linearise(self, geometry: Geometry) -> tuple[FloatArray, FloatArray]:
         """Prediction and derivatives of the same sights."""
         sight = self.sight(geometry)
-        derivatives = through_sight(self.gradient(sight.enu, geometry), sight)
+        derivatives = sight.differentiate(self.gradient(sight.enu, geometry))
         return self.value(sight.enu, geometry)[:, None], derivatives[:, None]
 
 
@@ -87,11 +87,3 @@ class HeightedSight(SingleSight):
         """Centring, and the errors of the two measured heights, which raise the ends as a rise of the marks would."""
         by_heights: FloatArray = np.sum(derivatives[:, :, 2] ** 2, axis=1)
         return super()._set_up_variance(derivatives) + self.precision.heights**2 * by_heights
-
-
-def through_sight(gradient: FloatArray, sight: Sight) -> FloatArray:
-    """Derivatives (rows, 2, 3) by metres at station and target, from a gradient (rows, 3) by the sight's components."""
-    derivatives = np.empty((len(gradient), 2, 3))
-    np.einsum("rk,rkm->rm", gradient, sight.by_at, out=derivatives[:, 0])
-    np.einsum("rk,rkm->rm", gradient, sight.by_to, out=derivatives[:, 1])
-    return derivatives

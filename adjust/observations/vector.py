@@ -48,4 +48,4 @@ class Vectors(Observations):
     def _ends(self, geometry: Geometry, role: int) -> Stations:
         if not isinstance(geometry.frame, EllipsoidFrame):
             raise TypeError("GNSS vectors need an ellipsoid frame")
-        return geometry.frame.ellipsoid.stations(geometry.spatial[self.marks[:, role]])
+        return geometry.frame.stations(geometry.spatial, self.marks[:, role])
