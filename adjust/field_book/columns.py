@@ -1,0 +1,208 @@
+"""From cells to arrays: a whole column at once, and cell by cell only to find what is wrong in one that fails."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Mapping
+from dataclasses import dataclass, replace
+from functools import partial
+from itertools import islice
+
+import numpy as np
+
+from adjust.arrays import BoolArray, FloatArray, IntArray
+from adjust.field_book.header import Place, read_header
+from adjust.field_book.mistakes import ENOUGH, Mistakes
+from adjust.field_book.schema import Column, Quantity, Table
+from adjust.field_book.sheet import Block, Sheet
+from adjust.field_book.vocabulary import NO_NAME, Vocabulary
+from adjust.observations import Provenance
+from adjust.units import parse_angle, parse_angles, parse_length, parse_lengths, parse_number, parse_numbers, shown
+
+Array = FloatArray | IntArray
+Complaints = Iterator[tuple[int, str]]
+"""Rows of a block and what is wrong with them."""
+
+
+@dataclass(frozen=True)
+class TableRows:
+    """The rows of one table from all its files, as columns in metres and radians.
+
+    `numbers` holds every numeric column of the schema, NaN where it or its cell is missing; `indices` every other one:
+    places in a vocabulary (−1: blank) or among the choices of the column (blank: the first).
+    """
+
+    table: Table
+    provenance: Provenance
+    numbers: dict[str, FloatArray]
+    indices: dict[str, IntArray]
+    titles: dict[str, str]
+    """The header row's name of each column, for messages."""
+    complete: bool
+    """Whether every row of the files is here, and names its marks."""
+
+    def __len__(self) -> int:
+        return len(self.provenance.line)
+
+    def take(self, rows: BoolArray) -> TableRows:
+        """The rows that a mask chooses."""
+        return replace(
+            self,
+            provenance=self.provenance.take(rows),
+            numbers={name: values[rows] for name, values in self.numbers.items()},
+            indices={name: values[rows] for name, values in self.indices.items()},
+        )
+
+    def complain(self, mistakes: Mistakes, row: int, column: str | None, message: str) -> None:
+        """Note a mistake of one row."""
+        title = None if column is None else self.titles.get(column, self.table.column(column).written)
+        place = self.provenance
+        mistakes.add(place.files[place.file[row]], int(place.line[row]), title, message)
+
+
+class FileReader:
+    """Reads one file of a table block by block."""
+
+    def __init__(self, sheet: Sheet, table: Table, vocabularies: Mapping[str, Vocabulary], mistakes: Mistakes) -> None:
+        self.sheet = sheet
+        self.table = table
+        self.vocabularies = vocabularies
+        self.mistakes = mistakes
+        self.places = read_header(sheet, table, mistakes)
+
+    def read(self) -> tuple[IntArray, dict[str, Array]]:
+        """Line numbers (rows,) and the columns by name, missing ones filled; mistakes are noted."""
+        lines: list[int] = []
+        parts = {column.name: [absent(column, 0)] for column in self.table.columns}
+        for block in self.sheet.blocks() if self.places else ():
+            lines += block.lines
+            for column in self.table.columns:
+                parts[column.name].append(self._column(column, block))
+            if self.mistakes.enough(self.sheet.file):
+                break
+        if not lines and not self.mistakes.any_in(self.sheet.file):
+            message = "has a header row and no rows; fill it in, or take the file away"
+            self.mistakes.add(self.sheet.file, None, None, message)
+        columns: dict[str, Array] = {name: np.concatenate(arrays) for name, arrays in parts.items()}
+        return np.array(lines, dtype=np.int64), columns
+
+    @property
+    def complete(self) -> bool:
+        """Whether the file was read to its end, no row was passed over, and no column of names is missing."""
+        named = all(column.name in self.places for column in self.table.columns if column.quantity is Quantity.NAME)
+        return named and not self.sheet.passed_over and not self.mistakes.enough(self.sheet.file)
+
+    def _column(self, column: Column, block: Block) -> Array:
+        place = self.places.get(column.name)
+        if place is None:
+            return absent(column, len(block.lines))
+        cells = block.columns[place.position]
+        values, complaints = self._words(place, cells) if not is_numeric(column) else self._numbers(place, cells)
+        for row, message in islice(complaints, ENOUGH):
+            self.mistakes.add(self.sheet.file, block.lines[row], place.title, message)
+        return values
+
+    def _words(self, place: Place, cells: list[str]) -> tuple[IntArray, Complaints]:
+        column = place.column
+        if column.quantity is Quantity.CHOICE:
+            numbers = {word: number for number, word in enumerate(column.choices)} | {"": 0}
+            values = np.array([numbers.get(cell, NO_NAME) for cell in cells], dtype=np.int64)
+            return values, ((row, _choice_message(cells[row], column)) for row in rows_where(values < 0))
+        vocabulary = self.vocabularies.get(column.name)
+        if vocabulary is None:
+            return absent(column, len(cells)).astype(np.int64), iter(())
+        values = vocabulary.numbers(cells)
+        doubtful = rows_where(values == NO_NAME)
+        return values, self._name_complaints(place, vocabulary, cells, doubtful)
+
+    @staticmethod
+    def _name_complaints(place: Place, vocabulary: Vocabulary, cells: list[str], doubtful: list[int]) -> Complaints:
+        for row in doubtful:
+            if cells[row]:
+                yield row, vocabulary.complaint(cells[row])
+            elif place.column.required:
+                yield row, "is blank, expected a name"
+
+    def _numbers(self, place: Place, cells: list[str]) -> tuple[FloatArray, Complaints]:
+        written = [cell.replace(",", ".") for cell in cells] if self.sheet.separator == ";" else cells
+        whole, single = _parsers(place)
+        try:
+            values = whole(written)
+        except ValueError:
+            return np.full(len(cells), np.nan), self._unreadable(place, cells, single)
+        return values, self._unruly(place, cells, values)
+
+    def _unreadable(self, place: Place, cells: list[str], single: Callable[[str], float]) -> Complaints:
+        for row, cell in enumerate(cells):
+            written = cell.replace(",", ".") if self.sheet.separator == ";" else cell
+            try:
+                if cell or place.column.required:
+                    single(written)
+            except ValueError as error:
+                yield row, str(error).replace(shown(written), shown(cell), 1) if cell else "is blank, expected a value"
+
+    @staticmethod
+    def _unruly(place: Place, cells: list[str], values: FloatArray) -> Complaints:
+        column, blank = place.column, np.isnan(values)
+        good: BoolArray = ~blank if column.required else np.ones(len(values), dtype=bool)
+        if column.rule is not None:
+            good &= blank | column.rule.holds(values)
+        for row in rows_where(~good):
+            if blank[row]:
+                yield row, "is blank, expected a value"
+            elif column.rule is not None:
+                yield row, f"read {shown(cells[row])}, expected {column.rule.expected}"
+
+
+def is_numeric(column: Column) -> bool:
+    """Whether its cells are numbers, and its array floats."""
+    return column.quantity in (Quantity.LENGTH, Quantity.ANGLE, Quantity.NUMBER)
+
+
+def rows_where(mask: BoolArray) -> list[int]:
+    """The rows that a mask (rows,) chooses."""
+    chosen: list[int] = np.flatnonzero(mask).tolist()
+    return chosen
+
+
+def absent(column: Column, rows: int) -> Array:
+    """What stands for a column that a file does not have."""
+    if is_numeric(column):
+        return np.full(rows, np.nan)
+    return np.full(rows, 0 if column.quantity is Quantity.CHOICE else NO_NAME, dtype=np.int64)
+
+
+def _choice_message(cell: str, column: Column) -> str:
+    return f"read {shown(cell)}, expected {' or '.join(repr(word) for word in column.choices)}"
+
+
+def _parsers(place: Place) -> tuple[Callable[[list[str]], FloatArray], Callable[[str], float]]:
+    """How to read a whole column, and one cell of it."""
+    if place.column.quantity is Quantity.LENGTH:
+        return partial(parse_lengths, ending=place.ending), partial(parse_length, ending=place.ending)
+    if place.column.quantity is Quantity.ANGLE:
+        return partial(parse_angles, ending=place.ending), partial(parse_angle, ending=place.ending)
+    return parse_numbers, parse_number
+
+
+def read_table(
+    table: Table, texts: Mapping[str, str], vocabularies: Mapping[str, Vocabulary], mistakes: Mistakes
+) -> TableRows:
+    """All files of a table (`texts`: their contents by name) as one. Mistakes are noted, not raised.
+
+    A column that has no entry in `vocabularies` although it holds text is ignored.
+    """
+    readers = [FileReader(Sheet(file, text, mistakes), table, vocabularies, mistakes) for file, text in texts.items()]
+    read = [reader.read() for reader in readers]
+    joined = {column.name: np.concatenate([values[column.name] for _, values in read]) for column in table.columns}
+    file = np.repeat(np.arange(len(read)), [len(lines) for lines, _ in read])
+    provenance = Provenance(tuple(texts), file, np.concatenate([lines for lines, _ in read]))
+    numeric = {column.name for column in table.columns if is_numeric(column)}
+    titles = {name: place.title for reader in readers for name, place in reader.places.items()}
+    return TableRows(
+        table,
+        provenance,
+        {name: values.astype(np.float64) for name, values in joined.items() if name in numeric},
+        {name: values.astype(np.int64) for name, values in joined.items() if name not in numeric},
+        titles,
+        complete=all(reader.complete for reader in readers),
+    )

@@ -1,0 +1,101 @@
+"""The files of a job folder: reading them, and the fingerprint of all that was read."""
+
+from __future__ import annotations
+
+import hashlib
+from pathlib import Path
+
+from adjust.field_book.mistakes import Mistakes
+
+JOB_FILE = "job.toml"
+
+_SMALLEST_JOB = 'the smallest one is the two lines `[frame]` and `kind = "plane"`'
+_BINARY = "there are NUL bytes in it: it is no text file; export the table as CSV in UTF-8"
+
+
+class Folder:
+    """A job folder and what was read from it so far."""
+
+    def __init__(self, path: Path, job_file: str, mistakes: Mistakes) -> None:
+        self.path = path
+        self.job_file = job_file
+        self._mistakes = mistakes
+        self._digests: dict[str, bytes] = {}
+
+    def text(self, name: str) -> str | None:
+        """The text of a file of the folder, or None after noting what is wrong with it."""
+        content = self._content(name)
+        return None if content is None else self._decoded(name, content)
+
+    def _content(self, name: str) -> bytes | None:
+        place = self.path / name
+        try:
+            if place.is_dir():
+                self._mistakes.add(name, None, None, "is a folder, expected a file")
+                return None
+            if place.exists() and not place.is_file():
+                self._mistakes.add(name, None, None, "is a device or a pipe, expected a plain file")
+                return None
+            content = place.read_bytes()
+        except (OSError, ValueError) as error:
+            reason = error.strerror if isinstance(error, OSError) and error.strerror else str(error)
+            self._mistakes.add(name, None, None, f"cannot be read ({reason}); check its name and permissions")
+            return None
+        self._digests[name] = hashlib.sha256(content).digest()
+        return content
+
+    def _decoded(self, name: str, content: bytes) -> str | None:
+        if content.startswith((b"\xff\xfe", b"\xfe\xff")):
+            self._mistakes.add(name, None, None, "is written in UTF-16, expected UTF-8; save it again as UTF-8")
+            return None
+        nul = content.find(b"\0")
+        if nul >= 0:
+            self._mistakes.add(name, _line_at(content, nul), None, _BINARY)
+            return None
+        try:
+            return content.decode("utf-8-sig")
+        except UnicodeDecodeError as error:
+            self._mistakes.add(
+                name,
+                _line_at(content, error.start),
+                None,
+                f"byte 0x{content[error.start]:02X} is not UTF-8 (perhaps Latin-1 or Windows-1252); "
+                "save the file again as UTF-8",
+            )
+            return None
+
+    def has(self, name: str) -> bool:
+        """Whether something of that name is in the folder."""
+        return (self.path / name).exists()
+
+    def tables(self) -> list[str]:
+        """Names of all CSV files that lie in the folder itself."""
+        return sorted(place.name for place in self.path.iterdir() if place.suffix.lower() == ".csv")
+
+    def fingerprint(self) -> str:
+        """SHA-256 over the names and contents of all files read, in the order of their names."""
+        whole = hashlib.sha256()
+        for name in sorted(self._digests):
+            whole.update(name.encode("utf-8", "surrogatepass") + b"\0" + self._digests[name])
+        return whole.hexdigest()
+
+
+def _line_at(content: bytes, position: int) -> int:
+    return content.count(b"\n", 0, position) + 1
+
+
+def open_folder(path: str | Path, mistakes: Mistakes) -> Folder:
+    """The folder of a job, named by itself or by its job file. Raises FieldDataError when there is none."""
+    given = Path(path)
+    try:
+        is_folder, is_file = given.is_dir(), given.is_file()
+    except (OSError, ValueError):
+        is_folder = is_file = False
+    if is_file:
+        return Folder(given.parent, given.name, mistakes)
+    if not is_folder:
+        mistakes.add(str(path), None, None, "there is no such job; name a job folder or its job.toml")
+    elif not (given / JOB_FILE).exists():
+        mistakes.add(str(path), None, None, f"there is no {JOB_FILE} in this folder; write one, {_SMALLEST_JOB}")
+    mistakes.raise_if_any()
+    return Folder(given, JOB_FILE, mistakes)
