@@ -55,3 +55,7 @@ class NetworkError(HubtackError):
 
 class ConvergenceError(NetworkError):
     """The iteration did not settle (exit status 3); the message names the worst observations."""
+
+
+class OutputError(HubtackError):
+    """The results cannot be written where they were asked for (exit status 2); what was there before is untouched."""

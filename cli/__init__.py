@@ -1,1 +1,1 @@
-"""…"""
+"""The command line of Hubtack: thin faces on the library, one file a command."""

@@ -1,0 +1,150 @@
+"""`listing.txt`: the adjustment for people, the verdict first."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+
+from adjust.adjustment import Adjustment
+from adjust.frames import EllipsoidFrame, PlaneFrame
+from adjust.quality import critical_tau, critical_w
+from adjust.reports import listing_tables
+from adjust.reports.layout import facts, paragraph, title
+from adjust.reports.selection import Order
+from adjust.reports.verdict import cautions, digits_left, verdict
+from adjust.reports.wording import NAMES, counted
+
+
+def write_listing(adjustment: Adjustment, order: Order, path: Path) -> None:
+    """Write the listing; `order` is that of the observations."""
+    path.write_text("\n".join(listing(adjustment, order)) + "\n", encoding="utf-8", newline="\n")
+
+
+def listing(adjustment: Adjustment, order: Order = "worst") -> list[str]:
+    """The lines of the listing."""
+    return [
+        *_opening(adjustment),
+        *title("Job"),
+        *facts(job_facts(adjustment)),
+        *listing_tables.control(adjustment),
+        *listing_tables.coordinates(adjustment),
+        *listing_tables.suspects(adjustment),
+        *listing_tables.observations(adjustment, order),
+        *listing_tables.relative(adjustment),
+        *title("Numerical health"),
+        *facts(numerical_facts(adjustment)),
+        *_sentences("Notes", adjustment.notes),
+        *_sentences("Cautions", cautions(adjustment)),
+    ]
+
+
+def _opening(adjustment: Adjustment) -> list[str]:
+    job = adjustment.job
+    heading = job.title if job.date is None else f"{job.title}, {job.date}"
+    return [*paragraph(heading), "", *paragraph(verdict(adjustment))]
+
+
+def _sentences(heading: str, sentences: tuple[str, ...]) -> list[str]:
+    if not sentences:
+        return []
+    return [*title(heading), *(line for sentence in sentences for line in paragraph(sentence))]
+
+
+def job_facts(adjustment: Adjustment) -> list[tuple[str, str]]:
+    """What was adjusted, how, and how well it fits."""
+    job, solution = adjustment.job, adjustment.solution
+    left_out = sum(rows.observed.size for rows in job.left_out)
+    orientations = f" and {counted(len(job.setups), 'orientation', 'orientations')}" if job.setups else ""
+    coordinates = counted(adjustment.unknowns.coordinates, "coordinate", "coordinates")
+    pairs = [
+        ("Frame", frame_words(adjustment)),
+        ("Datum", datum_words(adjustment)),
+        ("Observations", _observation_words(adjustment)),
+        ("Left out", f"{counted(left_out, 'observation', 'observations')} marked `use = no`" if left_out else ""),
+        ("Unknowns", f"{solution.unknowns}: {coordinates}{orientations}"),
+        ("Degrees of freedom", str(solution.degrees_of_freedom)),
+        ("Estimated σ₀", _sigma_words(adjustment)),
+        ("Standard deviations", basis_words(adjustment)),
+        ("Test of each observation", _test_words(adjustment)),
+        ("Input", f"sha256 {job.input_sha256}" if job.input_sha256 else ""),
+    ]
+    return [(name, value) for name, value in pairs if value]
+
+
+def frame_words(adjustment: Adjustment) -> str:
+    """The frame in words."""
+    frame = adjustment.job.frame
+    if isinstance(frame, EllipsoidFrame):
+        return f"ellipsoid, {frame.crs}, {'orthometric' if adjustment.job.orthometric else 'ellipsoidal'} heights"
+    curved = isinstance(frame, PlaneFrame) and frame.earth_curvature
+    return f"plane, earth curvature {'allowed for' if curved else 'left out'} in zenith angles"
+
+
+def datum_words(adjustment: Adjustment) -> str:
+    """What carries the datum."""
+    job = adjustment.job
+    if job.datum.mode == "inner":
+        carriers = counted(len(job.datum.marks) or len(job.marks), "mark", "marks")
+        return f"free network, fitted to the given coordinates of {carriers}; defect {adjustment.solution.datum_defect}"
+    statuses = np.array(adjustment.statuses, dtype=str).reshape(-1, 2)
+    words = [
+        f"{np.count_nonzero(statuses[:, part] == status)} {status} in {name}"
+        for part, name in enumerate(("plan", "height"))
+        for status in ("fixed", "weighted")
+        if np.any(statuses[:, part] == status)
+    ]
+    return f"control: {', '.join(words)}"
+
+
+def _observation_words(adjustment: Adjustment) -> str:
+    parts = []
+    for table in adjustment.residuals:
+        kind, rows = table.observations.kind, len(table.observations)
+        setups = (
+            f" in {counted(len(adjustment.job.setups), 'setup', 'setups')}"
+            if table.observations.setup is not None
+            else ""
+        )
+        parts.append(f"{rows} {NAMES[kind][1]}{setups}")
+    return f"{adjustment.solution.observations}: {', '.join(parts)}"
+
+
+def _sigma_words(adjustment: Adjustment) -> str:
+    factor = adjustment.solution.variance_factor
+    return "" if factor is None else f"{factor**0.5:.3f}, where 1 was claimed"
+
+
+def basis_words(adjustment: Adjustment) -> str:
+    """What the printed sds rest on."""
+    if adjustment.solution.sd_basis == "prior":
+        return "from the sds of the observations as claimed beforehand (prior)"
+    return "from the sds of the observations times the estimated σ₀ (posterior)"
+
+
+def _test_words(adjustment: Adjustment) -> str:
+    statistics, solution = adjustment.job.statistics, adjustment.solution
+    level = f"significance {statistics.significance:g}"
+    if solution.sd_basis == "prior":
+        return f"|w| beyond {critical_w(statistics.significance):.3f} is suspect ({level})"
+    if solution.degrees_of_freedom < 2:
+        return "none: the estimated σ₀ leaves nothing to test with fewer than two degrees of freedom"
+    bound = critical_tau(statistics.significance, solution.degrees_of_freedom)
+    return f"|τ| beyond {bound:.3f} is suspect ({level})"
+
+
+def numerical_facts(adjustment: Adjustment) -> list[tuple[str, str]]:
+    """How far the digits can be trusted."""
+    solution = adjustment.solution
+    digits = digits_left(solution.condition_number)
+    return [
+        (
+            "Condition number",
+            f"{solution.condition_number:.2e} (scaled columns), which leaves {digits:.0f} of 16 digits",
+        ),
+        (
+            "Second opinion",
+            f"an iterative solution of the same system differs by at most {solution.second_opinion_gap:.1e} m",
+        ),
+        ("Iterations", f"{solution.iterations}, until no coordinate moved by more than 0.01 mm"),
+    ]

@@ -1,0 +1,243 @@
+"""The tables of the listing: control, coordinates, ellipses, observations, suspects, relative accuracy."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from adjust.adjustment import Adjustment
+from adjust.quality import critical_tau, critical_w, non_centrality
+from adjust.reports.layout import Column, paragraph, table, title
+from adjust.reports.records import Record, line_records, mark_records
+from adjust.reports.selection import LISTED, Order, listed_lines, listed_marks, listed_observations
+from adjust.reports.wording import between, decimals, dms, observed, small, small_unit, what
+
+MARK = Column("mark", text=True)
+SOURCE = Column("source", text=True, ending=True)
+PLACES = (Column("easting", "m"), Column("northing", "m"), Column("height", "m"))
+
+
+def _places(record: Record) -> list[str]:
+    return [decimals(record[key], 4) for key in ("easting_m", "northing_m", "height_m")]
+
+
+def _geographic(record: Record) -> list[str]:
+    return [
+        dms(record["latitude_deg"], 5),
+        dms(record["longitude_deg"], 5),
+        decimals(record["ellipsoidal_height_m"], 4),
+    ]
+
+
+def _shown_of(shown: int, total: int, choice: str, file: str) -> list[str]:
+    """The sentence under a thinned table."""
+    if shown == total:
+        return []
+    return paragraph(f"Shown are {shown} of {total}: {choice}. All of them stand in {file}.")
+
+
+def control(adjustment: Adjustment) -> list[str]:
+    """Marks whose coordinates were held or weighted, as they came out."""
+    held = np.array([{"fixed", "weighted"} & set(status) != set() for status in adjustment.statuses], dtype=bool)
+    rows = np.flatnonzero(held)
+    if len(rows) == 0:
+        return []
+    columns = (MARK, Column("plan", text=True), Column("height", text=True), *PLACES)
+    records = list(mark_records(adjustment, rows[:LISTED]))
+    cells = [[record["mark"], record["plan_status"], record["height_status"], *_places(record)] for record in records]
+    lines = [*title("Control"), *table(columns, cells)]
+    return lines + _shown_of(len(records), len(rows), "the first in the book", "coordinates.csv")
+
+
+def coordinates(adjustment: Adjustment) -> list[str]:
+    """Coordinates with sds and 95 % figures, then geographic coordinates, then ellipses."""
+    records = list(mark_records(adjustment, listed_marks(adjustment)))
+    columns = (
+        MARK,
+        *PLACES,
+        *(Column(f"sd {axis}", "mm") for axis in "ENH"),
+        Column("95 % circle", "mm"),
+        Column("95 % height", "mm"),
+    )
+    keys = ("sd_easting_mm", "sd_northing_mm", "sd_height_mm", "horizontal_95_mm", "height_95_mm")
+    cells = [[record["mark"], *_places(record), *(decimals(record[key], 2) for key in keys)] for record in records]
+    lines = [*title("Coordinates"), *table(columns, cells)]
+    lines += paragraph(
+        "95 % circle: its radius about the mark holds the true place with a probability of 95 %; "
+        "95 % height: the same for the height, to either side."
+    )
+    lines += _shown_of(
+        len(records), len(adjustment.job.marks), "the least certain, in the book's order", "coordinates.csv"
+    )
+    return lines + _geographic_table(records) + _ellipse_table(adjustment, records)
+
+
+def _geographic_table(records: Sequence[Record]) -> list[str]:
+    cells = [[record["mark"], *_geographic(record)] for record in records]
+    if not any(cell for row in cells for cell in row[1:]):
+        return []
+    columns = (MARK, Column("latitude", "d-m-s"), Column("longitude", "d-m-s"), Column("ellipsoidal height", "m"))
+    return [*title("Geographic coordinates"), *table(columns, cells)]
+
+
+def _ellipse_cells(record: Record) -> list[str]:
+    standard, confidence = record["ellipse"], record["ellipse_confidence"]
+    return [
+        decimals(standard["semi_major_mm"], 2),
+        decimals(standard["semi_minor_mm"], 2),
+        decimals(standard["azimuth_deg"], 1),
+        decimals(confidence["semi_major_mm"], 2),
+        decimals(confidence["semi_minor_mm"], 2),
+    ]
+
+
+def _ellipse_columns(adjustment: Adjustment) -> tuple[Column, ...]:
+    percent = f"{100 * adjustment.job.statistics.confidence:g} %"
+    return (
+        Column("major", "mm"),
+        Column("minor", "mm"),
+        Column("azimuth", "deg"),
+        Column(f"{percent} major", "mm"),
+        Column(f"{percent} minor", "mm"),
+    )
+
+
+def _ellipse_table(adjustment: Adjustment, records: Sequence[Record]) -> list[str]:
+    cells = [[record["mark"], *_ellipse_cells(record)] for record in records if record["ellipse"]["semi_major_mm"]]
+    if not cells:
+        return []
+    lines = [*title("Error ellipses"), *table((MARK, *_ellipse_columns(adjustment)), cells)]
+    return lines + paragraph("Semi-axes; the azimuth is that of the major one, clockwise from grid or true north.")
+
+
+def _test(adjustment: Adjustment) -> tuple[str, str, float]:
+    """Key and symbol of the figure that is tested, and its bound."""
+    statistics, solution = adjustment.job.statistics, adjustment.solution
+    if solution.sd_basis == "posterior":
+        return "tau", "τ", critical_tau(statistics.significance, solution.degrees_of_freedom)
+    return "w", "w", critical_w(statistics.significance)
+
+
+def observations(adjustment: Adjustment, order: Order) -> list[str]:
+    """Observations with their residuals and tests."""
+    key, symbol, bound = _test(adjustment)
+    records = listed_observations(adjustment, order)
+    columns = (
+        Column(symbol),
+        Column("residual"),
+        Column("sd"),
+        Column("least", "bias"),
+        Column("", text=True),
+        Column("r"),
+        Column("observed"),
+        Column("what", text=True),
+        Column("marks", text=True),
+        SOURCE,
+    )
+    lines = title("Observations, worst first" if order == "worst" else "Observations, in the order of the book")
+    lines += table(columns, [_observation_cells(record, key) for record in records])
+    return lines + _observation_notes(adjustment, symbol, bound, len(records))
+
+
+def _observation_cells(record: Record, key: str) -> list[str]:
+    return [
+        (decimals(record[key], 2, signed=True) or "–") + ("!" if record["suspect"] else " "),
+        small(record, "residual", signed=True),
+        small(record, "sd"),
+        small(record, "minimal_detectable_bias") or "–",
+        small_unit(record),
+        decimals(record["redundancy"], 2),
+        observed(record),
+        what(record),
+        between(record),
+        record["source"],
+    ]
+
+
+def _observation_notes(adjustment: Adjustment, symbol: str, bound: float, shown: int) -> list[str]:
+    statistics = adjustment.job.statistics
+    lines = paragraph(
+        f"Residual: adjusted minus observed. {symbol}: the residual on its own sd; beyond {bound:.2f} it is "
+        f"suspect (!). Least bias: the smallest error that the test would find, {100 * statistics.power:g} times "
+        "in 100. r: the share of an error that shows in the residual; –: nothing checks this observation. "
+        "Observed lengths are metres, angles degrees-minutes-seconds."
+    )
+    total = adjustment.solution.observations
+    return lines + _shown_of(shown, total, "those that fit worst", "residuals.csv")
+
+
+def suspects(adjustment: Adjustment) -> list[str]:
+    """Suspect observations and what each would be off by if it alone were wrong."""
+    key, symbol, _ = _test(adjustment)
+    found = [record for record in listed_observations(adjustment, "worst") if record["suspect"]]
+    if not found:
+        return []
+    statistics = adjustment.job.statistics
+    shift = non_centrality(statistics.significance, statistics.power) ** 0.5
+    columns = (
+        SOURCE,
+        Column("what", text=True),
+        Column("marks", text=True),
+        Column("observed"),
+        Column(symbol),
+        Column("off by"),
+        Column("", text=True),
+    )
+    cells = [_suspect_cells(record, key, shift) for record in found]
+    lines = [*title("Suspect observations"), *table(columns, cells)]
+    lines += paragraph(
+        "Off by: observed minus true, if this observation alone is wrong. One blunder makes its neighbours look bad "
+        "too: look into the first, mend it or set its `use` to `no`, and adjust again."
+    )
+    return lines + _shown_of(len(found), _suspect_scalars(adjustment), "the worst", "residuals.csv")
+
+
+def _suspect_scalars(adjustment: Adjustment) -> int:
+    return int(sum(np.count_nonzero(kind.suspect) for kind in adjustment.residuals))
+
+
+def _suspect_cells(record: Record, key: str, shift: float) -> list[str]:
+    error = dict(record, error=-record["w"] * record["minimal_detectable_bias"] / shift)
+    return [
+        record["source"],
+        what(record),
+        between(record),
+        observed(record),
+        decimals(record[key], 2, signed=True),
+        small(error, "error", signed=True),
+        small_unit(record),
+    ]
+
+
+def relative(adjustment: Adjustment) -> list[str]:
+    """Accuracy of every observed pair of marks against each other."""
+    records = list(line_records(adjustment, listed_lines(adjustment)))
+    if not records:
+        return []
+    columns = (
+        Column("from", text=True),
+        Column("to", text=True),
+        Column("distance", "m"),
+        *_ellipse_columns(adjustment),
+        Column("major", "ppm"),
+        Column("sd rise", "mm"),
+    )
+    lines = [
+        *title("Relative accuracy of observed lines, worst first"),
+        *table(columns, [_line_cells(record) for record in records]),
+    ]
+    return lines + _shown_of(len(records), len(adjustment.lines), "the least certain for their length", "results.json")
+
+
+def _line_cells(record: Record) -> list[str]:
+    distance, major = record["distance_m"], record["ellipse"]["semi_major_mm"]
+    ppm = 1000 * major / distance if distance and major is not None else None
+    return [
+        record["from"],
+        record["to"],
+        decimals(distance, 3),
+        *_ellipse_cells(record),
+        decimals(ppm, 1),
+        decimals(record["sd_height_difference_mm"], 2),
+    ]

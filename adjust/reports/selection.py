@@ -1,0 +1,67 @@
+"""Which rows a listing shows: all of a small job, the least certain ones of a large job."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import Literal
+
+import numpy as np
+
+from adjust.adjustment import Adjustment
+from adjust.arrays import FloatArray, IntArray
+from adjust.reports.records import Record, scalar_records
+
+Order = Literal["worst", "book"]
+
+LISTED = 1000
+"""Rows of one table in a listing, some twenty printed pages; the tables beside it have them all."""
+
+
+def tested(adjustment: Adjustment) -> FloatArray:
+    """|w|, or |τ| on the posterior basis, of all scalars (k,) in the order of the records; −1 where there is none."""
+    posterior = adjustment.solution.sd_basis == "posterior"
+    figures = [np.abs(table.tau if posterior else table.w).ravel() for table in adjustment.residuals]
+    together: FloatArray = np.nan_to_num(np.concatenate([np.empty(0), *figures]), nan=-1.0)
+    return together
+
+
+def worst_first(figures: FloatArray, most: int = LISTED) -> IntArray:
+    """Indices of the `most` largest figures, largest first; ties in their given order, NaN last."""
+    order: IntArray = np.argsort(-np.nan_to_num(figures, nan=-np.inf), kind="stable")[:most]
+    return order
+
+
+def listed_observations(adjustment: Adjustment, order: Order, most: int = LISTED) -> list[Record]:
+    """The records to print: at most `most`, those that fit worst, worst first or as they stand in the book."""
+    chosen = worst_first(tested(adjustment), most)
+    in_book = np.sort(chosen)
+    records = list(_in_book_order(adjustment, in_book))
+    if order == "book":
+        return records
+    place = {scalar: position for position, scalar in enumerate(in_book.tolist())}
+    return [records[place[scalar]] for scalar in chosen.tolist()]
+
+
+def _in_book_order(adjustment: Adjustment, scalars: IntArray) -> Iterator[Record]:
+    first = 0
+    for table in adjustment.residuals:
+        size = table.residual.size
+        here = scalars[(scalars >= first) & (scalars < first + size)]
+        yield from scalar_records(adjustment, table, here - first)
+        first += size
+
+
+def listed_marks(adjustment: Adjustment) -> IntArray:
+    """The marks (m,) to print, in the book's order: of a large job those with the largest 95 % figures."""
+    uncertainty = np.fmax(adjustment.horizontal_95, adjustment.height_95)
+    return np.sort(worst_first(uncertainty))
+
+
+def listed_lines(adjustment: Adjustment) -> IntArray:
+    """The lines (m,) to print, least certain for their length first; those without a plan come after, by height sd."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        ratio = adjustment.line_ellipses.semi_major / adjustment.line_lengths
+    heights = np.nan_to_num(adjustment.line_covariances[:, 2, 2], nan=-1.0)
+    plan = np.nan_to_num(ratio, nan=-1.0, posinf=-1.0)
+    order: IntArray = np.lexsort((np.arange(len(plan)), -heights, -plan))[:LISTED]
+    return order

@@ -1,0 +1,48 @@
+"""The `hubtack` command."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Sequence
+from io import TextIOWrapper
+
+import click
+
+from cli.adjust import adjust_command
+
+INTERRUPTED = 130
+"""Exit status after Ctrl-C: 128 + SIGINT, as shells expect."""
+
+
+@click.group(epilog="Example: hubtack adjust field_data/levelling")
+@click.version_option(package_name="hubtack", prog_name="hubtack")
+def hubtack() -> None:
+    """Adjust geodetic control networks by least squares.
+
+    A job is a folder of CSV tables with one job.toml; the results are coordinates with their uncertainties, tested
+    residuals and a verdict.
+    """
+
+
+hubtack.add_command(adjust_command)
+
+
+def run(arguments: Sequence[str]) -> int:
+    """Run the command line and return the exit status. Only what a user can mend is turned into a message."""
+    try:
+        status = hubtack.main(list(arguments), prog_name="hubtack", standalone_mode=False)
+    except click.ClickException as error:
+        error.show()
+        return error.exit_code
+    except (KeyboardInterrupt, click.Abort):
+        click.echo("Stopped. Earlier results are as they were.", err=True)
+        return INTERRUPTED
+    return int(status or 0)
+
+
+def main() -> None:
+    """Entry point. Letters that a console cannot show are replaced rather than fatal."""
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, TextIOWrapper):
+            stream.reconfigure(errors="replace")
+    sys.exit(run(sys.argv[1:]))
