@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from functools import cached_property
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -24,27 +23,20 @@ class EllipsoidFrame(Frame):
 
     kind = "ellipsoid"
     crs: str
+    ellipsoid: ReferenceEllipsoid = field(init=False, compare=False, repr=False)
+    """The CRS's ellipsoid."""
+    projection: MapProjection | None = field(init=False, compare=False, repr=False)
+    """The CRS's map; None for a geographic CRS."""
 
     def __post_init__(self) -> None:
-        _ = self._parts
-
-    @cached_property
-    def _parts(self) -> tuple[ReferenceEllipsoid, MapProjection | None]:
-        return read_crs(self.crs)
-
-    @property
-    def ellipsoid(self) -> ReferenceEllipsoid:
-        """The CRS's ellipsoid."""
-        return self._parts[0]
-
-    @property
-    def _projection(self) -> MapProjection | None:
-        return self._parts[1]
+        ellipsoid, projection = read_crs(self.crs)
+        object.__setattr__(self, "ellipsoid", ellipsoid)
+        object.__setattr__(self, "projection", projection)
 
     @property
     def is_geographic(self) -> bool:
         """Whether the CRS has no map projection, hence no grid."""
-        return self._projection is None
+        return self.projection is None
 
     def geocentric(self, coordinates: FloatArray) -> FloatArray:
         """X, Y, Z (n, 3), metres."""
@@ -101,14 +93,15 @@ class EllipsoidFrame(Frame):
         return distance, derivatives
 
     def moved(self, coordinates: FloatArray, corrections: FloatArray) -> FloatArray:
-        """Coordinates after a straight step east, north, up; a mark without plan moves in height, one without height
-        in plan."""
-        stations = self.ellipsoid.stations(_with_heights(coordinates, 0.0))
+        """Coordinates after a straight step east, north, up.
+
+        A mark without plan moves in height alone, a mark without height in plan alone.
+        """
+        stations = self.ellipsoid.stations(_on_ellipsoid_where_no_height(coordinates))
         steps: FloatArray = np.einsum("rij,ri->rj", stations.axes, np.nan_to_num(corrections))
         result = self.ellipsoid.geodetic(stations.positions + steps)
         no_plan = np.isnan(coordinates[:, :2]).any(axis=1)
-        result[no_plan] = coordinates[no_plan]
-        result[no_plan, 2] += corrections[no_plan, 2]
+        result[no_plan] = coordinates[no_plan] + corrections[no_plan]
         result[np.isnan(coordinates)] = np.nan
         return result
 
@@ -118,9 +111,9 @@ class EllipsoidFrame(Frame):
         Where plan is missing only up is known, where a height is missing only east and north; the rest is NaN.
         """
         no_height = np.isnan(start[:, 2]) | np.isnan(end[:, 2])
-        level = np.where(no_height[:, None], [1.0, 1.0, 0.0], 1.0)
-        stations = self.ellipsoid.stations(_with_heights(start, 0.0) * level)
-        steps = self.geocentric(_with_heights(end, 0.0) * level) - stations.positions
+        start_heights, end_heights = (np.where(no_height, 0.0, ends[:, 2]) for ends in (start, end))
+        stations = self.ellipsoid.stations(np.column_stack([start[:, :2], start_heights]))
+        steps = self.geocentric(np.column_stack([end[:, :2], end_heights])) - stations.positions
         result: FloatArray = np.einsum("rij,rj->ri", stations.axes, steps)
         no_plan = np.isnan(result[:, 0])
         result[:, 2] = np.where(no_plan | no_height, end[:, 2] - start[:, 2], result[:, 2])
@@ -128,15 +121,15 @@ class EllipsoidFrame(Frame):
 
     def grid_rotation(self, coordinates: FloatArray) -> FloatArray:
         """Azimuth (n,) of grid north, radians; 0 for a geographic CRS. NaN where a mark has no plan coordinates."""
-        if self._projection is None:
+        if self.projection is None:
             return np.where(np.isnan(coordinates[:, :2]).any(axis=1), np.nan, 0.0)
-        return self._projection.grid_north(coordinates[:, :2], self.ellipsoid)
+        return self.projection.grid_north(coordinates[:, :2], self.ellipsoid)
 
     def grid_coordinates(self, coordinates: FloatArray) -> FloatArray:
         """Easting and northing (n, 2) in metres, whatever the CRS's unit; NaN for a geographic CRS."""
-        if self._projection is None:
+        if self.projection is None:
             return np.full((len(coordinates), 2), np.nan)
-        return self._projection.forward(coordinates[:, :2])
+        return self.projection.forward(coordinates[:, :2])
 
     def geographic(self, coordinates: FloatArray) -> FloatArray:
         """Longitude from Greenwich and latitude (n, 2), radians."""
@@ -147,13 +140,11 @@ class EllipsoidFrame(Frame):
 
         NaN where PROJ finds none, and for a geographic CRS, which has no grid.
         """
-        if self._projection is None:
+        if self.projection is None:
             return np.full((len(grid), 2), np.nan)
-        return self._projection.inverse(grid)
+        return self.projection.inverse(grid)
 
 
-def _with_heights(coordinates: FloatArray, height: float) -> FloatArray:
-    """Coordinates with `height` in place of missing heights."""
-    filled = coordinates.copy()
-    filled[np.isnan(filled[:, 2]), 2] = height
-    return filled
+def _on_ellipsoid_where_no_height(coordinates: FloatArray) -> FloatArray:
+    """Coordinates whose missing heights are zero."""
+    return np.column_stack([coordinates[:, :2], np.nan_to_num(coordinates[:, 2])])
