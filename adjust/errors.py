@@ -41,7 +41,7 @@ class FieldDataError(HubtackError):
         lines = [str(mistake) for mistake in self.mistakes[: self.SHOWN]]
         hidden = len(self.mistakes) - len(lines)
         if hidden > 0:
-            lines.append(f"… and {hidden} more mistakes of this kind; mend these first")
+            lines.append(f"… and at least {hidden} more; mend these first")
         return "\n".join(lines)
 
 

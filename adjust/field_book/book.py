@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import posixpath
 from dataclasses import dataclass
 
 from adjust.field_book.columns import TableRows, read_table
 from adjust.field_book.folder import Folder
 from adjust.field_book.job_file import JobFile, JobFileReader
-from adjust.field_book.mistakes import Mistakes
+from adjust.field_book.mistakes import Mistakes, listed
 from adjust.field_book.schema import MARKS, TABLES, Table
 from adjust.field_book.vocabulary import Vocabulary
 
@@ -49,7 +50,8 @@ class BookReader:
         mark_names, descriptions = Vocabulary("a mark"), Vocabulary("a description")
         marks = self._table(MARKS, {"mark": mark_names, "description": descriptions})
         whole = marks is not None and marks.complete
-        names = Vocabulary("a mark of marks.csv", mark_names.names if whole else None)
+        listing = listed(file for file, name in self._table_of.items() if name == MARKS.name)
+        names = Vocabulary(f"a mark of {listing}", mark_names.names if whole else None)
         setups = Vocabulary("a setup")
         words = dict.fromkeys(("at", "from", "to"), names) | {
             "setup": setups,
@@ -64,10 +66,10 @@ class BookReader:
 
     def _complain_of_absent_tables(self) -> None:
         tables = set(self._table_of.values())
-        if MARKS.name not in tables:
+        if MARKS.name not in tables and MARKS.name not in self.job_file.tables:
             message = "there is no such file; every job needs a table that lists its marks"
             self.mistakes.add("marks.csv", None, None, message)
-        if not tables - {MARKS.name}:
+        if not (tables | self.job_file.tables.keys()) - {MARKS.name}:
             expected = ", ".join(f"{table.name}.csv" for table in OBSERVATION_TABLES)
             message = f"the job has no observations; write one of {expected}, or name files in [tables]"
             self.mistakes.add(self.reader.name, None, None, message)
@@ -81,13 +83,20 @@ class BookReader:
     def _files(self, table: Table) -> list[str]:
         """The files of a table: those that the job file names, or the one of its own name where there is one."""
         usual = f"{table.name}.csv"
-        files = self.job_file.tables.get(table.name, [usual] if self.folder.has(usual) else [])
-        fresh = []
-        for file in files:
-            if file in self._table_of:
-                message = f"{file!r} is read for {self._table_of[file]} already; name each file once"
-                self.reader.complain(("tables", table.name), message)
-            else:
-                self._table_of[file] = table.name
-                fresh.append(file)
-        return fresh
+        named = self.job_file.tables.get(table.name)
+        if named is None:
+            named = [usual] if self.folder.has(usual) else []
+        return [posixpath.normpath(file) for file in named if self._is_new(file, table)]
+
+    def _is_new(self, file: str, table: Table) -> bool:
+        """Whether a file is there and not read for another table yet."""
+        name = posixpath.normpath(file)
+        if not self.folder.has(name):
+            message = f"read {file!r}, but the job folder has no such file; mend the name, or put the file there"
+        elif name in self._table_of:
+            message = f"{file!r} is read for {self._table_of[name]} already; name each file once"
+        else:
+            self._table_of[name] = table.name
+            return True
+        self.reader.complain(("tables", table.name), message)
+        return False

@@ -6,6 +6,7 @@ from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, replace
 from functools import partial
 from itertools import islice
+from typing import cast
 
 import numpy as np
 
@@ -71,19 +72,29 @@ class FileReader:
 
     def read(self) -> tuple[IntArray, dict[str, Array]]:
         """Line numbers (rows,) and the columns by name, missing ones filled; mistakes are noted."""
-        lines: list[int] = []
+        lines = [np.empty(0, dtype=np.int64)]
         parts = {column.name: [absent(column, 0)] for column in self.table.columns}
         for block in self.sheet.blocks() if self.places else ():
-            lines += block.lines
+            lines.append(block.lines)
+            self._check_untitled(block)
             for column in self.table.columns:
                 parts[column.name].append(self._column(column, block))
             if self.mistakes.enough(self.sheet.file):
                 break
-        if not lines and not self.mistakes.any_in(self.sheet.file):
+        if len(lines) == 1 and not self.mistakes.any_in(self.sheet.file):
             message = "has a header row and no rows; fill it in, or take the file away"
             self.mistakes.add(self.sheet.file, None, None, message)
-        columns: dict[str, Array] = {name: np.concatenate(arrays) for name, arrays in parts.items()}
-        return np.array(lines, dtype=np.int64), columns
+        return np.concatenate(lines), {name: _joined(arrays) for name, arrays in parts.items()}
+
+    def _check_untitled(self, block: Block) -> None:
+        """Spreadsheets leave columns without a title and without cells; one with cells has lost its title."""
+        for position, title in enumerate(self.sheet.titles):
+            filled = [] if title else [row for row, cell in enumerate(block.columns[position]) if cell]
+            if filled:
+                message = (
+                    f"read {shown(block.columns[position][filled[0]])} in column {position + 1}, which has no title"
+                )
+                self.mistakes.add(self.sheet.file, int(block.lines[filled[0]]), None, f"{message} in the header row")
 
     @property
     def complete(self) -> bool:
@@ -98,7 +109,7 @@ class FileReader:
         cells = block.columns[place.position]
         values, complaints = self._words(place, cells) if not is_numeric(column) else self._numbers(place, cells)
         for row, message in islice(complaints, ENOUGH):
-            self.mistakes.add(self.sheet.file, block.lines[row], place.title, message)
+            self.mistakes.add(self.sheet.file, int(block.lines[row]), place.title, message)
         return values
 
     def _words(self, place: Place, cells: list[str]) -> tuple[IntArray, Complaints]:
@@ -162,6 +173,10 @@ def rows_where(mask: BoolArray) -> list[int]:
     """The rows that a mask (rows,) chooses."""
     chosen: list[int] = np.flatnonzero(mask).tolist()
     return chosen
+
+
+def _joined(arrays: list[Array]) -> Array:
+    return cast(Array, np.concatenate(arrays))
 
 
 def absent(column: Column, rows: int) -> Array:

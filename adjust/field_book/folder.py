@@ -9,6 +9,7 @@ from adjust.field_book.mistakes import Mistakes
 
 JOB_FILE = "job.toml"
 
+_WRITTEN = {"coordinates.csv", "residuals.csv"}
 _SMALLEST_JOB = 'the smallest one is the two lines `[frame]` and `kind = "plane"`'
 _BINARY = "there are NUL bytes in it: it is no text file; export the table as CSV in UTF-8"
 
@@ -66,11 +67,18 @@ class Folder:
 
     def has(self, name: str) -> bool:
         """Whether something of that name is in the folder."""
-        return (self.path / name).exists()
+        try:
+            return (self.path / name).exists()
+        except (OSError, ValueError):
+            return False
 
     def tables(self) -> list[str]:
-        """Names of all CSV files that lie in the folder itself."""
-        return sorted(place.name for place in self.path.iterdir() if place.suffix.lower() == ".csv")
+        """Names of the CSV files that lie in the folder itself, but for those that an adjustment writes."""
+        try:
+            names = [place.name for place in self.path.iterdir() if place.suffix.lower() == ".csv"]
+        except OSError:
+            return []
+        return sorted(set(names) - _WRITTEN)
 
     def fingerprint(self) -> str:
         """SHA-256 over the names and contents of all files read, in the order of their names."""

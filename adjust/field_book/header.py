@@ -38,7 +38,7 @@ def read_header(sheet: Sheet, table: Table, mistakes: Mistakes) -> dict[str, Pla
             ending = title.removeprefix(column.name).removeprefix("_")
             places[column.name] = Place(column, position, title, ending)
             continue
-        mistakes.add(sheet.file, sheet.header_line, shown(title)[1:-1], message)
+        mistakes.add(sheet.file, sheet.header_line, shown(title), message)
     for name, message in _omissions(table, places, meant) if sheet.titles else ():
         mistakes.add(sheet.file, sheet.header_line, name, message)
     return places

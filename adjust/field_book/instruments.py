@@ -11,6 +11,7 @@ from adjust.arrays import FloatArray, IntArray
 from adjust.field_book.columns import TableRows
 from adjust.field_book.job_file import JobFile
 from adjust.field_book.mistakes import Mistakes
+from adjust.field_book.schema import SMALLEST_SD
 from adjust.field_book.vocabulary import NO_NAME
 from adjust.observations import Precision
 from adjust.units import ARCSEC
@@ -62,7 +63,7 @@ class Instruments:
 
         direction = column("direction_arcsec", ARCSEC)
         distance, proportional = column("distance_mm", MILLIMETRE), column("distance_ppm", PART_PER_MILLION)
-        stated = np.fmax(distance, proportional) > 0
+        stated = np.fmax(distance, proportional) >= SMALLEST_SD
         return cls(
             names,
             direction,

@@ -30,7 +30,10 @@ def _as_text(value: object) -> object:
     return value.isoformat() if isinstance(value, datetime.date) else value
 
 
-Positive = Annotated[float, Field(gt=0, lt=1e9)]
+SMALLEST = 1e-6
+"""Least arc second, millimetre or ppm that an instrument may state; below it weights leave double precision."""
+
+Positive = Annotated[float, Field(ge=SMALLEST, lt=1e9)]
 NotNegative = Annotated[float, Field(ge=0, lt=1e9)]
 Probability = Annotated[float, Field(gt=0, lt=1)]
 FileNames = Annotated[list[str], BeforeValidator(_as_list), Field(min_length=1)]
@@ -136,7 +139,8 @@ class JobFileReader:
             details = error.errors(include_url=False)
         for detail in details:
             path = [str(part) for part in detail["loc"]]
-            self.complain(path, _explained(path, detail))
+            if not self.mistakes.enough(self.name):
+                self.complain(path, _explained(path, detail))
             _remove(content, detail["loc"])
         try:
             return JobFile.model_validate(content)
@@ -144,15 +148,16 @@ class JobFileReader:
             return None
 
 
-def _remove(content: Any, path: tuple[int | str, ...]) -> None:
-    """Take the key at `path`, or the part of it that is there, out of nested tables."""
-    for part in path[:-1]:
-        if not isinstance(content, dict) or not isinstance(content.get(part), dict):
-            path = path[: path.index(part) + 1]
+def _remove(content: dict[str, Any], path: tuple[int | str, ...]) -> None:
+    """Take the key at `path` out of nested tables; where the path leads on into a list, take out the whole list."""
+    *sections, last = path
+    for part in sections:
+        inner = content.get(str(part))
+        if not isinstance(inner, dict):
+            last = part
             break
-        content = content[part]
-    if isinstance(content, dict):
-        content.pop(path[-1], None)
+        content = inner
+    content.pop(str(last), None)
 
 
 def _explained(path: list[str], detail: ErrorDetails) -> str:
@@ -161,6 +166,8 @@ def _explained(path: list[str], detail: ErrorDetails) -> str:
     if kind == "extra_forbidden":
         return f"unknown key{Likeness(_known_keys(path)).suggestion(path[-1])}"
     read = f"read {shown(_written(detail['input']))}"
+    if path == ["date"]:
+        return f"{read}, expected a date such as 2026-04-18, or text in quotation marks"
     if kind == "literal_error":
         likely = Likeness(re.findall(r"'(\w+)'", limits["expected"])).suggestion(str(detail["input"]))
         return f"{read}, expected {limits['expected']}{likely}"
@@ -207,22 +214,23 @@ def _known_keys(path: list[str]) -> list[str]:
 def line_of_key(text: str, path: list[str]) -> int | None:
     """The line on which a key of a job file is set, found by its own look at the text; None where it is written oddly.
 
-    Falls back on the line of the section where the key itself is not found, as for a section that should be a key.
+    Falls back on the line of the section where the key itself is not found.
     """
     section: list[str] = []
     section_line: int | None = None
     for number, line in enumerate(text.splitlines(), 1):
-        header = re.fullmatch(r"\s*\[([^\[\]=]+)\]\s*(?:#.*)?", line)
-        if header:
-            section = [part.strip().strip("\"'") for part in header[1].split(".")]
-            section_line = number if section == path[: len(section)] else section_line
+        words = line.partition("#")[0].strip()
+        if words.startswith("[") and words.endswith("]") and "=" not in words:
+            section = _key_parts(words.strip("[]"))
             if section == path:
                 return number
-            continue
-        key = re.match(r"""\s*["']?([^"'=]+?)["']?\s*=""", line)
-        if (
-            key
-            and section + [part.strip() for part in key[1].split(".")] == path[: len(section) + key[1].count(".") + 1]
-        ):
-            return number
+            section_line = number if section and section == path[: len(section)] else section_line
+        elif "=" in words:
+            key = section + _key_parts(words.partition("=")[0])
+            if key == path[: len(key)]:
+                return number
     return section_line
+
+
+def _key_parts(dotted: str) -> list[str]:
+    return [part.strip(" \t\"'") for part in dotted.split(".")]

@@ -96,7 +96,8 @@ class MarkReader:
                 "a geographic CRS has no eastings and northings; give latitudes and longitudes, or a projected CRS"
             )
             self._refuse("easting", grid, message)
-        geographic[:, 0] = np.remainder(geographic[:, 0] + np.pi, 2 * np.pi) - np.pi
+        turns = np.sign(geographic[:, 0]) * (np.abs(geographic[:, 0]) > np.pi)
+        geographic[:, 0] -= turns * 2 * np.pi
         return np.where(np.isnan(geographic), self._unprojected(frame, grid), geographic)
 
     def _refuse(self, column: str, values: FloatArray, message: str) -> None:
@@ -109,7 +110,7 @@ class MarkReader:
         if np.isnan(grid).all():
             return np.full_like(grid, np.nan)
         plan = frame.from_grid(grid)
-        lost: BoolArray = ~np.isnan(grid).any(axis=1) & np.isnan(plan).any(axis=1)
+        lost = ~np.isnan(grid[:, 0] + grid[:, 1]) & np.isnan(plan[:, 0] + plan[:, 1])
         message = (
             "mark {mark} lies where the map projection has no inverse; check the coordinates, their unit and the CRS"
         )

@@ -4,15 +4,16 @@ from __future__ import annotations
 
 import difflib
 from collections import Counter
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
+from functools import cached_property
 
 from adjust.errors import FieldDataError, Mistake
 
-ENOUGH = FieldDataError.SHOWN
-"""Mistakes after which a file is not read further: no more are shown."""
+ENOUGH = FieldDataError.SHOWN + 1
+"""Mistakes after which a file is not read further: one more than are shown, so that the message tells of more."""
 
-_MOST_COMPARED = 5_000
-"""Names compared for similarity at most; comparing costs about 10 µs a name, and 20 suggestions must not take long."""
+_MOST_COMPARED = 2_000
+"""Names compared for likeness at most; that costs some 10 µs a name, and 20 suggestions must not take long."""
 
 _LONGEST_COMPARED = 100
 """Characters of a misspelt name that are compared."""
@@ -54,7 +55,8 @@ class Mistakes:
 class Likeness:
     """Finds which of the known names a misspelt one stands for.
 
-    Case, spaces, hyphens and leading zeros are what most often differs; after that, likeness of spelling decides.
+    Case, spaces, hyphens and leading zeros are what most often differs, then a single slip of the pen; where there
+    are few names, likeness of spelling decides at last.
     """
 
     def __init__(self, known: Iterable[str]) -> None:
@@ -64,12 +66,25 @@ class Likeness:
     def nearest(self, name: str) -> str | None:
         """The known name most like `name`, or None where none is like it."""
         plain = _plain(name[:_LONGEST_COMPARED])
-        if plain and plain in self._plain:
-            return self._plain[plain]
+        for written in (plain, *(self._slips(plain) if len(plain) > 1 else ())):
+            if written and written in self._plain:
+                return self._plain[written]
         if len(self._names) > _MOST_COMPARED:
             return None
         close = difflib.get_close_matches(name[:_LONGEST_COMPARED], self._names, n=1, cutoff=0.5)
         return close[0] if close else None
+
+    def _slips(self, plain: str) -> Iterator[str]:
+        """What `plain` may have been before two characters changed places, or one was dropped, added or changed."""
+        cuts = [(plain[:place], plain[place:]) for place in range(len(plain) + 1)]
+        yield from (head + tail[1] + tail[0] + tail[2:] for head, tail in cuts if len(tail) > 1)
+        yield from (head + letter + tail for head, tail in cuts for letter in self._letters)
+        yield from (head + tail[1:] for head, tail in cuts if tail)
+        yield from (head + letter + tail[1:] for head, tail in cuts if tail for letter in self._letters)
+
+    @cached_property
+    def _letters(self) -> list[str]:
+        return sorted(set().union(*self._plain))
 
     def suggestion(self, name: str) -> str:
         """`; did you mean 'heights'?`, or nothing where no known name is like it."""

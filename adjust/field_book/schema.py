@@ -17,6 +17,8 @@ from adjust.units import ANGLE_ENDINGS, DEGREE, LENGTH_ENDINGS
 
 SMALLEST_SD = 1e-12
 """Metres or radians. No instrument comes near it, and weights of 10²⁴ are as far as double precision carries."""
+SMALLEST_DISTANCE = 1e-6
+"""Metres: below what any instrument resolves."""
 LARGEST_LENGTH = 1e9
 """Metres, 25 times round the Earth: beyond it a unit or an exponent is wrong."""
 
@@ -49,14 +51,14 @@ class Rule:
     """Follows "expected" in a message, and stands in the reference."""
 
 
-POSITIVE = Rule(lambda value: value > 0, "a value above 0")
 SD = Rule(
     lambda value: (value >= SMALLEST_SD) & (value <= LARGEST_LENGTH),
     "a standard deviation above 0 (to leave a row out write 'no' in the column 'use')",
 )
-NOT_NEGATIVE = Rule(lambda value: value >= 0, "0 or a value above it")
 LENGTH = Rule(lambda value: np.abs(value) <= LARGEST_LENGTH, "a length within ±1 000 000 km; check the unit")
-DISTANCE = Rule(lambda value: (value > 0) & (value <= LARGEST_LENGTH), "a distance above 0 and below 1 000 000 km")
+DISTANCE = Rule(
+    lambda value: (value >= SMALLEST_DISTANCE) & (value <= LARGEST_LENGTH), "a distance above 0 and below 1 000 000 km"
+)
 CIRCLE = Rule(lambda value: np.abs(value) <= 2 * np.pi * (1 + 1e-9), "at most one full circle; check the unit")
 ZENITH = Rule(
     lambda value: (value >= 0) & (value <= np.pi * (1 + 1e-12)),

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from pathlib import Path
 
+import numpy as np
+
 from adjust.field_book.job_file import DEFAULT_KEYS, FrameSection, JobFile, JobFileReader
 from adjust.field_book.mistakes import Likeness
 from adjust.field_book.schema import TABLES
@@ -67,12 +69,10 @@ class SettingsReader:
         name = self.job_file.frame.geoid_grid
         if name is None or self.job_file.frame.kind == "plane":
             return None
+        grid = GeoidGrid(self.folder / name)
         try:
-            there = (self.folder / name).is_file()
-        except (OSError, ValueError):
-            there = False
-        if not there:
-            message = f"read {name!r}, but the job folder has no such file; put the grid there or mend its name"
-            self.reader.complain(("frame", "geoid_grid"), message)
+            grid.heights(np.zeros((1, 2)))
+        except (OSError, ValueError) as error:
+            self.reader.complain(("frame", "geoid_grid"), str(error))
             return None
-        return GeoidGrid(self.folder / name)
+        return grid

@@ -15,6 +15,13 @@ NO_NAME = -1
 """Index of a blank cell, and of a name that a closed vocabulary does not know."""
 
 
+class _Numbers(dict[str, int]):
+    """Numbers of names; unknown names have none."""
+
+    def __missing__(self, name: str) -> int:
+        return NO_NAME
+
+
 class Vocabulary:
     """Names and their numbers in the order in which they were met.
 
@@ -25,7 +32,7 @@ class Vocabulary:
     def __init__(self, described: str, names: Iterable[str] | None = None) -> None:
         self._described = described
         self._open = names is None
-        self._index = {name: number for number, name in enumerate(names or ())}
+        self._index = _Numbers((name, number) for number, name in enumerate(names or ()))
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -38,8 +45,7 @@ class Vocabulary:
             for name in dict.fromkeys(cells):
                 if name:
                     self._index.setdefault(name, len(self._index))
-        find = self._index.get
-        return np.fromiter((find(cell, NO_NAME) for cell in cells), np.int64, len(cells))
+        return np.fromiter(map(self._index.__getitem__, cells), np.int64, len(cells))
 
     def complaint(self, name: str) -> str:
         """What to say of a name that a closed vocabulary does not know."""
