@@ -1,1 +1,9 @@
-"""…"""
+"""Sparse linear least squares by block orthogonal decomposition; knows rows, columns and groups of columns only."""
+
+from adjust.solver.analysis import Analysis, analyse
+from adjust.solver.covariance import SelectedCovariance
+from adjust.solver.errors import RankDefect
+from adjust.solver.factor import Factor
+from adjust.solver.opinion import SecondOpinion
+
+__all__ = ["Analysis", "Factor", "RankDefect", "SecondOpinion", "SelectedCovariance", "analyse"]
