@@ -82,7 +82,7 @@ class EllipsoidFrame(Frame):
         ends = [self.ellipsoid.stations(np.column_stack([coordinates[mark, :2], mean])) for mark in (at, to)]
         chord = ends[1].positions - ends[0].positions
         distance = np.sqrt(np.einsum("ri,ri->r", chord, chord))
-        with np.errstate(invalid="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore"):
             direction = chord / distance[:, None]
         derivatives = np.empty((len(at), 2, 3))
         for role, (mark, end, sign) in enumerate(zip((at, to), ends, (-1.0, 1.0), strict=True)):

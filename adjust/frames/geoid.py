@@ -36,14 +36,13 @@ class GeoidGrid:
         from pyproj import Transformer
         from pyproj.exceptions import ProjError
 
-        if not self.path.is_file():
-            raise ValueError(f"there is no geoid grid {self.path}; put the file in the job folder or mend its name")
-        if any(character in str(self.path) for character in ',"'):
-            raise ValueError(f"PROJ cannot read a path with a comma or a quotation mark: {self.path}; rename the file")
-        steps = ["+proj=unitconvert +xy_in=deg +xy_out=rad", f'+proj=vgridshift +grids="{self.path}" +multiplier=1']
+        path = self.path.resolve()  # PROJ would look for a bare name among its own grids
+        if not path.is_file():
+            raise ValueError(f"there is no geoid grid {path}; put the file in the job folder or mend its name")
+        if any(character in str(path) for character in ',"'):
+            raise ValueError(f"PROJ cannot read a path with a comma or a quotation mark: {path}; rename the file")
+        steps = ["+proj=unitconvert +xy_in=deg +xy_out=rad", f'+proj=vgridshift +grids="{path}" +multiplier=1']
         try:
             return Transformer.from_pipeline("+proj=pipeline " + " ".join(f"+step {step}" for step in steps))
         except ProjError as error:
-            raise ValueError(
-                f"{self.path} is no vertical grid that PROJ can read; give a GTX or GeoTIFF file"
-            ) from error
+            raise ValueError(f"{path} is no vertical grid that PROJ can read; give a GTX or GeoTIFF file") from error

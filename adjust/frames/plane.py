@@ -44,7 +44,7 @@ class PlaneFrame(Frame):
         difference = coordinates[to, :2] - coordinates[at, :2]
         distance = np.hypot(difference[:, 0], difference[:, 1])
         derivatives = np.zeros((len(at), 2, 3))
-        with np.errstate(invalid="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore"):
             derivatives[:, 1, :2] = difference / distance[:, None]
         derivatives[:, 0] = -derivatives[:, 1]
         return distance, derivatives

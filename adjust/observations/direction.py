@@ -20,7 +20,7 @@ def azimuth_gradient(enu: FloatArray) -> FloatArray:
     """Derivatives (rows, 3) of atan2(e, n) by e, n, u, rad/m: (n, −e, 0) / (e² + n²); NaN for a vertical sight."""
     east, north = enu[:, 0], enu[:, 1]
     square = east**2 + north**2
-    with np.errstate(invalid="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore"):
         return np.column_stack([north, -east, np.zeros_like(east)]) / square[:, None]
 
 

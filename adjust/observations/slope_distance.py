@@ -37,5 +37,5 @@ class SlopeDistances(HeightedSight):
 
     def gradient(self, enu: FloatArray, geometry: Geometry) -> FloatArray:
         """The unit vector along the sight; NaN where it has no length."""
-        with np.errstate(invalid="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore"):
             return enu / length_of(enu)[:, None]

@@ -65,7 +65,7 @@ class ZenithAngles(HeightedSight):
         level = np.hypot(enu[:, 0], enu[:, 1])
         rise = enu[:, 2] - bending.fall * level**2 / (2.0 * EARTH_RADIUS)
         square = level**2 + rise**2
-        with np.errstate(invalid="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore"):
             by_level = (rise + bending.fall * level**2 / EARTH_RADIUS) / (square * level)
             gradient = np.column_stack([enu[:, 0] * by_level, enu[:, 1] * by_level, -level / square])
             return gradient - bending.refraction / (2.0 * EARTH_RADIUS) * enu / length_of(enu)[:, None]
