@@ -15,9 +15,9 @@ import numpy as np
 from adjust.arrays import FloatArray
 
 INTERNATIONAL_FOOT = 0.3048
-"""Metres, exact: international yard and pound agreement of 1959 (NIST SP 811, 2008, appendix B.6)."""
+"""Metres, exact: international yard and pound agreement of 1959 (NIST SP 811, 2008, appendix B.6; from memory)."""
 US_SURVEY_FOOT = 1200 / 3937
-"""Metres, exact: Mendenhall order of 1893 (NIST SP 811, 2008, appendix B.6)."""
+"""Metres, exact: Mendenhall order of 1893 (NIST SP 811, 2008, appendix B.6; from memory)."""
 DEGREE = math.pi / 180
 """Radians, exact by definition (SI brochure, 9th edition, table 8)."""
 ARCMINUTE = math.pi / 10_800
@@ -25,7 +25,7 @@ ARCMINUTE = math.pi / 10_800
 ARCSEC = math.pi / 648_000
 """Radians, exact by definition (SI brochure, 9th edition, table 8)."""
 GON = math.pi / 200
-"""Radians: 400 gon make a full circle (ISO 80000-3:2006, 3-5.c)."""
+"""Radians: 400 gon make a full circle (NIST SP 811, 2008, appendix B.8; from memory)."""
 
 LENGTH_ENDINGS: dict[str, float] = {
     "m": 1.0,

@@ -12,7 +12,7 @@ import numpy as np
 
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.field_book.header import Place, read_header
-from adjust.field_book.mistakes import ENOUGH, Mistakes
+from adjust.field_book.mistakes import ENOUGH, Mistakes, and_more
 from adjust.field_book.schema import Column, Quantity, Table
 from adjust.field_book.sheet import Block, Sheet
 from adjust.field_book.vocabulary import NO_NAME, Vocabulary
@@ -127,41 +127,55 @@ class FileReader:
 
     @staticmethod
     def _name_complaints(place: Place, vocabulary: Vocabulary, cells: list[str], doubtful: list[int]) -> Complaints:
+        """Each unknown name once, on its first row."""
+        rows_of: dict[str, list[int]] = {}
         for row in doubtful:
-            if cells[row]:
-                yield row, vocabulary.complaint(cells[row])
-            elif place.column.required:
-                yield row, "is blank, expected a name"
+            rows_of.setdefault(cells[row], []).append(row)
+        for name, rows in rows_of.items():
+            if not name and not place.column.required:
+                continue
+            message = vocabulary.complaint(name) if name else "is blank, expected a name"
+            yield rows[0], message + and_more(len(rows) - 1)
 
     def _numbers(self, place: Place, cells: list[str]) -> tuple[FloatArray, Complaints]:
         written = [cell.replace(",", ".") for cell in cells] if self.sheet.separator == ";" else cells
         whole, single = _parsers(place)
+        unreadable: dict[int, str] = {}
         try:
             values = whole(written)
         except ValueError:
-            return np.full(len(cells), np.nan), self._unreadable(place, cells, single)
-        return values, self._unruly(place, cells, values)
-
-    def _unreadable(self, place: Place, cells: list[str], single: Callable[[str], float]) -> Complaints:
-        for row, cell in enumerate(cells):
-            written = cell.replace(",", ".") if self.sheet.separator == ";" else cell
-            try:
-                if cell or place.column.required:
-                    single(written)
-            except ValueError as error:
-                yield row, str(error).replace(shown(written), shown(cell), 1) if cell else "is blank, expected a value"
+            values = np.full(len(cells), np.nan)
+            unreadable = _read_singly(written, single, values)
+        for row, message in unreadable.items():
+            unreadable[row] = message.replace(shown(written[row]), shown(cells[row]), 1)
+        return values, self._unruly(place, cells, values, unreadable)
 
     @staticmethod
-    def _unruly(place: Place, cells: list[str], values: FloatArray) -> Complaints:
+    def _unruly(place: Place, cells: list[str], values: FloatArray, unreadable: dict[int, str]) -> Complaints:
+        """What is wrong with each cell, given what is wrong with those that could not be read."""
         column, blank = place.column, np.isnan(values)
         good: BoolArray = ~blank if column.required else np.ones(len(values), dtype=bool)
         if column.rule is not None:
             good &= blank | column.rule.holds(values)
+        good[list(unreadable)] = False
         for row in rows_where(~good):
-            if blank[row]:
+            if row in unreadable:
+                yield row, unreadable[row]
+            elif blank[row]:
                 yield row, "is blank, expected a value"
             elif column.rule is not None:
                 yield row, f"read {shown(cells[row])}, expected {column.rule.expected}"
+
+
+def _read_singly(cells: list[str], parse: Callable[[str], float], values: FloatArray) -> dict[int, str]:
+    """Put what each cell holds into `values` (rows,); return what is wrong with those that cannot be read."""
+    unreadable = {}
+    for row, cell in enumerate(cells):
+        try:
+            values[row] = parse(cell) if cell else np.nan
+        except ValueError as error:
+            unreadable[row] = str(error)
+    return unreadable
 
 
 def is_numeric(column: Column) -> bool:

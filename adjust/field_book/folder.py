@@ -99,9 +99,11 @@ def open_folder(path: str | Path, mistakes: Mistakes) -> Folder:
         is_folder, is_file = given.is_dir(), given.is_file()
     except (OSError, ValueError):
         is_folder = is_file = False
-    if is_file:
+    if is_file and given.suffix == ".toml":
         return Folder(given.parent, given.name, mistakes)
-    if not is_folder:
+    if is_file:
+        mistakes.add(str(path), None, None, "is no job file; name a job folder or its job.toml")
+    elif not is_folder:
         mistakes.add(str(path), None, None, "there is no such job; name a job folder or its job.toml")
     elif not (given / JOB_FILE).exists():
         mistakes.add(str(path), None, None, f"there is no {JOB_FILE} in this folder; write one, {_SMALLEST_JOB}")

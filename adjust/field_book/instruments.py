@@ -10,7 +10,7 @@ import numpy as np
 from adjust.arrays import FloatArray, IntArray
 from adjust.field_book.columns import TableRows
 from adjust.field_book.job_file import JobFile
-from adjust.field_book.mistakes import Mistakes
+from adjust.field_book.mistakes import Mistakes, and_more
 from adjust.field_book.schema import SMALLEST_SD
 from adjust.field_book.vocabulary import NO_NAME
 from adjust.observations import Precision
@@ -117,8 +117,9 @@ class Instruments:
         """One mistake for each instrument that leaves rows without an sd, on the first of those rows."""
         for instrument in np.unique(used[lacking]):
             without = lacking[used[lacking] == instrument]
-            others = f" ({len(without) - 1} more rows like it)" if len(without) > 1 else ""
-            message = f"the row has no sd and {self._why(rows, int(instrument), int(without[0]))}{others}"
+            message = (
+                f"the row has no sd and {self._why(rows, int(instrument), int(without[0]))}{and_more(len(without) - 1)}"
+            )
             rows.complain(mistakes, int(without[0]), "sd", message)
 
     def _why(self, rows: TableRows, instrument: int, row: int) -> str:

@@ -101,3 +101,8 @@ def listed(names: Iterable[str], most: int = 8) -> str:
     every = list(names)
     text = ", ".join(every[:most])
     return text if len(every) <= most else f"{text} and {len(every) - most} more"
+
+
+def and_more(rows: int) -> str:
+    """The tail of a message that holds for further rows; empty for none."""
+    return f" (and {rows} more row{'' if rows == 1 else 's'} like it)" if rows else ""

@@ -68,7 +68,7 @@ class JobReader:
         orthometric = frame.kind == "ellipsoid" and self.job_file.frame.heights != "ellipsoidal"
         if not self.mistakes:
             needed = marks_that_need_geoid(frame, orthometric, marks, in_use)
-            self.notes += check_geoid(book.marks, marks, needed, grid=grid is not None, mistakes=self.mistakes)
+            self.notes += check_geoid(book.marks, marks, needed, grid, self.mistakes)
         self.mistakes.raise_if_any()
         self._take_notes(book, frame, marks, left_out)
         setups, in_use, left_out = _with_setups_in_use(book.setups.names, in_use, left_out)
