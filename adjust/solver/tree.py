@@ -54,7 +54,7 @@ def grow_tree(node: IntArray, groups: IntArray, row: IntArray, group: IntArray, 
     place[order] = np.arange(len(order))
     owner = front_of_group[groups[order]]
     start = np.searchsorted(owner, np.arange(len(parent) + 1))
-    front_of_row = np.full(rows, len(parent))
+    front_of_row = np.full(rows, len(parent) - 1)  # where rows without columns go, as between two held marks
     np.minimum.at(front_of_row, row, front_of_group[group])
     edge, border_group = borders(parent, front_of_group, front_of_row[row], group)
     size = np.bincount(groups, minlength=len(node))
