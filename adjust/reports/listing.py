@@ -15,23 +15,26 @@ from adjust.reports.selection import Order
 from adjust.reports.verdict import cautions, digits_left, verdict
 from adjust.reports.wording import NAMES, counted
 
+LISTED = 1000
+"""Rows of one table, some twenty printed pages; the tables beside the listing have them all."""
+
 
 def write_listing(adjustment: Adjustment, order: Order, path: Path) -> None:
     """Write the listing; `order` is that of the observations."""
     path.write_text("\n".join(listing(adjustment, order)) + "\n", encoding="utf-8", newline="\n")
 
 
-def listing(adjustment: Adjustment, order: Order = "worst") -> list[str]:
-    """The lines of the listing."""
+def listing(adjustment: Adjustment, order: Order = "worst", most: int = LISTED) -> list[str]:
+    """The lines of the listing; no table has more than `most` rows."""
     return [
         *_opening(adjustment),
         *title("Job"),
         *facts(job_facts(adjustment)),
-        *listing_tables.control(adjustment),
-        *listing_tables.coordinates(adjustment),
-        *listing_tables.suspects(adjustment),
-        *listing_tables.observations(adjustment, order),
-        *listing_tables.relative(adjustment),
+        *listing_tables.control(adjustment, most),
+        *listing_tables.coordinates(adjustment, most),
+        *listing_tables.suspects(adjustment, most),
+        *listing_tables.observations(adjustment, order, most),
+        *listing_tables.relative(adjustment, most),
         *title("Numerical health"),
         *facts(numerical_facts(adjustment)),
         *_sentences("Notes", adjustment.notes),
@@ -106,7 +109,7 @@ def _observation_words(adjustment: Adjustment) -> str:
             if table.observations.setup is not None
             else ""
         )
-        parts.append(f"{rows} {NAMES[kind][1]}{setups}")
+        parts.append(f"{counted(rows, *NAMES[kind])}{setups}")
     return f"{adjustment.solution.observations}: {', '.join(parts)}"
 
 

@@ -7,10 +7,11 @@ from collections.abc import Sequence
 import numpy as np
 
 from adjust.adjustment import Adjustment
+from adjust.frames import EllipsoidFrame
 from adjust.quality import critical_tau, critical_w, non_centrality
 from adjust.reports.layout import Column, paragraph, table, title
 from adjust.reports.records import Record, line_records, mark_records
-from adjust.reports.selection import LISTED, Order, listed_lines, listed_marks, listed_observations
+from adjust.reports.selection import Order, listed_lines, listed_marks, listed_observations
 from adjust.reports.wording import between, decimals, dms, observed, small, small_unit, what
 
 MARK = Column("mark", text=True)
@@ -37,22 +38,22 @@ def _shown_of(shown: int, total: int, choice: str, file: str) -> list[str]:
     return paragraph(f"Shown are {shown} of {total}: {choice}. All of them stand in {file}.")
 
 
-def control(adjustment: Adjustment) -> list[str]:
+def control(adjustment: Adjustment, most: int) -> list[str]:
     """Marks whose coordinates were held or weighted, as they came out."""
     held = np.array([{"fixed", "weighted"} & set(status) != set() for status in adjustment.statuses], dtype=bool)
     rows = np.flatnonzero(held)
     if len(rows) == 0:
         return []
     columns = (MARK, Column("plan", text=True), Column("height", text=True), *PLACES)
-    records = list(mark_records(adjustment, rows[:LISTED]))
+    records = list(mark_records(adjustment, rows[:most]))
     cells = [[record["mark"], record["plan_status"], record["height_status"], *_places(record)] for record in records]
     lines = [*title("Control"), *table(columns, cells)]
     return lines + _shown_of(len(records), len(rows), "the first in the book", "coordinates.csv")
 
 
-def coordinates(adjustment: Adjustment) -> list[str]:
+def coordinates(adjustment: Adjustment, most: int) -> list[str]:
     """Coordinates with sds and 95 % figures, then geographic coordinates, then ellipses."""
-    records = list(mark_records(adjustment, listed_marks(adjustment)))
+    records = list(mark_records(adjustment, listed_marks(adjustment, most)))
     columns = (
         MARK,
         *PLACES,
@@ -63,14 +64,20 @@ def coordinates(adjustment: Adjustment) -> list[str]:
     keys = ("sd_easting_mm", "sd_northing_mm", "sd_height_mm", "horizontal_95_mm", "height_95_mm")
     cells = [[record["mark"], *_places(record), *(decimals(record[key], 2) for key in keys)] for record in records]
     lines = [*title("Coordinates"), *table(columns, cells)]
-    lines += paragraph(
-        "95 % circle: its radius about the mark holds the true place with a probability of 95 %; "
-        "95 % height: the same for the height, to either side."
-    )
+    lines += paragraph(_explained(records))
     lines += _shown_of(
         len(records), len(adjustment.job.marks), "the least certain, in the book's order", "coordinates.csv"
     )
     return lines + _geographic_table(records) + _ellipse_table(adjustment, records)
+
+
+def _explained(records: Sequence[Record]) -> str:
+    """What the 95 % figures mean, those that are there."""
+    sentences = {
+        "horizontal_95_mm": "95 % circle: the true place lies within this radius with a probability of 95 %.",
+        "height_95_mm": "95 % height: the true height lies within this much, up or down, with the same probability.",
+    }
+    return " ".join(text for key, text in sentences.items() if any(record[key] is not None for record in records))
 
 
 def _geographic_table(records: Sequence[Record]) -> list[str]:
@@ -108,7 +115,12 @@ def _ellipse_table(adjustment: Adjustment, records: Sequence[Record]) -> list[st
     if not cells:
         return []
     lines = [*title("Error ellipses"), *table((MARK, *_ellipse_columns(adjustment)), cells)]
-    return lines + paragraph("Semi-axes; the azimuth is that of the major one, clockwise from grid or true north.")
+    return lines + paragraph(f"Semi-axes; the azimuth is the major one's, clockwise from {_north(adjustment)} north.")
+
+
+def _north(adjustment: Adjustment) -> str:
+    frame = adjustment.job.frame
+    return "true" if isinstance(frame, EllipsoidFrame) and frame.is_geographic else "grid"
 
 
 def _test(adjustment: Adjustment) -> tuple[str, str, float]:
@@ -119,10 +131,10 @@ def _test(adjustment: Adjustment) -> tuple[str, str, float]:
     return "w", "w", critical_w(statistics.significance)
 
 
-def observations(adjustment: Adjustment, order: Order) -> list[str]:
+def observations(adjustment: Adjustment, order: Order, most: int) -> list[str]:
     """Observations with their residuals and tests."""
     key, symbol, bound = _test(adjustment)
-    records = listed_observations(adjustment, order)
+    records = listed_observations(adjustment, order, most)
     columns = (
         Column(symbol),
         Column("residual"),
@@ -167,10 +179,10 @@ def _observation_notes(adjustment: Adjustment, symbol: str, bound: float, shown:
     return lines + _shown_of(shown, total, "those that fit worst", "residuals.csv")
 
 
-def suspects(adjustment: Adjustment) -> list[str]:
+def suspects(adjustment: Adjustment, most: int) -> list[str]:
     """Suspect observations and what each would be off by if it alone were wrong."""
     key, symbol, _ = _test(adjustment)
-    found = [record for record in listed_observations(adjustment, "worst") if record["suspect"]]
+    found = [record for record in listed_observations(adjustment, "worst", most) if record["suspect"]]
     if not found:
         return []
     statistics = adjustment.job.statistics
@@ -210,9 +222,9 @@ def _suspect_cells(record: Record, key: str, shift: float) -> list[str]:
     ]
 
 
-def relative(adjustment: Adjustment) -> list[str]:
+def relative(adjustment: Adjustment, most: int) -> list[str]:
     """Accuracy of every observed pair of marks against each other."""
-    records = list(line_records(adjustment, listed_lines(adjustment)))
+    records = list(line_records(adjustment, listed_lines(adjustment, most)))
     if not records:
         return []
     columns = (

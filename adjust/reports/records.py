@@ -30,8 +30,8 @@ CONTROL_COMPONENTS = ("easting", "northing", "height")
 
 
 def plain(values: FloatArray) -> list[Any]:
-    """Numbers of an array (n,) as Python floats, None where there is none."""
-    return [value if math.isfinite(value) else None for value in values.tolist()]
+    """Numbers of an array (n,) as Python floats, None where there is none; nothing is printed as −0."""
+    return [value if math.isfinite(value) else None for value in (values + 0.0).tolist()]
 
 
 def number(value: float | None) -> float | None:

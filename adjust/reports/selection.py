@@ -13,9 +13,6 @@ from adjust.reports.records import Record, scalar_records
 
 Order = Literal["worst", "book"]
 
-LISTED = 1000
-"""Rows of one table in a listing, some twenty printed pages; the tables beside it have them all."""
-
 
 def tested(adjustment: Adjustment) -> FloatArray:
     """|w|, or |τ| on the posterior basis, of all scalars (k,) in the order of the records; −1 where there is none."""
@@ -25,13 +22,13 @@ def tested(adjustment: Adjustment) -> FloatArray:
     return together
 
 
-def worst_first(figures: FloatArray, most: int = LISTED) -> IntArray:
+def worst_first(figures: FloatArray, most: int) -> IntArray:
     """Indices of the `most` largest figures, largest first; ties in their given order, NaN last."""
     order: IntArray = np.argsort(-np.nan_to_num(figures, nan=-np.inf), kind="stable")[:most]
     return order
 
 
-def listed_observations(adjustment: Adjustment, order: Order, most: int = LISTED) -> list[Record]:
+def listed_observations(adjustment: Adjustment, order: Order, most: int) -> list[Record]:
     """The records to print: at most `most`, those that fit worst, worst first or as they stand in the book."""
     chosen = worst_first(tested(adjustment), most)
     in_book = np.sort(chosen)
@@ -51,17 +48,17 @@ def _in_book_order(adjustment: Adjustment, scalars: IntArray) -> Iterator[Record
         first += size
 
 
-def listed_marks(adjustment: Adjustment) -> IntArray:
-    """The marks (m,) to print, in the book's order: of a large job those with the largest 95 % figures."""
+def listed_marks(adjustment: Adjustment, most: int) -> IntArray:
+    """At most `most` marks (m,) to print, in the book's order: those with the largest 95 % figures."""
     uncertainty = np.fmax(adjustment.horizontal_95, adjustment.height_95)
-    return np.sort(worst_first(uncertainty))
+    return np.sort(worst_first(uncertainty, most))
 
 
-def listed_lines(adjustment: Adjustment) -> IntArray:
-    """The lines (m,) to print, least certain for their length first; those without a plan come after, by height sd."""
+def listed_lines(adjustment: Adjustment, most: int) -> IntArray:
+    """At most `most` lines (m,) to print, least certain for their length first; without a plan last, by height sd."""
     with np.errstate(divide="ignore", invalid="ignore"):
         ratio = adjustment.line_ellipses.semi_major / adjustment.line_lengths
     heights = np.nan_to_num(adjustment.line_covariances[:, 2, 2], nan=-1.0)
     plan = np.nan_to_num(ratio, nan=-1.0, posinf=-1.0)
-    order: IntArray = np.lexsort((np.arange(len(plan)), -heights, -plan))[:LISTED]
+    order: IntArray = np.lexsort((np.arange(len(plan)), -heights, -plan))[:most]
     return order

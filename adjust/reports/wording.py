@@ -11,14 +11,23 @@ NAMES = {
     "direction": ("direction", "directions"),
     "angle": ("angle", "angles"),
     "azimuth": ("azimuth", "azimuths"),
-    "slope_distance": ("slope", "slope distances"),
-    "horizontal_distance": ("horizontal", "horizontal distances"),
-    "zenith": ("zenith", "zenith angles"),
-    "height_difference": ("rise", "height differences"),
+    "slope_distance": ("slope distance", "slope distances"),
+    "horizontal_distance": ("horizontal distance", "horizontal distances"),
+    "zenith": ("zenith angle", "zenith angles"),
+    "height_difference": ("height difference", "height differences"),
     "vector": ("vector", "vectors"),
-    "control": ("control", "control coordinates"),
+    "control": ("control coordinate", "control coordinates"),
 }
-"""Of each kind: in a table's row, and counted."""
+"""Of each kind: one, and many."""
+
+SHORT_NAMES = {
+    "slope_distance": "slope",
+    "horizontal_distance": "horizontal",
+    "zenith": "zenith",
+    "height_difference": "rise",
+    "control": "control",
+}
+"""In a table's row, where the kind has a shorter name."""
 
 _AXES = {"easting": "E", "northing": "N", "height": "H"}
 
@@ -60,7 +69,8 @@ def observed(record: Record) -> str:
 
 def what(record: Record) -> str:
     """The kind, with its component."""
-    name = NAMES[record["kind"]][0]
+    kind: str = record["kind"]
+    name = SHORT_NAMES.get(kind, kind)
     return name if record["component"] is None else f"{name} {_AXES.get(record['component'], record['component'])}"
 
 
