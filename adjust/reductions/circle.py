@@ -1,0 +1,36 @@
+"""Readings of a circle as numbers: differences across zero, and means of readings that belong together."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from adjust.arrays import FloatArray, IntArray
+
+FULL_TURN = 2.0 * np.pi
+HALF_TURN = np.pi
+
+
+def wrapped(angle: FloatArray) -> FloatArray:
+    """The same angles within half a turn of zero, radians, −π < angle ≤ π."""
+    return HALF_TURN - np.remainder(HALF_TURN - angle, FULL_TURN)
+
+
+def first_of_groups(group: IntArray, groups: int) -> IntArray:
+    """The first row (groups,) of each group; `group` (rows,) numbers the groups, and none may be empty."""
+    first = np.full(groups, len(group), dtype=np.int64)
+    np.minimum.at(first, group, np.arange(len(group)))
+    return first
+
+
+def group_sums(values: FloatArray, group: IntArray, groups: int) -> FloatArray:
+    """Sum (groups,) of the values (rows,) of each group."""
+    sums: FloatArray = np.bincount(group, weights=values, minlength=groups).astype(np.float64)
+    return sums
+
+
+def number_groups(*keys: IntArray) -> tuple[IntArray, int]:
+    """Number rows by equal keys (rows,), groups in the order in which they are met: (group of each row, how many)."""
+    _, first, group = np.unique(np.column_stack(keys), axis=0, return_index=True, return_inverse=True)
+    place: IntArray = np.empty(len(first), dtype=np.int64)
+    place[np.argsort(first)] = np.arange(len(first))
+    return place[group.reshape(-1)], len(first)
