@@ -168,13 +168,18 @@ class FileReader:
 
 
 def _read_singly(cells: list[str], parse: Callable[[str], float], values: FloatArray) -> dict[int, str]:
-    """Put what each cell holds into `values` (rows,); return what is wrong with those that cannot be read."""
-    unreadable = {}
+    """Put what each cell holds into `values` (rows,); return what is wrong with those that cannot be read.
+
+    Stops when enough are found: what comes after them is not shown.
+    """
+    unreadable: dict[int, str] = {}
     for row, cell in enumerate(cells):
         try:
             values[row] = parse(cell) if cell else np.nan
         except ValueError as error:
             unreadable[row] = str(error)
+            if len(unreadable) == ENOUGH:
+                break
     return unreadable
 
 

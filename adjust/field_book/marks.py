@@ -29,10 +29,12 @@ class MarkReader:
     def read(self, frame: Frame) -> Marks:
         """The marks; meaningful only where no mistake was noted."""
         self.check_names()
-        given = np.column_stack([self._plan(frame), self.rows.numbers["height"]])
+        grid, geographic = self._numbers("easting", "northing"), self._numbers("longitude", "latitude")
+        written = np.where(np.isnan(geographic), grid, geographic)
+        given = np.column_stack([self._plan(frame, grid, geographic), self.rows.numbers["height"]])
         control = np.column_stack([_CONTROL[self.rows.indices[f"{part}_control"]] for part in ("plan", "height")])
         sd = self._numbers("sd_easting", "sd_northing", "sd_height")
-        self._check_control("plan", control[:, 0], given[:, PLAN], sd[:, PLAN])
+        self._check_control("plan", control[:, 0], written, sd[:, PLAN])
         self._check_control("height", control[:, 1], given[:, HEIGHT], sd[:, HEIGHT])
         texts = (*self.descriptions.names, "")
         return Marks(
@@ -79,9 +81,8 @@ class MarkReader:
             return f"{message}, with another height ({heights[0]:g} m there, {heights[1]:g} m here); keep the right row"
         return f"{message}; keep one row for each mark"
 
-    def _plan(self, frame: Frame) -> FloatArray:
+    def _plan(self, frame: Frame, grid: FloatArray, geographic: FloatArray) -> FloatArray:
         """Plan coordinates (n, 2) in the frame, NaN where none are given."""
-        grid, geographic = self._numbers("easting", "northing"), self._numbers("longitude", "latitude")
         for pair, names in ((grid, ("easting", "northing")), (geographic, ("longitude", "latitude"))):
             lacks = np.isnan(pair)
             for column in (0, 1):
@@ -97,7 +98,7 @@ class MarkReader:
             )
             self._refuse("easting", grid, message)
         turns = np.sign(geographic[:, 0]) * (np.abs(geographic[:, 0]) > np.pi)
-        geographic[:, 0] -= turns * 2 * np.pi
+        geographic = geographic - np.column_stack([turns * 2 * np.pi, np.zeros_like(turns)])
         return np.where(np.isnan(geographic), self._unprojected(frame, grid), geographic)
 
     def _refuse(self, column: str, values: FloatArray, message: str) -> None:

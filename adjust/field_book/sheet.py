@@ -13,7 +13,7 @@ import numpy as np
 from adjust.arrays import IntArray
 from adjust.field_book.mistakes import Mistakes
 
-CHUNK = 4_000_000
+CHUNK = 1_000_000
 """Characters cut at once: enough to be quick, few enough that a million rows never stand in memory as text cells."""
 
 _IDLE_LINE = re.compile(r"""^(?:[^\S\n]*#.*|(?:[^\S\n]|[,;"'])*)$""", re.MULTILINE)
@@ -88,11 +88,11 @@ class Sheet:
             return Block(numbers, [list(map(str.strip, cells[column::width])) for column in range(width)])
         rows = [self._row(int(number), line, width) for number, line in zip(numbers, lines, strict=True)]
         kept = [cells for cells in rows if cells is not None]
-        columns = [list(map(str.strip, column)) for column in zip(*kept, strict=True)] or [[] for _ in self.titles]
+        columns = [list(column) for column in zip(*kept, strict=True)] or [[] for _ in self.titles]
         return Block(numbers[[cells is not None for cells in rows]], columns)
 
     def _row(self, number: int, line: str, width: int) -> list[str] | None:
-        cells = line.split(self.separator) if '"' not in line else self._cells(number, line)
+        cells = self._cells(number, line)
         if cells is None or len(cells) == width:
             return cells
         if len(cells) > width and not any(map(str.strip, cells[width:])):
@@ -107,6 +107,8 @@ class Sheet:
 
     def _cells(self, number: int, line: str) -> list[str] | None:
         """Cut one line, with quoted cells; a quoted cell ends on its line."""
+        if '"' not in line:
+            return [cell.strip() for cell in line.split(self.separator)]
         try:
             reader = csv.reader([line], delimiter=self.separator, strict=True, skipinitialspace=True)
             return [cell.strip() for cell in next(reader)]
