@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 
 import numpy as np
@@ -169,10 +170,10 @@ def _observation_cells(record: Record, key: str) -> list[str]:
 
 def _observation_notes(adjustment: Adjustment, symbol: str, bound: float, shown: int) -> list[str]:
     statistics = adjustment.job.statistics
+    doubt = f"beyond {bound:.2f} it is suspect (!)" if math.isfinite(bound) else "nothing is left to test it against"
     lines = paragraph(
-        f"Residual: adjusted minus observed. {symbol}: the residual on its own sd; beyond {bound:.2f} it is "
-        f"suspect (!). Least bias: the smallest error that the test would find, {100 * statistics.power:g} times "
-        "in 100. r: the share of an error that shows in the residual; –: nothing checks this observation. "
+        f"Residual: adjusted minus observed. {symbol}: the residual on its own sd; {doubt}. "
+        f"Least bias: the smallest error that the test would find, {100 * statistics.power:g} times in 100. r: the share of an error that shows in the residual; –: nothing checks this observation. "
         "Observed lengths are metres, angles degrees-minutes-seconds."
     )
     total = adjustment.solution.observations
