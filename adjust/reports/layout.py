@@ -86,3 +86,10 @@ def shortened(text: str, width: int, ending: bool = False) -> str:
     if len(text) <= width:
         return text
     return "…" + text[len(text) - width + 1 :] if ending else text[: width - 1] + "…"
+
+
+def shown_of(shown: int, total: int, choice: str, file: str) -> list[str]:
+    """The sentence under a table that has fewer rows than there are: what is shown, and where the rest is."""
+    if shown == total:
+        return []
+    return paragraph(f"Shown are {shown} of {total}: {choice}. All of them stand in {file}.")

@@ -9,7 +9,7 @@ import numpy as np
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame, PlaneFrame
 from adjust.quality import critical_tau, critical_w
-from adjust.reports import listing_tables
+from adjust.reports import listing_marks, listing_observations
 from adjust.reports.layout import facts, paragraph, title
 from adjust.reports.selection import Order
 from adjust.reports.verdict import cautions, digits_left, verdict
@@ -30,11 +30,11 @@ def listing(adjustment: Adjustment, order: Order = "worst", most: int = LISTED) 
         *_opening(adjustment),
         *title("Job"),
         *facts(job_facts(adjustment)),
-        *listing_tables.control(adjustment, most),
-        *listing_tables.coordinates(adjustment, most),
-        *listing_tables.suspects(adjustment, most),
-        *listing_tables.observations(adjustment, order, most),
-        *listing_tables.relative(adjustment, most),
+        *listing_marks.control(adjustment, most),
+        *listing_marks.coordinates(adjustment, most),
+        *listing_observations.suspects(adjustment, most),
+        *listing_observations.observations(adjustment, order, most),
+        *listing_marks.relative(adjustment, most),
         *title("Numerical health"),
         *facts(numerical_facts(adjustment)),
         *_sentences("Notes", adjustment.notes),

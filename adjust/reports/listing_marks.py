@@ -1,22 +1,19 @@
-"""The tables of the listing: control, coordinates, ellipses, observations, suspects, relative accuracy."""
+"""The listing's tables of marks and lines: control, coordinates, ellipses, relative accuracy."""
 
 from __future__ import annotations
 
-import math
 from collections.abc import Sequence
 
 import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame
-from adjust.quality import critical_tau, critical_w, non_centrality
-from adjust.reports.layout import Column, paragraph, table, title
+from adjust.reports.layout import Column, paragraph, shown_of, table, title
 from adjust.reports.records import Record, line_records, mark_records
-from adjust.reports.selection import Order, listed_lines, listed_marks, listed_observations
-from adjust.reports.wording import between, decimals, dms, observed, small, small_unit, what
+from adjust.reports.selection import listed_lines, listed_marks
+from adjust.reports.wording import decimals, dms
 
 MARK = Column("mark", text=True)
-SOURCE = Column("source", text=True, ending=True)
 PLACES = (Column("easting", "m"), Column("northing", "m"), Column("height", "m"))
 
 
@@ -32,13 +29,6 @@ def _geographic(record: Record) -> list[str]:
     ]
 
 
-def _shown_of(shown: int, total: int, choice: str, file: str) -> list[str]:
-    """The sentence under a thinned table."""
-    if shown == total:
-        return []
-    return paragraph(f"Shown are {shown} of {total}: {choice}. All of them stand in {file}.")
-
-
 def control(adjustment: Adjustment, most: int) -> list[str]:
     """Marks whose coordinates were held or weighted, as they came out."""
     held = np.array([{"fixed", "weighted"} & set(status) != set() for status in adjustment.statuses], dtype=bool)
@@ -49,7 +39,7 @@ def control(adjustment: Adjustment, most: int) -> list[str]:
     records = list(mark_records(adjustment, rows[:most]))
     cells = [[record["mark"], record["plan_status"], record["height_status"], *_places(record)] for record in records]
     lines = [*title("Control"), *table(columns, cells)]
-    return lines + _shown_of(len(records), len(rows), "the first in the book", "coordinates.csv")
+    return lines + shown_of(len(records), len(rows), "the first in the book", "coordinates.csv")
 
 
 def coordinates(adjustment: Adjustment, most: int) -> list[str]:
@@ -66,7 +56,7 @@ def coordinates(adjustment: Adjustment, most: int) -> list[str]:
     cells = [[record["mark"], *_places(record), *(decimals(record[key], 2) for key in keys)] for record in records]
     lines = [*title("Coordinates"), *table(columns, cells)]
     lines += paragraph(_explained(records))
-    lines += _shown_of(
+    lines += shown_of(
         len(records), len(adjustment.job.marks), "the least certain, in the book's order", "coordinates.csv"
     )
     return lines + _geographic_table(records) + _ellipse_table(adjustment, records)
@@ -124,105 +114,6 @@ def _north(adjustment: Adjustment) -> str:
     return "true" if isinstance(frame, EllipsoidFrame) and frame.is_geographic else "grid"
 
 
-def _test(adjustment: Adjustment) -> tuple[str, str, float]:
-    """Key and symbol of the figure that is tested, and its bound."""
-    statistics, solution = adjustment.job.statistics, adjustment.solution
-    if solution.sd_basis == "posterior":
-        return "tau", "τ", critical_tau(statistics.significance, solution.degrees_of_freedom)
-    return "w", "w", critical_w(statistics.significance)
-
-
-def observations(adjustment: Adjustment, order: Order, most: int) -> list[str]:
-    """Observations with their residuals and tests."""
-    key, symbol, bound = _test(adjustment)
-    records = listed_observations(adjustment, order, most)
-    columns = (
-        Column(symbol),
-        Column("residual"),
-        Column("sd"),
-        Column("least", "bias"),
-        Column("", text=True),
-        Column("r"),
-        Column("observed"),
-        Column("what", text=True),
-        Column("marks", text=True),
-        SOURCE,
-    )
-    lines = title("Observations, worst first" if order == "worst" else "Observations, in the order of the book")
-    lines += table(columns, [_observation_cells(record, key) for record in records])
-    return lines + _observation_notes(adjustment, symbol, bound, len(records))
-
-
-def _observation_cells(record: Record, key: str) -> list[str]:
-    return [
-        (decimals(record[key], 2, signed=True) or "–") + ("!" if record["suspect"] else " "),
-        small(record, "residual", signed=True),
-        small(record, "sd"),
-        small(record, "minimal_detectable_bias") or "–",
-        small_unit(record),
-        decimals(record["redundancy"], 2),
-        observed(record),
-        what(record),
-        between(record),
-        record["source"],
-    ]
-
-
-def _observation_notes(adjustment: Adjustment, symbol: str, bound: float, shown: int) -> list[str]:
-    statistics = adjustment.job.statistics
-    doubt = f"beyond {bound:.2f} it is suspect (!)" if math.isfinite(bound) else "nothing is left to test it against"
-    lines = paragraph(
-        f"Residual: adjusted minus observed. {symbol}: the residual on its own sd; {doubt}. "
-        f"Least bias: the smallest error that the test would find, {100 * statistics.power:g} times in 100. r: the share of an error that shows in the residual; –: nothing checks this observation. "
-        "Observed lengths are metres, angles degrees-minutes-seconds."
-    )
-    total = adjustment.solution.observations
-    return lines + _shown_of(shown, total, "those that fit worst", "residuals.csv")
-
-
-def suspects(adjustment: Adjustment, most: int) -> list[str]:
-    """Suspect observations and what each would be off by if it alone were wrong."""
-    key, symbol, _ = _test(adjustment)
-    found = [record for record in listed_observations(adjustment, "worst", most) if record["suspect"]]
-    if not found:
-        return []
-    statistics = adjustment.job.statistics
-    shift = non_centrality(statistics.significance, statistics.power) ** 0.5
-    columns = (
-        SOURCE,
-        Column("what", text=True),
-        Column("marks", text=True),
-        Column("observed"),
-        Column(symbol),
-        Column("off by"),
-        Column("", text=True),
-    )
-    cells = [_suspect_cells(record, key, shift) for record in found]
-    lines = [*title("Suspect observations"), *table(columns, cells)]
-    lines += paragraph(
-        "Off by: observed minus true, if this observation alone is wrong. One blunder makes its neighbours look bad "
-        "too: look into the first, mend it or set its `use` to `no`, and adjust again."
-    )
-    return lines + _shown_of(len(found), _suspect_scalars(adjustment), "the worst", "residuals.csv")
-
-
-def _suspect_scalars(adjustment: Adjustment) -> int:
-    return int(sum(np.count_nonzero(kind.suspect) for kind in adjustment.residuals))
-
-
-def _suspect_cells(record: Record, key: str, shift: float) -> list[str]:
-    error = dict(record, error=-record["w"] * record["minimal_detectable_bias"] / shift)
-    return [
-        record["source"],
-        what(record),
-        between(record),
-        observed(record),
-        decimals(record[key], 2, signed=True),
-        small(error, "error", signed=True),
-        small_unit(record),
-    ]
-
-
 def relative(adjustment: Adjustment, most: int) -> list[str]:
     """Accuracy of every observed pair of marks against each other."""
     records = list(line_records(adjustment, listed_lines(adjustment, most)))
@@ -240,7 +131,7 @@ def relative(adjustment: Adjustment, most: int) -> list[str]:
         *title("Relative accuracy of observed lines, worst first"),
         *table(columns, [_line_cells(record) for record in records]),
     ]
-    return lines + _shown_of(len(records), len(adjustment.lines), "the least certain for their length", "results.json")
+    return lines + shown_of(len(records), len(adjustment.lines), "the least certain for their length", "results.json")
 
 
 def _line_cells(record: Record) -> list[str]:
