@@ -9,6 +9,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 from pyproj import CRS, Proj, Transformer
+from pyproj.database import CRSInfo, query_crs_info
+from pyproj.enums import PJType
 
 from adjust.frames import EllipsoidFrame
 
@@ -165,6 +167,31 @@ def test_well_known_text_and_proj_strings_do_too() -> None:
 def test_an_unusable_crs_is_refused_in_words(crs: str, message: str) -> None:
     with pytest.raises(ValueError, match=message):
         EllipsoidFrame(crs)
+
+
+def area_centre(info: CRSInfo) -> np.ndarray:
+    """A place inside the area of use, off its middle."""
+    west, south, east, north = info.area_of_use.bounds
+    width = (east - west) % 360.0
+    return mark((west + 0.6 * width + 180.0) % 360.0 - 180.0, np.clip(south + 0.63 * (north - south), -88.0, 88.0))
+
+
+def test_every_fortieth_projected_crs_of_epsg() -> None:
+    """Grid and back inside the area of use; the few CRS whose map PROJ lacks are refused in words."""
+    registry = query_crs_info(auth_name="EPSG", pj_types=[PJType.PROJECTED_CRS])[::40]
+    refusals = []
+    for info in registry:
+        try:
+            frame = EllipsoidFrame(f"EPSG:{info.code}")
+        except ValueError as error:
+            refusals.append(str(error))
+            continue
+        place = area_centre(info)
+        back = np.column_stack([frame.from_grid(frame.grid_coordinates(place)), [0.0]])
+        displacement = frame.displacement(place, back)
+        np.testing.assert_allclose(displacement, 0, rtol=0, atol=2e-8, err_msg=info.name)  # m
+    assert all("cannot compute its map projection" in refusal for refusal in refusals)
+    assert len(refusals) < 0.02 * len(registry)
 
 
 def test_frames_of_one_crs_are_equal_and_can_be_sent_to_another_process() -> None:

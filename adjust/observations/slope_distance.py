@@ -19,13 +19,17 @@ def length_of(enu: FloatArray) -> FloatArray:
 
 @dataclass(frozen=True, kw_only=True)
 class SlopeDistances(HeightedSight):
-    """Straight distances between instrument and target, metres."""
+    """Straight distances between instrument and target, metres.
+
+    They help a height that something else makes an unknown. By themselves, on lines near the level, they would
+    determine it badly, and take it as given.
+    """
 
     kind = "slope_distance"
     table = "distances"
     unit = "m"
     determines_plan = True
-    determines_height = True
+    determines_height = False
 
     def sight(self, geometry: Geometry) -> Sight:
         """Instrument to target; the axes do not matter."""
