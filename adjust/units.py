@@ -150,8 +150,12 @@ def parse_dms_column(cells: Sequence[str]) -> FloatArray:
 
 
 def parse_lengths(cells: Sequence[str], ending: str) -> FloatArray:
-    """Read a column of lengths (rows,), metres; NaN where blank. Raises ValueError as `parse_numbers` does."""
-    return parse_numbers(cells) * LENGTH_ENDINGS[ending]
+    """Read a column of lengths (rows,), metres; NaN where blank. Raises ValueError as `parse_numbers` does.
+
+    A number that only its unit makes too large comes out infinite, for the caller's bounds to refuse.
+    """
+    with np.errstate(over="ignore"):
+        return parse_numbers(cells) * LENGTH_ENDINGS[ending]
 
 
 def parse_angles(cells: Sequence[str], ending: str) -> FloatArray:
