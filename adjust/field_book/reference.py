@@ -42,7 +42,7 @@ def _values(column: Column) -> str:
         first, *others = (f"`{word}`" for word in column.choices)
         return ", ".join([f"{first} (default)", *others])
     if column.rule is None or column.rule is LENGTH:
-        return column.quantity.value
+        return str(column.quantity.value)
     expected: str = re.split("[:;(]", column.rule.expected)[0]
     return expected.strip()
 
