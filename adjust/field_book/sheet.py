@@ -31,7 +31,8 @@ class Block:
 class Sheet:
     """The header row of a CSV file and its rows, block by block.
 
-    A file whose header row holds a semicolon is separated by semicolons, and its numbers may have decimal commas.
+    A file whose header row holds more semicolons than commas is separated by semicolons, and its numbers may have
+    decimal commas.
     """
 
     def __init__(self, file: str, text: str, mistakes: Mistakes) -> None:
@@ -42,7 +43,7 @@ class Sheet:
         plain = text.replace("\r\n", "\n").replace("\r", "\n") if "\r" in text else text
         self._text = plain.rstrip("\n")
         self.header_line, self._start, header = self._find_header()
-        self.separator = ";" if ";" in header else ","
+        self.separator = ";" if header.count(";") > header.count(",") else ","
         self.titles = self._cells(self.header_line, header) or []
         if not header:
             mistakes.add(file, None, None, "is empty, expected a header row and rows below it")
