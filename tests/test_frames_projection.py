@@ -83,6 +83,13 @@ def test_on_a_conformal_map_grid_rotation_is_the_meridian_convergence_of_proj(cr
     assert rotation == pytest.approx(np.radians(factors.meridian_convergence), rel=0, abs=1e-9)  # rad: 0.0002″
 
 
+@pytest.mark.parametrize("longitude", [-180.0, 180.0, 179.9999, -179.9999])
+def test_at_the_edge_of_a_world_map_grid_north_is_north(longitude: float) -> None:
+    """Mercator's map is cut along the antimeridian; its grid north is true north on both sides."""
+    rotation = EllipsoidFrame("EPSG:3395").grid_rotation(mark(longitude, -17.0))
+    np.testing.assert_allclose(rotation, 0.0, rtol=0, atol=1e-9)  # rad
+
+
 def test_grid_north_lies_east_of_true_north_in_the_north_east_of_a_zone() -> None:
     frame = EllipsoidFrame("EPSG:25832")
     east, west = frame.grid_rotation(np.vstack([mark(11.0, 50.0), mark(7.0, 50.0)]))

@@ -16,6 +16,8 @@ if TYPE_CHECKING:
 GRID_NORTH_STEP = 1e-5
 """Half the step, radians (64 m), of the central difference that finds grid north. Its truncation, some 1e-11 rad, and
 PROJ's rounding of 1e-9 m over that step, some 1e-11 rad, are in balance."""
+TORN = 1000.0
+"""Metres: changes over 64 m ahead and 64 m behind cannot differ so much on a map in one piece."""
 
 
 @dataclass(frozen=True)
@@ -73,8 +75,14 @@ class MapProjection:
         return np.arctan2(-by_north, by_east)
 
     def _easting_change(self, longitude_latitude: FloatArray, step: FloatArray) -> FloatArray:
-        """Difference (n,) of the easting over two steps, metres."""
-        return self.forward(longitude_latitude + step)[:, 0] - self.forward(longitude_latitude - step)[:, 0]
+        """Change (n,) of the easting over a step, metres: the mean of one ahead and one behind.
+
+        Where the edge of a map of the whole world runs between them, that of the step which does not cross it.
+        """
+        before, here, after = (self.forward(longitude_latitude + sign * step)[:, 0] for sign in (-1.0, 0.0, 1.0))
+        behind, ahead = here - before, after - here
+        shorter = np.where(np.abs(behind) < np.abs(ahead), behind, ahead)
+        return np.where(np.abs(ahead - behind) > TORN, shorter, 0.5 * (behind + ahead))
 
 
 def transformed(transformer: Transformer, columns: tuple[FloatArray, ...], direction: str = "FORWARD") -> FloatArray:

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from abc import ABC, abstractmethod
+from collections.abc import Sequence
 from dataclasses import dataclass, fields, replace
 from typing import Any, ClassVar, Literal, Self
 
 import numpy as np
+from numpy.typing import NDArray
 
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.frames import Geometry
@@ -36,10 +38,23 @@ class Provenance(Columns):
     files: tuple[str, ...]
     file: IntArray
     line: IntArray
+    further: NDArray[np.object_] | None = None
+    """(rows,) of tuples: the lines after `line` that a mean was made of; None where every row is one line."""
 
     def label(self, row: int) -> str:
-        """`levels.csv:3`."""
-        return f"{self.files[self.file[row]]}:{self.line[row]}"
+        """`levels.csv:3`; of a mean `pointings.csv:3+7+12`."""
+        further = "" if self.further is None else "".join(f"+{line}" for line in self.further[row])
+        return f"{self.files[self.file[row]]}:{self.line[row]}{further}"
+
+    def gathered(self, group: IntArray, groups: int) -> Provenance:
+        """Of means (groups,): all lines of the rows of each group, in the order of the rows; `group` (rows,) numbers
+        the groups, none empty and none across two files."""
+        order = np.argsort(group, kind="stable")
+        starts = np.searchsorted(group[order], np.arange(groups))
+        lines = np.split(self.line[order], starts[1:])
+        further = np.empty(groups, dtype=object)
+        further[:] = [tuple(part[1:].tolist()) for part in lines]
+        return Provenance(self.files, self.file[order][starts], self.line[order][starts], further)
 
 
 @dataclass(frozen=True)
@@ -49,7 +64,7 @@ class Precision(Columns):
     `stated` is the row's own sd and wins; it is NaN where the instrument's model holds:
     sd² = constant² + (proportional · observed)² + what centring and height measuring contribute.
     `centring` and `target_centring` are metres along each horizontal axis, `heights` metres for measuring an
-    instrument or a target height.
+    instrument or a target height (0 where none was measured).
     """
 
     stated: FloatArray
@@ -116,3 +131,42 @@ class Observations(Columns, ABC):
     @abstractmethod
     def covariance(self, geometry: Geometry) -> FloatArray:
         """A-priori covariance (rows, components, components), m² or rad²."""
+
+
+def concatenated(parts: Sequence[Observations]) -> Observations:
+    """The rows of observations of one kind, one after the other."""
+    whole: Observations = parts[0] if len(parts) == 1 else _joined(parts)
+    return whole
+
+
+def _joined(parts: Sequence[Any]) -> Any:
+    """Columns below each other, nested ones too; files of provenances are numbered anew."""
+    if isinstance(parts[0], Provenance):
+        return _joined_provenance(parts)
+    columns = {}
+    for field in fields(parts[0]):
+        values = [getattr(part, field.name) for part in parts]
+        columns[field.name] = np.concatenate(values) if isinstance(values[0], np.ndarray) else _joined(values)
+    return replace(parts[0], **columns)
+
+
+def _joined_provenance(parts: Sequence[Provenance]) -> Provenance:
+    files = tuple(dict.fromkeys(file for part in parts for file in part.files))
+    number = [np.array([files.index(file) for file in part.files], dtype=np.int64) for part in parts]
+    further = None
+    if any(part.further is not None for part in parts):
+        further = np.concatenate([_lines_after_the_first(part) for part in parts])
+    return Provenance(
+        files,
+        np.concatenate([place[part.file] for place, part in zip(number, parts, strict=True)]),
+        np.concatenate([part.line for part in parts]),
+        further,
+    )
+
+
+def _lines_after_the_first(part: Provenance) -> NDArray[np.object_]:
+    if part.further is not None:
+        return part.further
+    nothing = np.empty(len(part.line), dtype=object)
+    nothing[:] = [()] * len(part.line)
+    return nothing
