@@ -20,7 +20,7 @@ READ, ADJUSTED = 0.15, 0.85
 """Shares of the waiting time that lie behind when the job is read, and when it is adjusted."""
 
 
-@click.command("adjust", epilog="Example: hubtack adjust field_data/levelling --out results")
+@click.command("adjust", epilog="Example: hubtack adjust field_data/town_traverse --out results")
 @click.argument("job", type=click.Path(path_type=Path))
 @click.option(
     "--out", type=click.Path(path_type=Path), metavar="DIR", help="Folder for the results.  [default: JOB/out]"

@@ -14,7 +14,7 @@ INTERRUPTED = 130
 """Exit status after Ctrl-C: 128 + SIGINT, as shells expect."""
 
 
-@click.group(epilog="Example: hubtack adjust field_data/levelling")
+@click.group(epilog="Example: hubtack adjust field_data/fen_levels")
 @click.version_option(package_name="hubtack", prog_name="hubtack")
 def hubtack() -> None:
     """Adjust geodetic control networks by least squares.

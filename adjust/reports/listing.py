@@ -19,6 +19,13 @@ LISTED = 1000
 """Rows of one table, some twenty printed pages; the tables beside the listing have them all."""
 
 
+STANDING_CAUTION = (
+    "These figures are computed, not certified: a licensed surveyor answers for their use, "
+    "by the codes and standards in force at the place."
+)
+"""Ends every listing, whatever the figures."""
+
+
 def write_listing(adjustment: Adjustment, order: Order, path: Path) -> None:
     """Write the listing; `order` is that of the observations."""
     path.write_text("\n".join(listing(adjustment, order)) + "\n", encoding="utf-8", newline="\n")
@@ -38,7 +45,7 @@ def listing(adjustment: Adjustment, order: Order = "worst", most: int = LISTED) 
         *title("Numerical health"),
         *facts(numerical_facts(adjustment)),
         *_sentences("Notes", adjustment.notes),
-        *_sentences("Cautions", cautions(adjustment)),
+        *_sentences("Cautions", (*cautions(adjustment), STANDING_CAUTION)),
     ]
 
 
