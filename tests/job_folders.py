@@ -63,11 +63,11 @@ A,B,71.5651,3
     "distances.csv": """\
 at,to,slope_m,instrument_height_m,target_height_m
 001,A,360.5567,1.55,1.60
-A,B,316.2300,1.52,1.60
+A,B,316.2346,1.52,1.60
 """,
     "zeniths.csv": """\
 at,to,zenith_deg,instrument_height_m,target_height_m
-001,A,89.8331,1.55,1.60
+001,A,89.8346,1.55,1.60
 """,
     "levels.csv": """\
 from,to,rise_m,length_km
@@ -93,7 +93,7 @@ P2,501000.000,5400500.000,410.000,,
 """,
     "vectors.csv": """\
 from,to,dx_m,dy_m,dz_m,sd_x_mm,sd_y_mm,sd_z_mm,corr_xy,corr_xz,corr_yz
-P1,P2,-521.2,936.6,328.2,5,4,6,0.2,0.5,0.3
+P1,P2,-521.540,930.331,337.251,5,4,6,0.2,0.5,0.3
 """,
 }
 """A small GNSS job on the ellipsoid."""

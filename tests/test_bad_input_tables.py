@@ -24,7 +24,7 @@ class Broken:
     base: Mapping[str, str] = field(default_factory=PLANE.copy)
 
 
-VECTOR_ROW = "P1,P2,-521.2,936.6,328.2,5,4,6,0.2,0.5,0.3"
+VECTOR_ROW = "P1,P2,-521.540,930.331,337.251,5,4,6,0.2,0.5,0.3"
 
 CASES = {
     # The header row.
@@ -120,8 +120,8 @@ CASES = {
     "more than a circle": Broken(
         "angles.csv", "62.5666", "462.5666", 2, "angle_gon", words=("one full circle", "unit")
     ),
-    "second face": Broken("zeniths.csv", "89.8331", "270.1669", 2, "zenith_deg", words=("'270.1669'", "second face")),
-    "minus zenith": Broken("zeniths.csv", "89.8331", "-1", 2, "zenith_deg", words=("between 0 and 180",)),
+    "second face": Broken("zeniths.csv", "89.8346", "270.1654", 2, "zenith_deg", words=("'270.1654'", "second face")),
+    "minus zenith": Broken("zeniths.csv", "89.8346", "-1", 2, "zenith_deg", words=("between 0 and 180",)),
     # Precision.
     "zero sd": Broken("azimuths.csv", "71.5651,3", "71.5651,0", 2, "sd_arcsec", words=("'0'", "above 0", "'use'")),
     "negative sd": Broken("azimuths.csv", "71.5651,3", "71.5651,-3", 2, "sd_arcsec", words=("'-3'", "above 0")),
@@ -163,8 +163,8 @@ CASES = {
     ),
     "unknown instrument": Broken(
         "distances.csv",
-        "target_height_m\n001,A,360.5567,1.55,1.60\nA,B,316.2300,1.52,1.60",
-        "instrument\n001,A,360.5567,1.55,TS2\nA,B,316.2300,1.52,",
+        "target_height_m\n001,A,360.5567,1.55,1.60\nA,B,316.2346,1.52,1.60",
+        "instrument\n001,A,360.5567,1.55,TS2\nA,B,316.2346,1.52,",
         2,
         "instrument",
         words=("'TS2'", "'TS1'"),

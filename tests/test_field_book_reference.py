@@ -8,7 +8,15 @@ from pathlib import Path
 import pytest
 
 from adjust import FieldDataError, read_job
-from adjust.field_book.job_file import DEFAULT_KEYS, DatumSection, FrameSection, Instrument, JobFile, StatisticsSection
+from adjust.field_book.job_file import (
+    DEFAULT_KEYS,
+    DatumSection,
+    FrameSection,
+    Instrument,
+    JobFile,
+    StatisticsSection,
+    Target,
+)
 from adjust.field_book.reference import refreshed
 from adjust.field_book.schema import TABLES
 from adjust.units import ANGLE_ENDINGS, LENGTH_ENDINGS
@@ -28,7 +36,7 @@ def test_tables_are_those_of_the_schema() -> None:
     assert re.findall(r"<!-- table (\w+) -->", PAGE) == list(TABLES)
 
 
-@pytest.mark.parametrize("section", [JobFile, FrameSection, DatumSection, Instrument, StatisticsSection])
+@pytest.mark.parametrize("section", [JobFile, FrameSection, DatumSection, Instrument, StatisticsSection, Target])
 def test_every_key_is_described(section: type[JobFile]) -> None:
     described = PAGE.split("\n## job.toml\n")[1].split("\n## ")[0]
     for key in section.model_fields:
@@ -42,7 +50,9 @@ def test_every_unit_is_described() -> None:
         assert f"`_{ending}`" in PAGE
 
 
-@pytest.mark.parametrize(("heading", "rows"), [("A first job", 3), ("An example on the ellipsoid", 5)])
+@pytest.mark.parametrize(
+    ("heading", "rows"), [("A first job", 3), ("An example on the ellipsoid", 5), ("An example of raw readings", 7)]
+)
 def test_examples_can_be_read(heading: str, rows: int, tmp_path: Path) -> None:
     job = read_job(write_folder(tmp_path, files_under(heading)))
     assert sum(map(len, job.observations)) == rows
