@@ -127,14 +127,17 @@ def _marks_table(job: Job, style: Style) -> Table:
     marks = job.marks
     table: Table = {"mark": list(marks.names)} | _plan(job, style) | style.length("height", marks.given[:, 2])
     for column, part in enumerate(("plan", "height")):
-        table[f"{part}_control"] = [Control(state).name.lower() for state in marks.control[:, column].tolist()]
+        states = marks.control[:, column]
+        words = [Control(state).name.lower() for state in states.tolist()]
+        table[f"{part}_control"] = words if np.any(states != Control.FREE) else []
     for column, name in enumerate(("sd_easting", "sd_northing", "sd_height")):
         table |= style.length(name, marks.sd[:, column], "mm")
     if np.any(marks.geoid) and job.geoid_grid is None:
         table |= style.length("geoid", marks.geoid)
-    if np.any(marks.deflection):
-        table |= style.small_angle("deflection_north", marks.deflection[:, 0])
-        table |= style.small_angle("deflection_east", marks.deflection[:, 1])
+    bent = np.count_nonzero(marks.deflection, axis=1) > 0
+    deflection = np.where(bent[:, None], marks.deflection, np.nan)
+    table |= style.small_angle("deflection_north", deflection[:, 0])
+    table |= style.small_angle("deflection_east", deflection[:, 1])
     return table | {"description": list(marks.descriptions)}
 
 

@@ -83,13 +83,16 @@ class Equipment:
         sd = self.level * np.sqrt(lengths / 1000.0)
         return HeightDifferences(**_blank(lines), precision=Precision.of_sd(sd))
 
-    def vectors(self, lines: IntArray, lengths: FloatArray, axes: FloatArray) -> Vectors:
+    def vectors(
+        self, lines: IntArray, lengths: FloatArray, axes: FloatArray, spread: FloatArray | float = 1.0
+    ) -> Vectors:
         """GNSS vectors along `lines` (rows, 2) of `lengths` (rows,) metres.
 
         `axes` (rows, 3, 3) are the unit vectors east, north and up (rows of each matrix) in geocentric axes, in which
-        the errors are uncorrelated; geocentric components come out correlated as those of real baselines do.
+        the errors are uncorrelated; geocentric components come out correlated as those of real baselines do. `spread`
+        (rows, 3) multiplies the sds east, north and up: good satellites and bad ones.
         """
-        sd = (self.vector + self.vector_proportional * lengths)[:, None] * (1.0, 1.0, 2.0)
+        sd = spread * (self.vector + self.vector_proportional * lengths)[:, None] * (1.0, 1.0, 2.0)
         covariances = np.einsum("rki,rk,rkj->rij", axes, sd**2, axes)
         return Vectors(**_blank(lines, components=3), covariances=covariances)
 
