@@ -10,6 +10,8 @@ from typing import Literal
 from adjust.arrays import FloatArray, IntArray
 from adjust.frames import Frame, GeoidGrid
 from adjust.observations import Observations, Provenance
+from adjust.reductions.outcome import Reduction
+from adjust.tolerances import Tolerances
 
 
 class Control(IntEnum):
@@ -84,6 +86,8 @@ class Job:
     date: str | None = None
     datum: Datum = field(default_factory=Datum)
     statistics: Statistics = field(default_factory=Statistics)
+    tolerances: Tolerances = field(default_factory=Tolerances)
+    """What closures may miss by before anything is adjusted."""
     orthometric: bool = False
     """What heights mean in an ellipsoid frame: above the geoid, or above the ellipsoid."""
     geoid_grid: GeoidGrid | None = None
@@ -91,6 +95,8 @@ class Job:
     refraction_coefficient: float = 0.13
     left_out: tuple[Observations, ...] = ()
     """Rows with `use = no`: kept in the books, not adjusted."""
+    reduction: Reduction = field(default_factory=Reduction)
+    """What the raw readings said of themselves when they were made into observations."""
     notes: tuple[str, ...] = ()
     """What reading decided for the surveyor and has to be said in the listing."""
     input_sha256: str = ""

@@ -99,6 +99,79 @@ P1,P2,-521.540,930.331,337.251,5,4,6,0.2,0.5,0.3
 """A small GNSS job on the ellipsoid."""
 
 
+RAW: dict[str, str] = {
+    "job.toml": """\
+title = "Raw test job"
+
+[frame]
+kind = "plane"
+
+[defaults]
+instrument = "TS1"
+levels_instrument = "NA2"
+target = "round"
+
+[instruments.TS1]
+direction_arcsec = 1.5
+zenith_arcsec = 2.0
+distance_mm = 1.0
+distance_ppm = 1.5
+centring_mm = 0.4
+target_centring_mm = 0.6
+height_mm = 0.5
+edm_wavelength_nm = 658
+edm_reference_index = 1.0002863
+edm_scale_ppm = 0.5
+collimation_arcsec = 4.0
+index_arcsec = -6.0
+
+[instruments.NA2]
+level_mm_per_sqrt_km = 0.7
+level_mm_per_setup = 0.2
+level_collimation_arcsec = 3.0
+
+[targets.round]
+constant_mm = -34.4
+centring_mm = 0.3
+
+[targets.mini]
+constant_mm = 17.5
+""",
+    "marks.csv": """\
+mark,easting_m,northing_m,height_m,plan_control,height_control
+001,1000.000,1000.000,100.000,fixed,fixed
+002,1000.000,1200.000,101.500,fixed,fixed
+A,,,,,
+B,,,,,
+""",
+    "pointings.csv": """\
+setup,at,to,round,face,circle_dms,zenith_dms,slope_m,instrument_height_m,target_height_m,target,temperature_c,pressure_hpa,humidity_percent
+S1,001,002,1,L,0-00-05,89-34-20,200.0373,1.550,1.550,,18.0,985.0,60
+S1,001,A,1,L,63-26-10,90-12-01,223.6420,,1.600,mini,,,
+S1,001,B,1,L,101-10-20,90-00-10,150.1000,,,,,,
+S1,001,B,1,R,281-10-10,269-59-40,150.1004,,,,,,
+S1,001,A,1,R,243-26-02,269-47-49,223.6424,,,mini,,,
+S1,001,002,1,R,180-00-01,270-25-30,200.0377,,,,,,
+S1,001,002,2,L,90-02-11,89-34-22,200.0375,,,,18.5,985.2,
+S1,001,A,2,L,153-28-15,,,,,,,,
+S1,001,A,2,R,333-28-09,,,,,,,,
+S1,001,002,2,R,270-02-05,270-25-29,200.0374,,,,,,
+S2,A,001,,,12-00-00,89-47-50,223.6430,1.520,1.550,,19.0,984.0,55
+S2,A,B,,,310-00-07,89-30-01,130.0010,,,,,,
+""",
+    "level_book.csv": """\
+line,point,backsight_m,intermediate_m,foresight_m,backsight_distance_m,foresight_distance_m
+a,001,1.4321,,,38,
+a,TP1,1.1210,,1.6650,40,36
+a,A,1.2000,,1.6678,30,41
+a,B,,1.4300,,,25
+a,,1.5010,,1.3005,33,31
+a,002,,,1.2200,,30
+""",
+}
+"""A plane job of raw readings: two faces, a round without a target, single faces, turning points, a side shot."""
+
+
 def write_folder(folder: Path, files: Files) -> Path:
     """Put files into a folder."""
     folder.mkdir(parents=True, exist_ok=True)

@@ -11,9 +11,9 @@ from hypothesis import strategies as st
 
 from adjust import HubtackError, Job, read_job
 from adjust.field_book.schema import TABLES
-from tests.job_folders import ELLIPSOID, PLANE, Files, write_folder
+from tests.job_folders import ELLIPSOID, PLANE, RAW, Files, write_folder
 
-BASES = {name: ELLIPSOID if name == "vectors" else PLANE for name in TABLES}
+BASES = dict.fromkeys(TABLES, PLANE) | {"vectors": ELLIPSOID, "pointings": RAW, "level_book": RAW}
 HOSTILE = [
     "", " ", ",", ";", '"', "'", "#", "\n", "\r", "\t", "\x00", "\ufeff", "\u2028", "\xa0", "\x0c", "=", "[",
     "]", "{", "}", "\\", "nan", "inf", "-inf", "1e400", "1e-400", "1e308", "-1", "0", "-0", "00", "1_0", "+1",

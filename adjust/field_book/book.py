@@ -9,8 +9,8 @@ from adjust.field_book.columns import TableRows, read_table
 from adjust.field_book.folder import Folder
 from adjust.field_book.job_file import JobFile, JobFileReader
 from adjust.field_book.mistakes import Mistakes, listed
-from adjust.field_book.schema import MARKS, TABLES, Table
-from adjust.field_book.vocabulary import Vocabulary
+from adjust.field_book.schema import FACES, MARKS, TABLES, Table
+from adjust.field_book.vocabulary import StaffPoints, Vocabulary
 
 OBSERVATION_TABLES = tuple(table for table in TABLES.values() if table is not MARKS)
 
@@ -19,7 +19,8 @@ OBSERVATION_TABLES = tuple(table for table in TABLES.values() if table is not MA
 class Book:
     """The tables of a job as read.
 
-    `mark_names` numbers the marks of `marks`, `names` those that observations name, `setups` the setups of directions.
+    `mark_names` numbers the marks of `marks`, `names` those that observations name, `setups` the setups of directions
+    and pointings, `lines` the lines of level books.
     """
 
     marks: TableRows
@@ -28,6 +29,7 @@ class Book:
     observations: tuple[TableRows, ...]
     names: Vocabulary
     setups: Vocabulary
+    lines: Vocabulary
 
 
 class BookReader:
@@ -52,17 +54,24 @@ class BookReader:
         whole = marks is not None and marks.complete
         listing = listed(file for file, name in self._table_of.items() if name == MARKS.name)
         names = Vocabulary(f"a mark of {listing}", mark_names.names if whole else None)
-        setups = Vocabulary("a setup")
+        setups, lines = Vocabulary("a setup"), Vocabulary("a line")
         words = dict.fromkeys(("at", "from", "to"), names) | {
             "setup": setups,
             "instrument": Vocabulary("an instrument of the job file", self.job_file.instruments),
+            "target": Vocabulary("a target of the job file", self.job_file.targets),
+            "round": Vocabulary("a round"),
+            "face": Vocabulary("a face, L or R", FACES),
+            "line": lines,
+            "point": StaffPoints(names.described, names.names if whole else None),
         }
         read = [self._table(table, words) for table in OBSERVATION_TABLES]
         self._complain_of_absent_tables()
         if marks is None:
             self.mistakes.raise_if_any()
             raise AssertionError("a missing table of marks leaves a mistake behind")
-        return Book(marks, mark_names, descriptions, tuple(rows for rows in read if rows is not None), names, setups)
+        return Book(
+            marks, mark_names, descriptions, tuple(rows for rows in read if rows is not None), names, setups, lines
+        )
 
     def _complain_of_absent_tables(self) -> None:
         tables = set(self._table_of.values())

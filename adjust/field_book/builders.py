@@ -12,6 +12,7 @@ from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.field_book.columns import TableRows
 from adjust.field_book.instruments import Instruments
 from adjust.field_book.mistakes import ENOUGH, Mistakes
+from adjust.field_book.raw_tables import RawTables
 from adjust.field_book.schema import AXES, LARGEST_LENGTH, SMALLEST_SD
 from adjust.field_book.vocabulary import Vocabulary
 from adjust.job import Control, Marks
@@ -41,6 +42,7 @@ class Builder:
     setups: Vocabulary
     marks: Vocabulary
     mistakes: Mistakes
+    raw: RawTables
     precision_mistakes: Mistakes
     """Where rows without an sd are noted; to be thrown away when the instruments themselves are mistaken."""
     notes: list[str]
@@ -71,6 +73,11 @@ class Builder:
 
     def directions(self, rows: TableRows) -> tuple[Observations, ...]:
         """Directions; a setup stands on one mark."""
+        self.check_setups(rows)
+        return (Directions(**self._common(rows, Directions, "direction"), setup_index=rows.indices["setup"]),)
+
+    def check_setups(self, rows: TableRows) -> None:
+        """Note setups that stand on more than one mark."""
         setup, at = rows.indices["setup"], rows.indices["at"]
         first_row: IntArray = np.zeros(len(self.setups.names), dtype=np.int64)
         numbers, first = np.unique(setup, return_index=True)
@@ -83,7 +90,6 @@ class Builder:
                 "give each occupation its own setup name"
             )
             rows.complain(self.mistakes, int(row), "at", message)
-        return (Directions(**self._common(rows, Directions, "direction"), setup_index=setup),)
 
     def angles(self, rows: TableRows) -> tuple[Observations, ...]:
         """Angles."""
@@ -137,6 +143,15 @@ class Builder:
                 covariances=covariances,
             ),
         )
+
+    def pointings(self, rows: TableRows) -> tuple[Observations, ...]:
+        """What the pointings reduce to."""
+        self.check_setups(rows)
+        return self.raw.reduce(rows)
+
+    def level_book(self, rows: TableRows) -> tuple[Observations, ...]:
+        """What the level book reduces to."""
+        return self.raw.reduce(rows)
 
     def _covariances(self, rows: TableRows) -> FloatArray:
         """(rows, 3, 3), m², from sds and correlations or as given."""
@@ -194,6 +209,8 @@ _BUILDERS: dict[str, Callable[[Builder, TableRows], tuple[Observations, ...]]] =
     "zeniths": Builder.zeniths,
     "levels": Builder.levels,
     "vectors": Builder.vectors,
+    "pointings": Builder.pointings,
+    "level_book": Builder.level_book,
 }
 
 

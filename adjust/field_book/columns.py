@@ -132,7 +132,7 @@ class FileReader:
         for row in doubtful:
             rows_of.setdefault(cells[row], []).append(row)
         for name, rows in rows_of.items():
-            if not name and not place.column.required:
+            if vocabulary.may_be_unknown(name) if name else not place.column.required:
                 continue
             message = vocabulary.complaint(name) if name else "is blank, expected a name"
             yield rows[0], message + and_more(len(rows) - 1)

@@ -11,7 +11,7 @@ from adjust.arrays import FloatArray, IntArray
 from adjust.field_book.columns import TableRows
 from adjust.field_book.job_file import JobFile
 from adjust.field_book.mistakes import Mistakes, and_more
-from adjust.field_book.schema import SMALLEST_SD
+from adjust.field_book.schema import SMALLEST_SD, TABLES
 from adjust.field_book.vocabulary import NO_NAME
 from adjust.observations import Precision
 from adjust.units import ARCSEC
@@ -59,7 +59,7 @@ class Instruments:
         every = [*job_file.instruments.values()]
 
         def column(key: str, unit: float) -> FloatArray:
-            return _values((getattr(instrument, key) for instrument in every), len(every)) * unit
+            return values_of((getattr(instrument, key) for instrument in every), len(every)) * unit
 
         direction = column("direction_arcsec", ARCSEC)
         distance, proportional = column("distance_mm", MILLIMETRE), column("distance_ppm", PART_PER_MILLION)
@@ -77,7 +77,7 @@ class Instruments:
             np.nan_to_num(column("height_mm", MILLIMETRE)),
             column("level_mm_per_sqrt_km", MILLIMETRE / np.sqrt(1000.0)),
             column("level_mm_per_setup", MILLIMETRE),
-            {table: _number(names, job_file.default_instrument(table)) for table in CONSTANTS},
+            {table: _number(names, job_file.default_instrument(table)) for table in TABLES},
         )
 
     def of_rows(self, rows: TableRows) -> IntArray:
@@ -133,7 +133,7 @@ class Instruments:
         return f"instrument {name!r} says nothing for it; give the row an sd, or [instruments.{name}] a fitting {keys}"
 
 
-def _values(given: Iterable[float | None], count: int) -> FloatArray:
+def values_of(given: Iterable[float | None], count: int) -> FloatArray:
     """Numbers (count + 1,), NaN where there is none and at the end."""
     values = np.full(count + 1, np.nan)
     values[:count] = [np.nan if value is None else value for value in given]

@@ -35,6 +35,8 @@ SMALLEST = 1e-6
 
 Positive = Annotated[float, Field(ge=SMALLEST, lt=1e9)]
 NotNegative = Annotated[float, Field(ge=0, lt=1e9)]
+Finite = Annotated[float, Field(gt=-1e5, lt=1e5)]
+Ppm = Annotated[float, Field(gt=-1000, lt=1000)]
 Probability = Annotated[float, Field(gt=0, lt=1)]
 FileNames = Annotated[list[str], BeforeValidator(_as_list), Field(min_length=1)]
 
@@ -71,6 +73,22 @@ class Instrument(Section):
     height_mm: NotNegative = 0.0
     level_mm_per_sqrt_km: Positive | None = None
     level_mm_per_setup: Positive | None = None
+    edm_wavelength_nm: Annotated[float, Field(ge=300, le=1700)] | None = None
+    edm_reference_index: Annotated[float, Field(ge=1.0, le=1.001)] | None = None
+    edm_formula: Literal["closed", "rigorous"] = "closed"
+    edm_ppm_c: Ppm | None = None
+    edm_ppm_d: Ppm | None = None
+    edm_scale_ppm: Ppm = 0.0
+    collimation_arcsec: Finite | None = None
+    index_arcsec: Finite | None = None
+    level_collimation_arcsec: Finite | None = None
+
+
+class Target(Section):
+    """`[targets.NAME]`: what is added to a distance measured to it, and how well it is centred."""
+
+    constant_mm: Annotated[float, Field(gt=-1e4, lt=1e4)] = 0.0
+    centring_mm: NotNegative | None = None
 
 
 class StatisticsSection(Section):
@@ -82,7 +100,8 @@ class StatisticsSection(Section):
     sd_basis: Literal["prior", "posterior"] = "prior"
 
 
-DEFAULT_KEYS = ("instrument", *(f"{name}_instrument" for name, table in TABLES.items() if table.has_instrument))
+INSTRUMENT_KEYS = ("instrument", *(f"{name}_instrument" for name, table in TABLES.items() if table.has_instrument))
+DEFAULT_KEYS = (*INSTRUMENT_KEYS, "target")
 """The keys that `[defaults]` may have; those of `[tables]` are the names of the tables."""
 
 
@@ -96,11 +115,18 @@ class JobFile(Section):
     defaults: dict[str, str] = {}
     tables: dict[str, FileNames] = {}
     instruments: dict[str, Instrument] = {}
+    targets: dict[str, Target] = {}
     statistics: StatisticsSection = StatisticsSection()
 
     def default_instrument(self, table: str) -> str | None:
-        """The instrument of rows that name none: the table's own default before the general one."""
-        return self.defaults.get(f"{table}_instrument", self.defaults.get("instrument"))
+        """The instrument of rows that name none: the table's own default before the general one.
+
+        A level book has the level of the levels table where it has no own one.
+        """
+        usual = self.defaults.get("instrument")
+        if table == "level_book":
+            usual = self.defaults.get("levels_instrument", usual)
+        return self.defaults.get(f"{table}_instrument", usual)
 
 
 class JobFileReader:
@@ -201,6 +227,7 @@ _SECTIONS: dict[str, type[Section]] = {
     "frame": FrameSection,
     "datum": DatumSection,
     "instruments": Instrument,
+    "targets": Target,
     "statistics": StatisticsSection,
 }
 

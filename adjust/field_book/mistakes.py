@@ -41,6 +41,10 @@ class Mistakes:
         """Whether one of these files has a mistake."""
         return any(self._count[file] for file in files)
 
+    def __len__(self) -> int:
+        """How many were noted."""
+        return len(self._found)
+
     def __bool__(self) -> bool:
         return bool(self._found)
 

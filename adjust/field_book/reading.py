@@ -13,15 +13,15 @@ from adjust.field_book.book import Book, BookReader
 from adjust.field_book.builders import Builder, weighted_control
 from adjust.field_book.folder import Folder, open_folder
 from adjust.field_book.geoid_heights import check_geoid, marks_that_need_geoid
-from adjust.field_book.instruments import Instruments
 from adjust.field_book.job_file import JobFile, JobFileReader
 from adjust.field_book.marks import MarkReader
 from adjust.field_book.mistakes import Likeness, Mistakes
 from adjust.field_book.notes import note_control, note_frame, note_left_out, note_unread
+from adjust.field_book.raw_tables import RawTables
 from adjust.field_book.settings import SettingsReader
 from adjust.frames import Frame
 from adjust.job import Datum, Job, Marks, Statistics
-from adjust.observations import KINDS, Directions, Observations
+from adjust.observations import KINDS, Directions, Observations, concatenated
 
 
 def read_job(path: str | Path) -> Job:
@@ -87,6 +87,7 @@ class JobReader:
             refraction_coefficient=self.job_file.frame.refraction_coefficient,
             left_out=left_out,
             notes=tuple(self.notes),
+            reduction=self.raw.reduction,
             input_sha256=self.folder.fingerprint(),
         )
 
@@ -102,16 +103,19 @@ class JobReader:
     def _observations(self, book: Book) -> tuple[tuple[Observations, ...], tuple[Observations, ...]]:
         """Observations in use and left out, each in the order of the registry."""
         precision_mistakes = Mistakes() if self.mistakes.any_in(self.reader.name) else self.mistakes
-        builder = Builder(
-            Instruments.of(self.job_file), book.setups, book.names, self.mistakes, precision_mistakes, self.notes
-        )
+        self.raw = RawTables(self.job_file, book, self.mistakes, precision_mistakes, self.notes)
+        instruments = self.raw.instruments
+        builder = Builder(instruments, book.setups, book.names, self.mistakes, self.raw, precision_mistakes, self.notes)
         built: tuple[list[Observations], list[Observations]] = ([], [])
         for rows in book.observations:
             if self.mistakes.any_in(*rows.provenance.files):
                 continue
             for use, found in enumerate(built):
                 chosen = rows.take(rows.indices["use"] == use)
-                found.extend(builder.build(chosen) if len(chosen) else ())
+                if use and rows.table.raw and len(chosen):
+                    self.raw.note_unused(chosen)
+                else:
+                    found.extend(builder.build(chosen) if len(chosen) else ())
         if not built[0] and not self.mistakes:
             message = "every observation has use = no; leave at least one in"
             self.mistakes.add(self.reader.name, None, None, message)
@@ -146,9 +150,9 @@ class JobReader:
 
 
 def _in_order(observations: list[Observations]) -> tuple[Observations, ...]:
-    """Kinds that have rows, in the order of the registry."""
-    order = {kind: place for place, kind in enumerate(KINDS)}
-    return tuple(sorted((rows for rows in observations if len(rows)), key=lambda rows: order[type(rows)]))
+    """Kinds that have rows, in the order of the registry; those from raw readings join the others of their kind."""
+    by_kind = [[rows for rows in observations if isinstance(rows, kind) and len(rows)] for kind in KINDS]
+    return tuple(concatenated(parts) for parts in by_kind if parts)
 
 
 def _with_setups_in_use(

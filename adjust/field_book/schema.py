@@ -68,6 +68,16 @@ ZENITH = Rule(
 LATITUDE = Rule(lambda value: np.abs(value) <= np.pi / 2, "a latitude between -90 and 90 degrees")
 DEFLECTION = Rule(lambda value: np.abs(value) <= DEGREE, "a deflection within ±1 degree; check the unit")
 CORRELATION = Rule(lambda value: np.abs(value) < 1, "a correlation between -1 and 1, neither of them reached")
+READING = Rule(
+    lambda value: (value >= 0) & (value <= 2 * np.pi * (1 + 1e-9)),
+    "a reading between 0 and one full circle; check the unit",
+)
+TEMPERATURE = Rule(lambda value: (value >= -60) & (value <= 60), "a temperature between -60 and 60 °C")
+PRESSURE = Rule(
+    lambda value: (value >= 300) & (value <= 1100),
+    "the pressure at the station between 300 and 1100 hPa, not at sea level",
+)
+HUMIDITY = Rule(lambda value: (value >= 0) & (value <= 100), "a relative humidity between 0 and 100 %")
 WHOLE = Rule(lambda value: (value >= 1) & (value % 1 == 0), "a whole number of 1 or more")
 
 
@@ -110,6 +120,8 @@ class Table:
     """Columns that stand or fall together: all of them in a file or none."""
     apart: tuple[tuple[str, str], ...] = ()
     """Pairs of columns of which a file may have only one."""
+    raw: bool = False
+    """Whether its rows are readings, several of which make an observation."""
 
     def column(self, name: str) -> Column:
         """The column of that name. Raises KeyError."""
@@ -150,6 +162,7 @@ _HEIGHTS = (
     _length("target_height", "height of the target above `to`; blank: 0"),
 )
 _CONTROL = ("free", "fixed", "weighted")
+FACES = ("L", "R")
 
 MARKS = Table(
     "marks",
@@ -284,7 +297,65 @@ VECTORS = Table(
     apart=(("sd_x", "cov_xx_m2"), ("corr_xy", "cov_xx_m2"), ("corr_xz", "cov_xx_m2"), ("corr_yz", "cov_xx_m2")),
 )
 
+POINTINGS = Table(
+    "pointings",
+    "one pointing of a total station, as it was read",
+    (
+        Column("setup", Quantity.NAME, "the occupation; one setup stands on one mark", required=True),
+        _AT,
+        _TO,
+        Column("round", Quantity.TEXT, "the round; readings of one setup and round share the circle's zero"),
+        Column("face", Quantity.TEXT, "`L` or `R`; blank: as the vertical circle shows, else `L`"),
+        _angle("circle", "reading of the horizontal circle, clockwise", READING),
+        _angle("zenith", "reading of the vertical circle: above 180 degrees on face right", READING),
+        _length("slope", "distance along the line of sight, as it was shown", DISTANCE),
+        _length("instrument_height", "height of the instrument above `at`; holds in the setup until given again"),
+        _length(
+            "target_height", "height of the target above `to`; holds for the target, or for those without their own"
+        ),
+        Column("target", Quantity.TEXT, "a table `[targets.NAME]` of the job file; blank: the default"),
+        _number("temperature_c", "air temperature, °C; holds in the setup until given again", TEMPERATURE),
+        _number("pressure_hpa", "air pressure at the station, hPa; holds in the setup until given again", PRESSURE),
+        _number("humidity_percent", "relative humidity; holds in the setup until given again", HUMIDITY),
+        _INSTRUMENT,
+        _USE,
+    ),
+    one_of=(("circle", "zenith", "slope"),),
+    together=(("temperature_c", "pressure_hpa"),),
+    raw=True,
+)
+
+LEVEL_BOOK = Table(
+    "level_book",
+    "one staff position of a levelled line, in the order walked",
+    (
+        Column("line", Quantity.NAME, "the run; its rows follow each other", required=True),
+        Column("point", Quantity.TEXT, "the mark under the staff; blank or `TP…`: a turning point"),
+        _length("backsight", "staff reading looking back: opens a setup of the level"),
+        _length("intermediate", "staff reading of a side shot"),
+        _length("foresight", "staff reading looking ahead: closes the setup"),
+        _length("backsight_distance", "length of the sight back", DISTANCE),
+        _length("foresight_distance", "length of the sight ahead, or to the side", DISTANCE),
+        _INSTRUMENT,
+        _USE,
+    ),
+    one_of=(("backsight",), ("foresight",)),
+    raw=True,
+)
+
 TABLES: dict[str, Table] = {
-    table.name: table for table in (MARKS, DIRECTIONS, ANGLES, AZIMUTHS, DISTANCES, ZENITHS, LEVELS, VECTORS)
+    table.name: table
+    for table in (
+        MARKS,
+        DIRECTIONS,
+        ANGLES,
+        AZIMUTHS,
+        DISTANCES,
+        ZENITHS,
+        LEVELS,
+        VECTORS,
+        POINTINGS,
+        LEVEL_BOOK,
+    )
 }
 """Every table of a job folder, in the order in which they are read and documented."""

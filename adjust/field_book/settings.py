@@ -6,7 +6,7 @@ from pathlib import Path
 
 import numpy as np
 
-from adjust.field_book.job_file import DEFAULT_KEYS, FrameSection, JobFile, JobFileReader
+from adjust.field_book.job_file import DEFAULT_KEYS, INSTRUMENT_KEYS, FrameSection, JobFile, JobFileReader
 from adjust.field_book.mistakes import Likeness
 from adjust.field_book.schema import TABLES
 from adjust.frames import EllipsoidFrame, Frame, GeoidGrid, PlaneFrame
@@ -31,13 +31,32 @@ class SettingsReader:
                     guess = Likeness(known).suggestion(key)
                     self.reader.complain((section, key), f"unknown key{guess or f'; expected {chr(32).join(known)}'}")
         for key, name in self.job_file.defaults.items():
-            if name not in self.job_file.instruments and key in DEFAULT_KEYS:
+            if name not in self.job_file.instruments and key in INSTRUMENT_KEYS:
                 guess = Likeness(self.job_file.instruments).suggestion(name)
                 message = f"read {name!r}, but there is no [instruments.{name}]{guess or '; add it'}"
                 self.reader.complain(("defaults", key), message)
+        self._check_raw_names()
         if self.job_file.datum.mode == "control" and self.job_file.datum.marks is not None:
             message = 'marks carry a datum only under inner constraints; set mode = "inner", or take this key away'
             self.reader.complain(("datum", "marks"), message)
+
+    def _check_raw_names(self) -> None:
+        """Note a default target that there is not, and distance meters whose air is described by halves or twice."""
+        target = self.job_file.defaults.get("target")
+        if target is not None and target not in self.job_file.targets:
+            guess = Likeness(self.job_file.targets).suggestion(target)
+            message = f"read {target!r}, but there is no [targets.{target}]{guess or '; add it'}"
+            self.reader.complain(("defaults", "target"), message)
+        ways = (("edm_wavelength_nm", "edm_reference_index"), ("edm_ppm_c", "edm_ppm_d"))
+        for name, instrument in self.job_file.instruments.items():
+            given = [[key for key in way if getattr(instrument, key) is not None] for way in ways]
+            for way, keys in zip(ways, given, strict=True):
+                if len(keys) == 1:
+                    (other,) = set(way) - set(keys)
+                    self.reader.complain(("instruments", name, keys[0]), f"goes with {other}; give both or neither")
+            if all(given):
+                message = f"{ways[0][0]} describes the same correction; keep one of the two ways"
+                self.reader.complain(("instruments", name, given[1][0]), message)
 
     def frame(self) -> Frame | None:
         """The frame, or None after noting why there is none."""

@@ -30,7 +30,7 @@ class Vocabulary:
     """
 
     def __init__(self, described: str, names: Iterable[str] | None = None) -> None:
-        self._described = described
+        self.described = described
         self._open = names is None
         self._index = _Numbers((name, number) for number, name in enumerate(names or ()))
 
@@ -47,10 +47,24 @@ class Vocabulary:
                     self._index.setdefault(name, len(self._index))
         return np.fromiter(map(self._index.__getitem__, cells), np.int64, len(cells))
 
+    def may_be_unknown(self, name: str) -> bool:
+        """Whether a name that is not known may stand all the same."""
+        return False
+
     def complaint(self, name: str) -> str:
         """What to say of a name that a closed vocabulary does not know."""
-        return f"read {shown(name)}, which is not {self._described}{self._likeness.suggestion(name)}"
+        return f"read {shown(name)}, which is not {self.described}{self._likeness.suggestion(name)}"
 
     @cached_property
     def _likeness(self) -> Likeness:
         return Likeness(self._index)
+
+
+class StaffPoints(Vocabulary):
+    """The points of a level book: marks, and turning points, which have no name of their own or one that says so."""
+
+    TURNING_POINT = "TP"
+
+    def may_be_unknown(self, name: str) -> bool:
+        """`TP`, `TP4`, `tp 12`: the staff on a turning point."""
+        return name.upper().startswith(self.TURNING_POINT)

@@ -2,7 +2,7 @@
 
 from adjust.observations.angle import Angles
 from adjust.observations.azimuth import Azimuths
-from adjust.observations.base import Observations, Precision, Provenance
+from adjust.observations.base import Observations, Precision, Provenance, concatenated
 from adjust.observations.control import ControlCoordinates
 from adjust.observations.direction import Directions
 from adjust.observations.height_difference import HeightDifferences
@@ -38,4 +38,5 @@ __all__ = [
     "SlopeDistances",
     "Vectors",
     "ZenithAngles",
+    "concatenated",
 ]

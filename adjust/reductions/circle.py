@@ -28,9 +28,16 @@ def group_sums(values: FloatArray, group: IntArray, groups: int) -> FloatArray:
     return sums
 
 
-def number_groups(*keys: IntArray) -> tuple[IntArray, int]:
+def number_groups(*keys: IntArray | FloatArray) -> tuple[IntArray, int]:
     """Number rows by equal keys (rows,), groups in the order in which they are met: (group of each row, how many)."""
-    _, first, group = np.unique(np.column_stack(keys), axis=0, return_index=True, return_inverse=True)
-    place: IntArray = np.empty(len(first), dtype=np.int64)
-    place[np.argsort(first)] = np.arange(len(first))
-    return place[group.reshape(-1)], len(first)
+    order = np.lexsort(keys[::-1])
+    differs = np.zeros(len(order), dtype=bool)
+    for key in keys:
+        differs[1:] |= np.diff(key[order]) != 0
+    sorted_group = np.cumsum(differs)
+    group: IntArray = np.empty(len(order), dtype=np.int64)
+    group[order] = sorted_group
+    groups = int(sorted_group[-1]) + 1 if len(order) else 0
+    place: IntArray = np.empty(groups, dtype=np.int64)
+    place[np.argsort(first_of_groups(group, groups))] = np.arange(groups)
+    return place[group], groups

@@ -44,10 +44,9 @@ class Spread:
         return float(np.sqrt(self.statistic / self.redundancy)) if self.redundancy else float("nan")
 
 
-def spread_of(residual: FloatArray, variance: FloatArray, redundancy: int, confidence: float) -> Spread:
-    """The spread of residuals (rows,) whose observations have the stated `variance` (rows,), tested two-sided.
+def spread_from(statistic: float, redundancy: int, confidence: float) -> Spread:
+    """The spread of Σ v²/variance with its redundancy, tested two-sided.
 
     ISO 17123-1:2014, annex on statistical tests, question a: is the experimental sd no larger than the one stated?
     """
-    statistic = float(np.sum(residual**2 / variance))
     return Spread(statistic, redundancy, global_test(statistic, redundancy, confidence))

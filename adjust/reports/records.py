@@ -166,6 +166,8 @@ def _values(
 
 def _sources(observations: Observations, rows: IntArray) -> list[str]:
     files, provenance = observations.provenance.files, observations.provenance
+    if provenance.further is not None:
+        return [provenance.label(row) for row in rows.tolist()]
     places = zip(provenance.file[rows].tolist(), provenance.line[rows].tolist(), strict=True)
     return [f"{files[file]}:{line}" for file, line in places]
 
