@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
@@ -24,6 +24,13 @@ class HeightDifferences(Observations):
 
     precision: Precision
     """`constant` is the sd of the whole line; nothing is centred."""
+    length: FloatArray = field(default_factory=lambda: np.empty(0))
+    """Lengths (rows,) of the levelled lines, metres, by which closures are judged; NaN where none is stated, as in all
+    rows when it is left out."""
+
+    def __post_init__(self) -> None:
+        if len(self.length) != len(self):
+            object.__setattr__(self, "length", np.full(len(self), np.nan))
 
     def predict(self, geometry: Geometry) -> FloatArray:
         """Difference (rows, 1) of levelled heights; in an ellipsoid frame Δh − Δ(geoid height)."""

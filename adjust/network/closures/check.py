@@ -1,0 +1,109 @@
+"""Checks a job before it is adjusted."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from adjust.errors import NetworkError
+from adjust.frames import Geometry
+from adjust.job import Job
+from adjust.network.closures.angle_sums import angle_closures
+from adjust.network.closures.closures import Judged, judged
+from adjust.network.closures.coordinates import control_distance_closures
+from adjust.network.closures.entries import entry_remarks
+from adjust.network.closures.heights import height_closures
+from adjust.network.closures.levelling import level_closures
+from adjust.network.closures.linear import Traverse, Traversing, traverse_closures
+from adjust.network.closures.lines import Lines, distance_closures, zenith_closures
+from adjust.network.closures.observed import Observed
+from adjust.network.closures.orientation import Orientations, control_orientation_closures
+from adjust.network.closures.polar import two_place_remarks
+from adjust.network.closures.positions import position_remarks
+from adjust.network.closures.remarks import Remark
+from adjust.network.closures.stations import Stations, station_closures
+from adjust.network.closures.suspicion import SharedLine, Suspicion, shared_lines, suspicions
+from adjust.network.closures.vectors import vector_closures
+from adjust.network.start import find_start
+from adjust.unknowns import find_unknowns
+
+
+@dataclass(frozen=True)
+class Check:
+    """What can be said of a job before it is adjusted.
+
+    `closures` has one entry for each check that found something to close, in a fixed order; `remarks` what is odd
+    without being a misclosure; `shared` and `suspicions` say what to look at first; `traverses` are those behind the
+    closures `traverse_loop` and `traverse_link`, in their order; `notes` what could not be checked and why.
+    """
+
+    observed: Observed
+    closures: tuple[Judged, ...]
+    remarks: tuple[Remark, ...]
+    traverses: tuple[Traverse, ...]
+    shared: tuple[SharedLine, ...]
+    suspicions: tuple[Suspicion, ...]
+    notes: tuple[str, ...]
+
+    @property
+    def job(self) -> Job:
+        """The job that was checked."""
+        return self.observed.job
+
+    @property
+    def exceeding(self) -> int:
+        """Closures and remarks beyond what is allowed."""
+        closures = sum(int(judged.exceeds.sum()) for judged in self.closures)
+        return closures + sum(remark.exceeds for remark in self.remarks)
+
+    @property
+    def passed(self) -> bool:
+        """Whether nothing exceeds its tolerance."""
+        return self.exceeding == 0
+
+
+def check_job(job: Job) -> Check:
+    """Close everything that closes, and look for what is odd. Never raises for a job that could be read."""
+    geometry, notes = _geometry(job)
+    observed = Observed(job, geometry)
+    lines, stations = Lines(observed), Stations(observed)
+    orientations = Orientations(observed, stations)
+    traverses = Traversing(observed, orientations, lines).traverses()
+    closures = [
+        *level_closures(observed),
+        *station_closures(observed, stations),
+        control_orientation_closures(observed, orientations),
+        *angle_closures(observed, orientations, lines.length_of(orientations.marks)),
+        *traverse_closures(traverses),
+        control_distance_closures(observed, lines),
+        *distance_closures(lines),
+        *zenith_closures(lines),
+        height_closures(observed, lines),
+        *vector_closures(observed),
+    ]
+    checks = judged([check for check in closures if len(check)], job.tolerances)
+    remarks = [
+        *position_remarks(observed, lines, job.tolerances),
+        *two_place_remarks(observed, stations, lines),
+        *entry_remarks(observed, job.tolerances),
+    ]
+    return Check(
+        observed,
+        checks,
+        tuple(remarks),
+        tuple(sorted(traverses, key=lambda traverse: traverse.marks[0] != traverse.marks[-1])),
+        tuple(shared_lines(checks)),
+        tuple(suspicions(checks, len(observed))),
+        notes,
+    )
+
+
+def _geometry(job: Job) -> tuple[Geometry, tuple[str, ...]]:
+    """Where the marks lie: start coordinates if the observations lead to them, else only those given."""
+    try:
+        return find_start(job, find_unknowns(job)).geometry, ()
+    except NetworkError as error:
+        marks = job.marks
+        given = Geometry(
+            job.frame, marks.given, marks.geoid, marks.deflection, job.orthometric, job.refraction_coefficient
+        )
+        return given, (f"No start coordinates, so that only given ones could be checked: {error}",)

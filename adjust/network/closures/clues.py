@@ -1,0 +1,95 @@
+"""What a misclosure looks like: the size of it often says which mistake was made."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+
+import numpy as np
+
+from adjust.arrays import BoolArray, FloatArray
+from adjust.network.closures.closures import Judged
+from adjust.network.closures.linear import Traverse
+from adjust.network.closures.observed import Observed
+
+TELLING = 20.0
+"""A figure is telling when the next one lies that many allowances away: one misclosure in ten hits one by chance."""
+LENGTH_SLIPS = tuple(digit * 10.0**power for power in (-2, -1, 0, 1, 2) for digit in range(1, 10))
+"""Metres: one digit misread, from centimetres to hundreds of metres."""
+ANGLE_SLIPS = (1 / 60, 1 / 6, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 30.0, 60.0, 90.0, 180.0, 0.9, 9.0)
+"""Degrees: a minute, ten of them or a degree misread, a graduation of ten, a wrong face; 1 and 10 gon."""
+
+
+def slip(misclosure: float, allowed: float, unit: str) -> str:
+    """The round figure that a misclosure nearly is, in words; "" where it is none that tells anything."""
+    if unit == "m":
+        figure = min(LENGTH_SLIPS, key=lambda slip: abs(slip - abs(misclosure)))
+        step, name = 10.0 ** np.floor(np.log10(figure) + 1e-9), f"{figure:g} m"
+    else:
+        figure = float(np.radians(min(ANGLE_SLIPS, key=lambda slip: abs(np.radians(slip) - abs(misclosure)))))
+        step, name = figure, _angle_name(figure)
+    close = abs(figure - abs(misclosure)) <= allowed
+    return f"nearly {name}" if close and step >= TELLING * allowed else ""
+
+
+def _angle_name(angle: float) -> str:
+    degrees = float(np.degrees(angle))
+    if round(degrees / 0.9, 6) in (1.0, 10.0):
+        return f"{degrees / 0.9:.0f} gon"
+    return f"{degrees:g}°" if degrees >= 0.5 else f"{degrees * 60:g}′"
+
+
+def exchanged_ends(observed: Observed, judged: Judged, number: int) -> list[int]:
+    """Rises and vectors of a failing closure that would close it if they ran the other way."""
+    closures = judged.closures
+    found = []
+    for row in closures.rows[number].tolist():
+        kind, place = observed.place(row)
+        if kind.kind == "height_difference":
+            turned = abs(closures.misclosure[number, 0]) - 2.0 * abs(kind.observed[place, 0])
+            large = 2.0 * abs(kind.observed[place, 0]) > judged.allowed[number, 0]
+            found += [row] if large and abs(turned) <= judged.allowed[number, 0] else []
+    return found
+
+
+def doubtful_angles(traverse: Traverse, allowed: float) -> list[int]:
+    """Corners (by the leg that leaves them) of a traverse where all of its angular misclosure would explain where it
+    ends.
+
+    With one angle wrong by w the legs behind it are turned about its mark, so that the end is off by (R(w) − 1) times
+    what leads from the mark to the end: the old rule that the perpendicular bisector of the misclosure passes through
+    the mark (Ghilani & Wolf, *Elementary Surveying*, section on locating blunders in traverses; from memory).
+    """
+    if not traverse.angular:
+        return []
+    sine, cosine = np.sin(traverse.angular), np.cos(traverse.angular)
+    at = np.vstack([np.zeros(2), np.cumsum(traverse.unbalanced, axis=0)])
+    ahead = at[-1] - at[:-1]
+    unturned = np.column_stack([ahead[:, 0] * cosine - ahead[:, 1] * sine, ahead[:, 1] * cosine + ahead[:, 0] * sine])
+    left = at[-1] - traverse.arrival - (ahead - unturned)
+    return _numbers(np.hypot(*left.T) <= allowed)
+
+
+def doubtful_legs(traverse: Traverse, allowed: float) -> list[int]:
+    """Legs that the linear misclosure runs along: their length wrong by it would explain it (same source)."""
+    length = np.hypot(*traverse.steps.T)
+    along = traverse.steps / length[:, None]
+    across: FloatArray = np.abs(along[:, 0] * traverse.misclosure[1] - along[:, 1] * traverse.misclosure[0])
+    return _numbers(across <= allowed)
+
+
+def _numbers(mask: BoolArray) -> list[int]:
+    numbers: list[int] = np.flatnonzero(mask).tolist()
+    return numbers
+
+
+def traverse_clues(traverse: Traverse, allowed: float, angular_fails: bool, names: Sequence[str]) -> Iterator[str]:
+    """In words, where a traverse that does not close is likely to be wrong."""
+    if angular_fails:
+        corners = doubtful_angles(traverse, allowed)
+        if 0 < len(corners) < len(traverse.steps):
+            yield f"one angle would explain it, at {' or '.join(names[traverse.marks[corner]] for corner in corners)}"
+        return
+    legs = doubtful_legs(traverse, allowed)
+    if 0 < len(legs) < len(traverse.steps):
+        lines = (f"{names[traverse.marks[leg]]}–{names[traverse.marks[leg + 1]]}" for leg in legs)
+        yield f"it runs along {' or '.join(lines)}: one length would explain it"
