@@ -1,0 +1,31 @@
+"""Medians of repeated readings: one value for each group, unmoved by a single gross error among three."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from adjust.arrays import FloatArray, IntArray
+
+FULL_TURN = 2.0 * np.pi
+
+
+def wrapped(angle: FloatArray) -> FloatArray:
+    """The same angles, radians, between −π and π."""
+    return (angle + np.pi) % FULL_TURN - np.pi
+
+
+def group_medians(keys: IntArray, values: FloatArray) -> tuple[IntArray, FloatArray]:
+    """The distinct keys (groups,), ascending, and the median of the values (rows,) of each."""
+    order = np.lexsort((values, keys))
+    sorted_keys, sorted_values = keys[order], values[order]
+    groups, starts, counts = np.unique(sorted_keys, return_index=True, return_counts=True)
+    lower, upper = starts + (counts - 1) // 2, starts + counts // 2
+    return groups, 0.5 * (sorted_values[lower] + sorted_values[upper])
+
+
+def group_circular_medians(keys: IntArray, angles: FloatArray) -> tuple[IntArray, FloatArray]:
+    """As `group_medians`, for angles (rows,) in radians that repeat within half a turn of each other."""
+    groups, first, group_of_row = np.unique(keys, return_index=True, return_inverse=True)
+    reference = angles[first]
+    medians = group_medians(keys, wrapped(angles - reference[group_of_row]))[1]
+    return groups, wrapped(reference + medians)
