@@ -1,0 +1,160 @@
+"""Inner constraints: a free network rests on any minimal datum, then is turned to fit the given coordinates.
+
+The S-transformation (Baarda 1973, S-transformations and criterion matrices, Netherlands Geodetic Commission 5(1), §2):
+with G (unknowns, motions) spanning the motions that change no observation and Gₛ its rows at the marks that carry the
+datum, x̄ = S x and C̄ = S C Sᵀ with S = I − G (GₛᵀG)⁻¹ Gₛᵀ satisfy Gₛᵀ x̄ = 0.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from scipy.sparse import csr_array
+
+from adjust.arrays import FloatArray, IntArray
+from adjust.frames import EllipsoidFrame, Frame, Geometry
+from adjust.frames.reference_ellipsoid import local_axes
+from adjust.network import Part
+from adjust.unknowns import EAST, NORTH, UP, Unknowns
+
+HELD = 1000.0
+"""Weight of a datum row, 1/m: of the order of millimetre observations, so that the system stays well scaled."""
+
+
+@dataclass(frozen=True)
+class InnerDatum:
+    """The inner constraints of one free network.
+
+    `motions` (unknowns, k) is G, `carried` (unknowns, k) is Gₛ: G where the mark carries the datum, else 0.
+    """
+
+    motions: FloatArray
+    carried: FloatArray
+
+    @cached_property
+    def inverse(self) -> FloatArray:
+        """(GₛᵀG)⁻¹ (k, k)."""
+        return np.asarray(np.linalg.inv(self.carried.T @ self.motions), dtype=np.float64)
+
+    def correction(self, displacement: FloatArray) -> FloatArray:
+        """What to add (unknowns,) so that `displacement` (unknowns,) from the given coordinates meets Gₛᵀx = 0."""
+        return -self.motions @ (self.inverse @ (self.carried.T @ displacement))
+
+
+def motions_of(part: Part, geometry: Geometry, unknowns: Unknowns, setups: Sequence[int]) -> FloatArray:
+    """G (unknowns, k): one column for each missing datum element of a part, in the order of `_ORDER`.
+
+    Metres at the marks; rotation and scale are scaled to one metre at the part's extent. `setups` are those of the
+    part: a rotation turns their orientations.
+    """
+    marks = part.marks[unknowns.sought[part.marks].any(axis=1)]
+    fields = _plane_fields if not isinstance(geometry.frame, EllipsoidFrame) else _ellipsoid_fields
+    moved, extent = fields(part, geometry, marks)
+    columns = []
+    for name in _ORDER:
+        if name not in part.missing:
+            continue
+        column = np.zeros(unknowns.count)
+        numbered = unknowns.columns[marks]
+        column[numbered[numbered >= 0]] = moved[name][numbered >= 0]
+        if name == "rotation":
+            column[unknowns.coordinates + np.asarray(setups, dtype=np.int64)] = 1.0 / extent
+        columns.append(column)
+    return np.column_stack(columns)
+
+
+_ORDER = ("east", "north", "height", "rotation", "scale")
+
+Fields = tuple[dict[str, FloatArray], float]
+
+
+def _plane_fields(part: Part, geometry: Geometry, marks: IntArray) -> Fields:
+    """Displacements (marks, 3) for each datum element of a plane network."""
+    position = geometry.coordinates[marks]
+    return _local_fields(position - np.nanmean(position, axis=0))
+
+
+def _local_fields(offset: FloatArray) -> Fields:
+    """The similarity motions of points `offset` (marks, 3) about their centroid."""
+    offset = np.nan_to_num(offset)
+    extent = max(float(np.abs(offset).max(initial=0.0)), 1.0)
+    one, none = np.ones(len(offset)), np.zeros(len(offset))
+    return {
+        "east": np.column_stack([one, none, none]),
+        "north": np.column_stack([none, one, none]),
+        "height": np.column_stack([none, none, one]),
+        "rotation": np.column_stack([offset[:, NORTH], -offset[:, EAST], none]) / extent,
+        "scale": offset / extent,
+    }, extent
+
+
+def _ellipsoid_fields(part: Part, geometry: Geometry, marks: IntArray) -> Fields:
+    """Displacements (marks, 3) along local axes.
+
+    Where vectors fix rotation and scale, the free motions are geocentric shifts. Otherwise plumb lines count, and a
+    shift follows the curved surface: a rotation about the Earth's centre, with heights unchanged.
+    """
+    frame = geometry.frame
+    assert isinstance(frame, EllipsoidFrame)
+    spatial = geometry.spatial[marks]
+    if np.isnan(spatial[:, :2]).any():
+        return _local_fields(np.column_stack([np.zeros((len(marks), 2)), spatial[:, 2]]))
+    position, axes = frame.geocentric(spatial), local_axes(spatial[:, 0], spatial[:, 1])
+    centre = position.mean(axis=0)
+    middle = frame.from_geocentric(centre[None])
+    at_centre = local_axes(middle[:, 0], middle[:, 1])[0]
+    moved, extent = _local_fields((position - centre) @ at_centre.T)
+    shifts = np.einsum("mij,kj->mki", axes, at_centre)
+    if "rotation" not in part.missing:
+        return moved | {"east": shifts[:, EAST], "north": shifts[:, NORTH], "height": shifts[:, UP]}, extent
+    radius = float(np.linalg.norm(centre))
+    turned = {
+        "east": np.cross(at_centre[NORTH], position) / radius,
+        "north": np.cross(-at_centre[EAST], position) / radius,
+        "rotation": np.cross(-at_centre[UP], position) / extent,
+        "scale": (position - centre) / extent,
+    }
+    return moved | {name: np.einsum("mij,mj->mi", axes, field) for name, field in turned.items()}, extent
+
+
+def minimal_datum(part: Part, geometry: Geometry, unknowns: Unknowns) -> csr_array:
+    """Rows (k, unknowns) that hold one mark, and of a far one what turns and scales the part about it.
+
+    As many rows as the part has datum elements missing: the observations' residuals do not depend on the choice.
+    """
+    marks = part.marks[unknowns.sought[part.marks].any(axis=1)]
+    names = [name for name in _ORDER if name in part.missing]
+    first = int(marks[np.argmax(unknowns.sought[marks].sum(axis=1))])
+    rows = np.zeros((len(names), 3))
+    held = np.full(len(names), first)
+    if {"rotation", "scale"} & part.missing:
+        offset = geometry.frame.displacement(
+            np.broadcast_to(geometry.coordinates[first], (len(marks), 3)), geometry.coordinates[marks]
+        )[:, :2]
+        farthest = int(np.nanargmax(np.hypot(*offset.T)))
+        along = offset[farthest] / np.hypot(*offset[farthest])
+        across = np.array([-along[1], along[0]])
+    for row, name in enumerate(names):
+        if name in ("rotation", "scale"):
+            held[row] = marks[farthest]
+            rows[row, :2] = along if name == "scale" else across
+        else:
+            rows[row, {"east": EAST, "north": NORTH, "height": UP}[name]] = 1.0
+    return _sparse_rows(rows * HELD, unknowns.columns[held], unknowns.count)
+
+
+def _sparse_rows(values: FloatArray, columns: IntArray, count: int) -> csr_array:
+    kept = (columns >= 0) & (values != 0.0)
+    row = np.nonzero(kept)[0]
+    return csr_array((values[kept], (row, columns[kept])), shape=(len(values), count))
+
+
+def displacement_of_unknowns(frame: Frame, start: FloatArray, end: FloatArray, unknowns: Unknowns) -> FloatArray:
+    """From `start` to `end` coordinates (n, 3) as a vector of unknowns (unknowns,); orientations 0."""
+    moved = frame.displacement(start, end)
+    result = np.zeros(unknowns.count)
+    result[: unknowns.coordinates] = moved[unknowns.sought]
+    return result
