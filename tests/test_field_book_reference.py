@@ -16,6 +16,7 @@ from adjust.field_book.job_file import (
     JobFile,
     StatisticsSection,
     Target,
+    TolerancesSection,
 )
 from adjust.field_book.reference import refreshed
 from adjust.field_book.schema import TABLES
@@ -36,7 +37,9 @@ def test_tables_are_those_of_the_schema() -> None:
     assert re.findall(r"<!-- table (\w+) -->", PAGE) == list(TABLES)
 
 
-@pytest.mark.parametrize("section", [JobFile, FrameSection, DatumSection, Instrument, StatisticsSection, Target])
+@pytest.mark.parametrize(
+    "section", [JobFile, FrameSection, DatumSection, Instrument, StatisticsSection, Target, TolerancesSection]
+)
 def test_every_key_is_described(section: type[JobFile]) -> None:
     described = PAGE.split("\n## job.toml\n")[1].split("\n## ")[0]
     for key in section.model_fields:

@@ -129,7 +129,7 @@ class Builder:
 
     def levels(self, rows: TableRows) -> tuple[Observations, ...]:
         """Levelled rises."""
-        return (HeightDifferences(**self._common(rows, HeightDifferences, "rise")),)
+        return (HeightDifferences(**self._common(rows, HeightDifferences, "rise"), length=rows.numbers["length"]),)
 
     def vectors(self, rows: TableRows) -> tuple[Observations, ...]:
         """GNSS vectors with their covariances."""

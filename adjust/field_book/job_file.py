@@ -100,6 +100,31 @@ class StatisticsSection(Section):
     sd_basis: Literal["prior", "posterior"] = "prior"
 
 
+Range = Annotated[list[float], Field(min_length=2, max_length=2)]
+
+
+class TolerancesSection(Section):
+    """`[tolerances]`; the defaults are those of `adjust.tolerances`."""
+
+    standard: FileNames | None = None
+    level_runs_mm_per_sqrt_km: Positive | None = None
+    level_loops_mm_per_sqrt_km: Positive | None = None
+    angles_arcsec_per_sqrt_n: Positive | None = None
+    triangles_arcsec: Positive | None = None
+    station_arcsec: Positive | None = None
+    position_ratio: Positive | None = None
+    position_mm_per_sqrt_km: Positive | None = None
+    distances_mm: NotNegative | None = None
+    distances_ppm: NotNegative | None = None
+    vectors_mm: NotNegative | None = None
+    vectors_ppm: NotNegative | None = None
+    sd_factor: Positive | None = None
+    confidence: Probability | None = None
+    instrument_height_m: Range | None = None
+    target_height_m: Range | None = None
+    same_mark_m: NotNegative | None = None
+
+
 INSTRUMENT_KEYS = ("instrument", *(f"{name}_instrument" for name, table in TABLES.items() if table.has_instrument))
 DEFAULT_KEYS = (*INSTRUMENT_KEYS, "target")
 """The keys that `[defaults]` may have; those of `[tables]` are the names of the tables."""
@@ -117,6 +142,7 @@ class JobFile(Section):
     instruments: dict[str, Instrument] = {}
     targets: dict[str, Target] = {}
     statistics: StatisticsSection = StatisticsSection()
+    tolerances: TolerancesSection = TolerancesSection()
 
     def default_instrument(self, table: str) -> str | None:
         """The instrument of rows that name none: the table's own default before the general one.
@@ -229,6 +255,7 @@ _SECTIONS: dict[str, type[Section]] = {
     "instruments": Instrument,
     "targets": Target,
     "statistics": StatisticsSection,
+    "tolerances": TolerancesSection,
 }
 
 

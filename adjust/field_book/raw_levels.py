@@ -55,7 +55,11 @@ class LevelsBuilder:
         provenance = self.rows.provenance.take(used).gathered(section, len(sd))
         line = book.line[sections.end]
         rises = HeightDifferences(
-            marks=marks, observed=sections.rise[:, None], provenance=provenance, precision=_on_model(sd)
+            marks=marks,
+            observed=sections.rise[:, None],
+            provenance=provenance,
+            precision=_on_model(sd),
+            length=sections.length,
         )
         return (rises,), LevelsReduced(self.lines.names, line, marks, sections, sd, check, provenance)
 

@@ -19,6 +19,7 @@ from adjust.field_book.mistakes import Likeness, Mistakes
 from adjust.field_book.notes import note_control, note_frame, note_left_out, note_unread
 from adjust.field_book.raw_tables import RawTables
 from adjust.field_book.settings import SettingsReader
+from adjust.field_book.tolerances import read_tolerances
 from adjust.frames import Frame
 from adjust.job import Datum, Job, Marks, Statistics
 from adjust.observations import KINDS, Directions, Observations, concatenated
@@ -57,6 +58,7 @@ class JobReader:
         """The job. Raises FieldDataError."""
         self.settings.check_names()
         frame, grid = self.settings.frame(), self.settings.geoid_grid()
+        tolerances = read_tolerances(self.job_file.tolerances, self.reader)
         book = self.tables.read()
         marks = self._marks(book, frame)
         in_use, left_out = self._observations(book)
@@ -82,6 +84,7 @@ class JobReader:
             date=self.job_file.date,
             datum=datum,
             statistics=Statistics(**self.job_file.statistics.model_dump()),
+            tolerances=tolerances,
             orthometric=orthometric,
             geoid_grid=grid,
             refraction_coefficient=self.job_file.frame.refraction_coefficient,

@@ -176,6 +176,7 @@ def _value_columns(rows: Observations, style: Style) -> Table:
         sd = rows.precision.stated
         if isinstance(rows, HeightDifferences):
             sd = np.where(np.isnan(sd), rows.precision.constant, sd)
+            table |= style.length("length", rows.length)
         table |= style.length("sd", sd, "mm") if rows.unit == "m" else style.small_angle("sd", sd)
     return table
 

@@ -39,8 +39,12 @@ class Tolerances:
     same_mark: float = SAME_MARK
 
     def rules(self, quantity: Quantity) -> tuple[Rule, ...]:
-        """The rules for a quantity, of which the smallest allowance counts; none where the sds decide."""
+        """The rules for a quantity, of which the smallest allowance counts; none where the sds decide.
+
+        Triangles are closed figures like others where nothing is said of them.
+        """
         if quantity in self.own:
             return self.own[quantity]
         figures = (figure for name in self.standards for figure in STANDARDS[name].figures)
-        return tuple(figure.rule for figure in figures if figure.quantity is quantity)
+        rules = tuple(figure.rule for figure in figures if figure.quantity is quantity)
+        return self.rules(Quantity.ANGLES) if quantity is Quantity.TRIANGLE and not rules else rules

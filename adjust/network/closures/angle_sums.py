@@ -55,7 +55,7 @@ def angle_closures(observed: Observed, orientations: Orientations, length: Float
     links = _links(observed, orientations, cycles.take(np.flatnonzero(link)), node, length)
     corners = sums.marks.lengths - 1
     return [
-        replace(sums.take(corners == 3), check="triangle"),
+        replace(sums.take(corners == 3), check="triangle", quantity=Quantity.TRIANGLE),
         replace(sums.take(corners == 4), check="quadrilateral"),
         sums.take((corners < 3) | (corners > 4)),
         links,
