@@ -234,6 +234,7 @@ def _explained(path: list[str], detail: ErrorDetails) -> str:
         "greater_than": f"a number above {limits.get('gt')}",
         "greater_than_equal": f"a number of {limits.get('ge')} or more",
         "less_than": f"a number below {limits.get('lt')}",
+        "less_than_equal": f"a number of {limits.get('le')} or less",
         "too_short": "at least one entry",
     }.get(kind)
     return f"{read}, expected {expected}" if expected else f"{read}: {detail['msg']}"

@@ -110,7 +110,8 @@ def reduce_slopes(book: Pointings, setups: int) -> Reduced:
     """Slope distances: means of the repeats to one target at one height, corrected readings as they stand.
 
     Repeats lessen the constant part of the instrument's sd and leave the proportional one, which air and frequency
-    make, and which all share (common practice, no source); `Means.sd` is the constant part.
+    make, and which all share (common practice, no source). `Means.sd` is the constant part, and so is what the spread
+    of the repeats is compared with, where the instrument has one.
     """
     chosen = np.flatnonzero(~np.isnan(book.slope))
     rows = book.take(chosen)
@@ -121,7 +122,7 @@ def reduce_slopes(book: Pointings, setups: int) -> Reduced:
     first = first_of_groups(sight, sights)
     constant = rows.distance_sd[first] / np.sqrt(count)
     means = Means(reduced.means.row, reduced.means.value, constant, reduced.means.part, reduced.means.provenance)
-    sd = np.hypot(rows.distance_sd, rows.proportional * rows.slope)
+    sd = np.where(rows.distance_sd > 0, rows.distance_sd, rows.proportional * rows.slope)
     scatter = Scatter(rows.setup, rows.to, reduced.scatter.residual, sd, rows.provenance)
     return Reduced(means, reduced.errors, scatter, reduced.redundancy)
 
