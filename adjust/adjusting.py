@@ -113,7 +113,7 @@ class _Assessment:
             global_test=global_test(statistic, freedom, self.job.statistics.confidence),
             condition_number=converged.factor.condition_number(),
             sd_basis=self.job.statistics.sd_basis,
-            second_opinion_gap=converged.factor.second_opinion().largest_gap,
+            second_opinion_gap=converged.opinion.largest_gap,
         )
 
     def _levels(self, solution: Solution) -> TestLevels:

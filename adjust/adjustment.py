@@ -29,7 +29,7 @@ class Solution:
     """The scalars of an adjustment.
 
     `variance_factor` is vᵀPv / degrees of freedom, None without any. `second_opinion_gap` is the largest difference,
-    metres or radians, between the last step and the one that LSQR finds for the same system.
+    metres or radians, between the first step, which leads all the way from the start, and the one LSQR finds for it.
     """
 
     observations: int

@@ -14,7 +14,7 @@ from adjust.frames import Geometry
 from adjust.job import Job
 from adjust.model import Linearisation, Model, State, build_model, whitened
 from adjust.network import Start, datum_parts
-from adjust.solver import Analysis, Factor, RankDefect, analyse
+from adjust.solver import Analysis, Factor, RankDefect, SecondOpinion, analyse
 from adjust.unknowns import Unknowns
 
 STANDSTILL = 1e-5
@@ -40,6 +40,8 @@ class Converged:
     factor: Factor
     inner: InnerDatum | None
     iterations: int
+    opinion: SecondOpinion
+    """On the first step, which carries the whole way from the start coordinates; later ones are almost nothing."""
 
 
 def station_of_setups(job: Job) -> IntArray:
@@ -72,6 +74,7 @@ class _GaussNewton:
         datum_rows = minimal_datum(self.parts[0], start.geometry, unknowns) if self.parts else None
         self.model = build_model(job, unknowns, datum_rows)
         self.analysis: Analysis | None = None
+        self.opinion: SecondOpinion | None = None
 
     def run(self) -> Converged:
         for iteration in range(1, MOST_ITERATIONS + 1):
@@ -79,11 +82,13 @@ class _GaussNewton:
             linearisation = self.model.linearise(self.state)
             self._refuse_without_geometry(linearisation)
             factor = self._solve(linearisation)
+            if self.opinion is None:
+                self.opinion = factor.second_opinion()
             before = self.state.geometry
             self.state = self._step(linearisation, factor.solution)
             inner = self._fit_to_given()
             if self._moved(before) <= STANDSTILL:
-                return Converged(self.state, self.model, linearisation, factor, inner, iteration)
+                return Converged(self.state, self.model, linearisation, factor, inner, iteration, self.opinion)
         raise ConvergenceError(self._failure(linearisation))
 
     def _solve(self, linearisation: Linearisation) -> Factor:
