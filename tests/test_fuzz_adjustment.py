@@ -52,7 +52,7 @@ def with_plausible_cells(draw: st.DrawFn, text: str) -> str:
 
 
 @pytest.mark.parametrize("base", BASES)
-@settings(max_examples=100, deadline=None)
+@settings(max_examples=50, deadline=None)
 @given(data=st.data())
 def test_plausible_tables(base: str, data: st.DataObject) -> None:
     files = dict(BASES[base])

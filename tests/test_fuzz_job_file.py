@@ -49,7 +49,7 @@ lines = st.one_of(
 
 
 @pytest.mark.parametrize("base", [PLANE, ELLIPSOID], ids=["plane", "ellipsoid"])
-@settings(quickly, max_examples=200)
+@settings(quickly, max_examples=100)
 @given(written=st.lists(lines, max_size=8))
 @example(written=["[frame]", 'kind = "ellipsoid"', 'crs = "\\u0000"'])
 @example(written=["[datum]", 'mode = "inner"', 'marks = ["\\u0000"]'])
@@ -60,7 +60,7 @@ def test_invented_job_files(base: dict[str, str], written: list[str]) -> None:
 
 
 @pytest.mark.parametrize("key", KEYS)
-@settings(quickly, max_examples=20)
+@settings(quickly, max_examples=8)
 @given(section=st.sampled_from(SECTIONS), value=st.sampled_from(VALUES))
 def test_any_value_for_any_key(key: str, section: str, value: str) -> None:
     read({**ELLIPSOID, "job.toml": f"{section}\n{key} = {value}\n"})

@@ -84,7 +84,9 @@ class InstrumentBook:
 
     def _described(self, table: str) -> dict[str, FloatArray]:
         """The model of each instrument for a table, as reading will understand it."""
-        read = Instruments.of(JobFile(instruments={name: Instrument.model_validate(keys) for name, keys in self.keys.items()}))
+        read = Instruments.of(
+            JobFile(instruments={name: Instrument.model_validate(keys) for name, keys in self.keys.items()})
+        )
         constant = {
             "directions": read.direction,
             "angles": read.angle,
