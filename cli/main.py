@@ -9,6 +9,7 @@ from io import TextIOWrapper
 import click
 
 from cli.adjust import adjust_command
+from cli.reduce import reduce_command
 
 INTERRUPTED = 130
 """Exit status after Ctrl-C: 128 + SIGINT, as shells expect."""
@@ -25,6 +26,7 @@ def hubtack() -> None:
 
 
 hubtack.add_command(adjust_command)
+hubtack.add_command(reduce_command)
 
 
 def run(arguments: Sequence[str]) -> int:

@@ -52,10 +52,15 @@ class JobFolder:
                 f"{folder} holds {foreign[0]}.csv, which would be read as part of this job; take it away"
             )
         folder.mkdir(parents=True, exist_ok=True)
-        (folder / JOB_FILE).write_text(toml_text(self.job_file), encoding="utf-8", newline="\n")
-        for name, table in self.tables.items():
-            text = table_text(table, (comments or {}).get(name, ()))
-            (folder / f"{name}.csv").write_text(text, encoding="utf-8", newline="\n")
+        for name, text in self.texts(comments).items():
+            (folder / name).write_text(text, encoding="utf-8", newline="\n")
+
+    def texts(self, comments: Mapping[str, Sequence[str]] | None = None) -> dict[str, str]:
+        """The text of each file by its name, `comments` by table above the header rows."""
+        tables = {
+            f"{name}.csv": table_text(table, (comments or {}).get(name, ())) for name, table in self.tables.items()
+        }
+        return {JOB_FILE: toml_text(self.job_file)} | tables
 
 
 def write_job(job: Job, folder: Path, style: Style = EXACT) -> None:

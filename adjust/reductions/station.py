@@ -9,8 +9,9 @@ import numpy as np
 from adjust.arrays import FloatArray, IntArray
 from adjust.reductions.circle import FULL_TURN, wrapped
 
-WEIGHTS_SETTLED = 1e-9
-"""Relative change of an equivalent weight below which they are final: more digits than a statement of precision has."""
+WEIGHTS_SETTLED = 1e-13
+"""Relative change of an equivalent weight below which they are final: directions of the same standing then have the
+same sd to the last digits, and the reduced tables one instrument for them."""
 MOST_WEIGHT_STEPS = 1000
 
 

@@ -11,6 +11,7 @@ from adjust.frames import EllipsoidFrame, PlaneFrame
 from adjust.quality import critical_tau, critical_w
 from adjust.reports import listing_marks, listing_observations
 from adjust.reports.layout import facts, paragraph, title
+from adjust.reports.reduction_text import listed_reduction
 from adjust.reports.selection import Order
 from adjust.reports.verdict import cautions, digits_left, verdict
 from adjust.reports.wording import NAMES, counted
@@ -42,6 +43,7 @@ def listing(adjustment: Adjustment, order: Order = "worst", most: int = LISTED) 
         *listing_observations.suspects(adjustment, most),
         *listing_observations.observations(adjustment, order, most),
         *listing_marks.relative(adjustment, most),
+        *listed_reduction(adjustment.job),
         *title("Numerical health"),
         *facts(numerical_facts(adjustment)),
         *_sentences("Notes", adjustment.notes),
