@@ -9,6 +9,7 @@ from io import TextIOWrapper
 import click
 
 from cli.adjust import adjust_command
+from cli.check import check_command
 from cli.reduce import reduce_command
 
 INTERRUPTED = 130
@@ -26,6 +27,7 @@ def hubtack() -> None:
 
 
 hubtack.add_command(adjust_command)
+hubtack.add_command(check_command)
 hubtack.add_command(reduce_command)
 
 

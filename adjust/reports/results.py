@@ -26,16 +26,16 @@ def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path) -
         file.write(f'{{\n"schema": {_ENCODER.encode(SCHEMA)},\n')
         file.write(f'"job": {_ENCODER.encode(job_record(adjustment))},\n')
         file.write(f'"solution": {_ENCODER.encode(solution_record(adjustment))},\n')
-        _write_list(file, "marks", mark_records(adjustment))
-        _write_list(file, "observations", observation_records(adjustment))
-        _write_list(file, "relative", line_records(adjustment))
-        _write_list(file, "suspects", iter(adjustment.suspects))
-        _write_list(file, "cautions", iter(cautions))
-        _write_list(file, "notes", iter(adjustment.notes), last=True)
+        write_list(file, "marks", mark_records(adjustment))
+        write_list(file, "observations", observation_records(adjustment))
+        write_list(file, "relative", line_records(adjustment))
+        write_list(file, "suspects", iter(adjustment.suspects))
+        write_list(file, "cautions", iter(cautions))
+        write_list(file, "notes", iter(adjustment.notes), last=True)
         file.write("}\n")
 
 
-def _write_list(file: TextIO, key: str, entries: Iterator[Record] | Iterator[str], *, last: bool = False) -> None:
+def write_list(file: TextIO, key: str, entries: Iterator[Record] | Iterator[str], *, last: bool = False) -> None:
     separator = f'"{key}": [\n'
     empty = True
     for entry in entries:

@@ -9,6 +9,7 @@ from adjust.frames import Geometry
 from adjust.job import Job
 from adjust.network.closures.angle_sums import angle_closures
 from adjust.network.closures.closures import Judged, judged
+from adjust.network.closures.clues import Clue, find_clues
 from adjust.network.closures.coordinates import control_distance_closures
 from adjust.network.closures.entries import entry_remarks
 from adjust.network.closures.heights import height_closures
@@ -32,8 +33,8 @@ class Check:
     """What can be said of a job before it is adjusted.
 
     `closures` has one entry for each check that found something to close, in a fixed order; `remarks` what is odd
-    without being a misclosure; `shared` and `suspicions` say what to look at first; `traverses` are those behind the
-    closures `traverse_loop` and `traverse_link`, in their order; `notes` what could not be checked and why.
+    without being a misclosure; `shared`, `suspicions` and `clues` say what to look at first; `traverses` are those
+    behind the closures `traverse_loop` and `traverse_link`, in their order; `notes` what could not be checked and why.
     """
 
     observed: Observed
@@ -41,6 +42,7 @@ class Check:
     remarks: tuple[Remark, ...]
     traverses: tuple[Traverse, ...]
     shared: tuple[SharedLine, ...]
+    clues: tuple[Clue, ...]
     suspicions: tuple[Suspicion, ...]
     notes: tuple[str, ...]
 
@@ -86,13 +88,15 @@ def check_job(job: Job) -> Check:
         *two_place_remarks(observed, stations, lines),
         *entry_remarks(observed, job.tolerances),
     ]
+    traverses = sorted(traverses, key=lambda traverse: traverse.marks[0] != traverse.marks[-1])
     return Check(
         observed,
         checks,
         tuple(remarks),
-        tuple(sorted(traverses, key=lambda traverse: traverse.marks[0] != traverse.marks[-1])),
+        tuple(traverses),
         tuple(shared_lines(checks)),
-        tuple(suspicions(checks, len(observed))),
+        tuple(find_clues(observed, checks, traverses)),
+        tuple(suspicions(checks, observed)),
         notes,
     )
 

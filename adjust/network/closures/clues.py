@@ -1,8 +1,9 @@
-"""What a misclosure looks like: the size of it often says which mistake was made."""
+"""What a misclosure looks like: its size and direction often say which mistake was made, and where."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
@@ -11,12 +12,48 @@ from adjust.network.closures.closures import Judged
 from adjust.network.closures.linear import Traverse
 from adjust.network.closures.observed import Observed
 
+MOST_CLUES = 100
+"""Failing closures, the worst of each check, that are looked into: a screen or two of text."""
 TELLING = 20.0
 """A figure is telling when the next one lies that many allowances away: one misclosure in ten hits one by chance."""
 LENGTH_SLIPS = tuple(digit * 10.0**power for power in (-2, -1, 0, 1, 2) for digit in range(1, 10))
 """Metres: one digit misread, from centimetres to hundreds of metres."""
 ANGLE_SLIPS = (1 / 60, 1 / 6, 0.5, 1.0, 2.0, 5.0, 10.0, 20.0, 30.0, 60.0, 90.0, 180.0, 0.9, 9.0)
 """Degrees: a minute, ten of them or a degree misread, a graduation of ten, a wrong face; 1 and 10 gon."""
+
+
+@dataclass(frozen=True)
+class Clue:
+    """What one failing closure suggests: `check` and its place `closure` there, in words, and which observations."""
+
+    check: str
+    closure: int
+    text: str
+    rows: tuple[int, ...] = ()
+
+
+def find_clues(observed: Observed, checks: Sequence[Judged], traverses: Sequence[Traverse]) -> Iterator[Clue]:
+    """Clues of every check's failing closures, the worst first."""
+    closed = sum(traverse.marks[0] == traverse.marks[-1] for traverse in traverses)
+    first = {"traverse_loop": 0, "traverse_link": closed}
+    for judged in checks:
+        check = judged.closures.check
+        worst = np.argsort(-judged.severity, kind="stable")[: min(MOST_CLUES, int(judged.exceeds.sum()))]
+        for number in worst.tolist():
+            yield from _slips(judged, number)
+            yield from _turned(observed, judged, number)
+            if check in first:
+                traverse, allowed = traverses[first[check] + number], float(judged.allowed[number, 0])
+                yield from _on_the_way(observed, traverse, allowed, check, number)
+
+
+def _slips(judged: Judged, number: int) -> Iterator[Clue]:
+    closures = judged.closures
+    if len(closures.components) > 1 or "traverse" in closures.check:
+        return
+    text = slip(float(closures.misclosure[number, 0]), float(judged.allowed[number, 0]), closures.unit)
+    if text:
+        yield Clue(closures.check, number, f"the misclosure is {text}")
 
 
 def slip(misclosure: float, allowed: float, unit: str) -> str:
@@ -38,17 +75,16 @@ def _angle_name(angle: float) -> str:
     return f"{degrees:g}°" if degrees >= 0.5 else f"{degrees * 60:g}′"
 
 
-def exchanged_ends(observed: Observed, judged: Judged, number: int) -> list[int]:
-    """Rises and vectors of a failing closure that would close it if they ran the other way."""
+def _turned(observed: Observed, judged: Judged, number: int) -> Iterator[Clue]:
+    """Rises of a failing closure that would close it if they ran the other way."""
     closures = judged.closures
-    found = []
+    misclosure, allowed = abs(float(closures.misclosure[number, 0])), float(judged.allowed[number, 0])
     for row in closures.rows[number].tolist():
-        kind, place = observed.place(row)
-        if kind.kind == "height_difference":
-            turned = abs(closures.misclosure[number, 0]) - 2.0 * abs(kind.observed[place, 0])
-            large = 2.0 * abs(kind.observed[place, 0]) > judged.allowed[number, 0]
-            found += [row] if large and abs(turned) <= judged.allowed[number, 0] else []
-    return found
+        rows, place = observed.place(row)
+        twice = 2.0 * abs(float(rows.observed[place, 0]))
+        if rows.kind == "height_difference" and twice > allowed and abs(misclosure - twice) <= allowed:
+            text = f"with the ends of {observed.source(row)} exchanged it would close"
+            yield Clue(closures.check, number, text, (row,))
 
 
 def doubtful_angles(traverse: Traverse, allowed: float) -> list[int]:
@@ -82,14 +118,18 @@ def _numbers(mask: BoolArray) -> list[int]:
     return numbers
 
 
-def traverse_clues(traverse: Traverse, allowed: float, angular_fails: bool, names: Sequence[str]) -> Iterator[str]:
-    """In words, where a traverse that does not close is likely to be wrong."""
-    if angular_fails:
+def _on_the_way(observed: Observed, traverse: Traverse, allowed: float, check: str, number: int) -> Iterator[Clue]:
+    """Where a traverse that does not close is likely to be wrong, if it is wrong in one place."""
+    names = observed.job.marks.names
+    sites = [names[mark] for mark in traverse.marks]
+    if abs(traverse.angular) * traverse.length / 2.0 > allowed:
         corners = doubtful_angles(traverse, allowed)
         if 0 < len(corners) < len(traverse.steps):
-            yield f"one angle would explain it, at {' or '.join(names[traverse.marks[corner]] for corner in corners)}"
+            text = f"one wrong angle, at {' or '.join(sites[corner] for corner in corners)}, would explain it"
+            rows = (row for corner in corners for row in traverse.corner_rows.get(corner, ()))
+            yield Clue(check, number, text, tuple(rows))
         return
     legs = doubtful_legs(traverse, allowed)
     if 0 < len(legs) < len(traverse.steps):
-        lines = (f"{names[traverse.marks[leg]]}–{names[traverse.marks[leg + 1]]}" for leg in legs)
-        yield f"it runs along {' or '.join(lines)}: one length would explain it"
+        text = f"one wrong length, {' or '.join(f'{sites[leg]}–{sites[leg + 1]}' for leg in legs)}, would explain it"
+        yield Clue(check, number, text, tuple(row for leg in legs for row in traverse.leg_rows[leg]))

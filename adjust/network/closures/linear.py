@@ -19,6 +19,9 @@ from adjust.network.closures.traverses import Step, find_legs, find_walks
 from adjust.observations.direction import azimuth_of
 from adjust.tolerances import Quantity
 
+QUARTER_TURN = np.array([[0.0, -1.0], [1.0, 0.0]])
+"""Turns rows east, north clockwise by a right angle."""
+
 
 @dataclass(frozen=True)
 class Traverse:
@@ -26,8 +29,9 @@ class Traverse:
 
     `marks` as walked; `steps` (legs, 2) east and north along its azimuths, with the angular misclosure (`angular`,
     radians) shared out, or `unbalanced`; `arrival` (2,) is what they ought to sum to. `misclosure` (2,) is their sum
-    minus that. `positions` (legs − 1, 2 or 3) are the frame's coordinates of the marks on the way by the compass rule,
-    where the traverse sets out from control; None elsewhere.
+    minus that. `leg_rows` are the observations of each leg's length, `corner_rows` those of the angle at the start of
+    a leg (the last corner at the end). `positions` (legs − 1, 2 or 3) are the frame's coordinates of the marks on the
+    way by the compass rule, where the traverse sets out from control; None elsewhere.
     """
 
     marks: list[int]
@@ -37,9 +41,15 @@ class Traverse:
     length: float
     angular: float
     sd: float
-    rows: list[int]
+    leg_rows: list[list[int]]
+    corner_rows: dict[int, list[int]]
     oriented: bool
     positions: FloatArray | None
+
+    @property
+    def rows(self) -> list[int]:
+        """All observations that it rests on."""
+        return [row for rows in (*self.leg_rows, *self.corner_rows.values()) for row in rows]
 
     @property
     def misclosure(self) -> FloatArray:
@@ -89,7 +99,9 @@ class Traversing:
             turn = self._turn(course, marks, unbalanced, reference)
             steps, unbalanced = _turned(steps, turn), _turned(unbalanced, turn)
         along = arrival if marks[0] != marks[-1] and not course.oriented else None
-        rows, sd = self._precision(course, line, unbalanced, along)
+        leg_rows = [self.lines.lengths.rows[place].tolist() for place in line.tolist()]
+        corner_rows = self._corner_rows(course)
+        sd = self._precision(course, corner_rows, line, unbalanced, along)
         positions = self._positions(marks, steps, reference, length) if self._controlled(marks) else None
         return Traverse(
             marks,
@@ -99,7 +111,8 @@ class Traversing:
             float(length.sum()),
             course.angular,
             sd,
-            rows,
+            leg_rows,
+            {corner.first: rows for corner, rows in zip(course.corners, corner_rows, strict=True)},
             course.oriented,
             positions,
         )
@@ -130,30 +143,36 @@ class Traversing:
         turn = self._predicted(course.legs[0]) - float(course.azimuth[0])
         return turn if np.isfinite(turn) else 0.0
 
+    def _corner_rows(self, course: Course) -> list[list[int]]:
+        """The observations of each corner's angle."""
+        stations = self.orientations.stations
+        ways = [stations.way(corner.one, corner.other) for corner in course.corners]
+        return [stations.readings.rows[way].tolist() for way in ways]
+
     def _precision(
-        self, course: Course, line: IntArray, steps: FloatArray, along: FloatArray | None
-    ) -> tuple[list[int], float]:
-        """The observations of a traverse and the sd of its linear misclosure, metres.
+        self,
+        course: Course,
+        corner_rows: list[list[int]],
+        line: IntArray,
+        steps: FloatArray,
+        along: FloatArray | None,
+    ) -> float:
+        """The sd of a traverse's linear misclosure, metres.
 
         Each length moves the end along its leg, each angle across the line from its mark to the end; where the angular
         misclosure is shared out, an angle's error moves the end by its own lever less the mean of all levers. A
         traverse that nothing orients shows only what the end is off by `along` (2,) the line to it.
         """
-        stations, lengths = self.orientations.stations, self.lines.lengths
-        ways = [stations.way(corner.one, corner.other) for corner in course.corners]
-        rows = [stations.readings.rows[way].tolist() for way in ways]
         at = np.vstack([np.zeros(2), np.cumsum(steps, axis=0)])
         levers = np.array([at[corner.last] - at[corner.first] for corner in course.corners]).reshape(-1, 2)
         if course.share.any():
             levers = levers - levers.mean(axis=0)
-        moves = np.vstack([steps / np.hypot(*steps.T)[:, None], levers @ np.array([[0.0, -1.0], [1.0, 0.0]])])
+        moves = np.vstack([steps / np.hypot(*steps.T)[:, None], levers @ QUARTER_TURN])
         if along is not None:
             moves = moves @ (along / np.hypot(*along))[:, None]
-        angles = [float(np.sum(self.observed.sd[of_corner] ** 2)) for of_corner in rows]
+        angles = [float(np.sum(self.observed.sd[rows] ** 2)) for rows in corner_rows]
         variances = np.concatenate([self.variance[line], angles])
-        measured = [row for place in line.tolist() for row in lengths.rows[place].tolist()]
-        total = float(variances @ np.sum(moves**2, axis=1))
-        return [*measured, *(row for of_corner in rows for row in of_corner)], float(np.sqrt(total))
+        return float(np.sqrt(variances @ np.sum(moves**2, axis=1)))
 
     def _positions(self, marks: list[int], steps: FloatArray, reference: FloatArray, length: FloatArray) -> FloatArray:
         """Coordinates (legs − 1, 3) by the compass rule of the marks on the way; the heights are not the traverse's."""

@@ -11,6 +11,7 @@ import numpy as np
 
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.network.closures.closures import Judged
+from adjust.network.closures.observed import Observed
 from adjust.network.closures.ragged import Ragged, joined
 
 MOST_SUSPICIONS = 10
@@ -21,13 +22,18 @@ LINE_CHECKS = frozenset(
     ("level_loop", "level_line", "height_loop", "vector_loop", "vector_line", "triangle", "quadrilateral", "angle_sum")
 ) | {"traverse_loop", "traverse_link"}
 """Checks whose closures are made of lines from mark to mark."""
+KNOWN_DIRECTIONS = frozenset(("azimuth_link", "orientation"))
+"""Checks that set out from a direction between two marks of control."""
+CONTROL_CHECKS = KNOWN_DIRECTIONS | {"level_line", "height_loop", "traverse_link", "vector_line", "control_distance"}
+"""Checks whose closures rest on given coordinates at their ends."""
 
 
 @dataclass(frozen=True)
 class Suspicion:
-    """Rows that nothing tells apart: the numbers of failing and of passing closures that rest on each of them."""
+    """Rows, and marks of control, that nothing tells apart: how many failing and passing closures rest on each."""
 
     rows: tuple[int, ...]
+    marks: tuple[int, ...]
     failing: int
     passing: int
 
@@ -43,39 +49,63 @@ class SharedLine:
     rows: tuple[int, ...]
 
 
-def suspicions(checks: Sequence[Judged], rows: int) -> list[Suspicion]:
-    """The fewest rows that could explain all failing closures, the likeliest first; `rows` is the number of all rows.
+def suspicions(checks: Sequence[Judged], observed: Observed) -> list[Suspicion]:
+    """The fewest rows and marks of control that could explain all failing closures, the likeliest first.
 
-    Taken one after the other: the row that most failing closures not yet explained rest on, each passing closure that
-    rests on it counting against it. Rows that the same closures rest on are named together.
+    Taken one after the other: what most failing closures not yet explained rest on, each passing closure that rests on
+    it counting against it. What the same closures rest on is named together.
     """
-    incidence = joined([judged.closures.rows for judged in checks])
+    rows, size = len(observed), len(observed) + len(observed.job.marks)
+    incidence = joined([_rests_on(judged, observed) for judged in checks])
     failing: BoolArray = np.concatenate([np.zeros(0, dtype=bool), *(judged.exceeds for judged in checks)])
+    every, passing = _count(incidence, failing, size), _count(incidence, ~failing, size)
+    closures_of = _by_value(incidence, size)
     unexplained, found = failing.copy(), list[Suspicion]()
-    passing = _count(incidence, ~failing, rows)
-    every = _count(incidence, failing, rows)
-    by_row = _by_row(incidence, rows)
     while unexplained.any() and len(found) < MOST_SUSPICIONS:
-        explained = _count(incidence, unexplained, rows)
+        explained = _count(incidence, unexplained, size)
         score = np.where(explained > 0, explained - passing, -np.inf)
-        best = np.flatnonzero(score == score.max())
-        if not len(best) or not np.isfinite(score.max()):
+        best = int(np.argmax(score))
+        if not explained[best]:
             break
-        first = by_row[int(best[0])]
-        alike = [int(row) for row in best if np.array_equal(by_row[int(row)], first)]
-        found.append(Suspicion(tuple(alike[:MOST_ROWS]), int(every[alike[0]]), int(passing[alike[0]])))
-        unexplained[first] = False
+        alike = [int(other) for other in np.flatnonzero(score == score[best]) if _same(closures_of, best, int(other))]
+        found.append(
+            Suspicion(
+                tuple(number for number in alike if number < rows)[:MOST_ROWS],
+                tuple(number - rows for number in alike if number >= rows)[:MOST_ROWS],
+                int(every[best]),
+                int(passing[best]),
+            )
+        )
+        unexplained[closures_of[best]] = False
     return found
 
 
-def _count(incidence: Ragged, chosen: BoolArray, rows: int) -> FloatArray:
-    """In how many of the chosen closures each row is."""
-    return np.bincount(incidence.values[chosen[incidence.owner]], minlength=rows).astype(np.float64)
+def _same(closures_of: Ragged, one: int, other: int) -> bool:
+    return np.array_equal(closures_of[one], closures_of[other])
 
 
-def _by_row(incidence: Ragged, rows: int) -> Ragged:
-    """The closures that each row is in."""
-    places = Ragged.grouped(incidence.values, rows)
+def _rests_on(judged: Judged, observed: Observed) -> Ragged:
+    """The observations of each closure, and behind all rows the marks of control that it sets out from or arrives
+    at."""
+    closures = judged.closures
+    lists = [closures.rows[number].tolist() for number in range(len(closures))]
+    if closures.check in CONTROL_CHECKS:
+        for number, numbers in enumerate(lists):
+            marks = closures.marks[number].tolist()
+            ends = {*marks[:2], *marks[-2:]} if closures.check in KNOWN_DIRECTIONS else {marks[0], marks[-1]}
+            if marks[0] != marks[-1] or closures.check in KNOWN_DIRECTIONS:
+                numbers += [len(observed) + mark for mark in sorted(ends) if observed.held[mark].any()]
+    return Ragged.of(lists)
+
+
+def _count(incidence: Ragged, chosen: BoolArray, size: int) -> FloatArray:
+    """How many of the chosen closures rest on each number."""
+    return np.bincount(incidence.values[chosen[incidence.owner]], minlength=size).astype(np.float64)
+
+
+def _by_value(incidence: Ragged, size: int) -> Ragged:
+    """The closures that rest on each number."""
+    places = Ragged.grouped(incidence.values, size)
     return Ragged(incidence.owner[places.values], places.starts)
 
 
