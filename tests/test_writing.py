@@ -19,9 +19,11 @@ from adjust.frames import GeoidGrid, PlaneFrame
 from adjust.job import Datum, Statistics
 from adjust.observations import HeightDifferences, Observations
 from adjust.simulate import NETWORKS, observe, true_geometry
-from adjust.units import ARCSEC
+from adjust.simulate.demos import DEMOS
+from adjust.units import ARCSEC, DEGREE
 from tests.building import build_job
 
+FIELD_DATA = Path(__file__).parent.parent / "field_data"
 RADIANS = 1e-14  # rad: a degree value of up to 360 has lost this much by conversion at most
 METRES = 1e-9  # m: millions of metres in double precision
 
@@ -185,6 +187,27 @@ def test_a_surveyors_style_rounds(tmp_path: Path) -> None:
     for rows, again, rounding in zip(kinds(job)[:2], kinds(back)[:2], (0.05 * ARCSEC, 5e-5), strict=True):
         assert 0 < np.abs(again.observed - rows.observed).max() <= rounding * (1 + 1e-9)
     assert (tmp_path / "marks.csv").read_text().startswith("mark,easting_m,northing_m,height_m")
+
+
+@pytest.mark.parametrize(("sexagesimal", "cells"), [(True, ["0-00-00.0", "359-59-59.9"]), (False, ["0.0", "359.9"])])
+def test_what_rounds_up_to_a_whole_turn_is_zero(sexagesimal: bool, cells: list[str]) -> None:
+    unit = ARCSEC if sexagesimal else DEGREE
+    style = Style({"direction": 1}, sexagesimal=sexagesimal)
+    angles = 2 * np.pi - np.array([0.04, 0.06]) * unit
+    assert list(style.angle("direction", angles, full_circle=True).values()) == [cells]
+
+
+@pytest.mark.parametrize("name", DEMOS)
+def test_demonstrations_come_back(name: str, tmp_path: Path) -> None:
+    """Several files for a table, instruments, descriptions with commas, vectors with correlations."""
+    job = read_job(FIELD_DATA / name)
+    back = through_a_folder(job, tmp_path)
+    assert back.marks.descriptions == job.marks.descriptions
+    assert (back.title, back.date, back.orthometric) == (job.title, job.date, job.orthometric)
+    for rows, again in zip(job.observations, back.observations, strict=True):
+        tolerance = RADIANS if rows.unit == "rad" else METRES
+        np.testing.assert_allclose(again.observed, rows.observed, rtol=0, atol=tolerance)
+        np.testing.assert_array_equal(again.marks, rows.marks)
 
 
 def test_sexagesimal_angles_come_back(tmp_path: Path) -> None:

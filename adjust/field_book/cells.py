@@ -14,6 +14,8 @@ from adjust.units import ANGLE_ENDINGS, LENGTH_ENDINGS, format_dms
 Table = dict[str, list[str]]
 """Cells of a table column by column, under the titles of the header row; all columns of one length."""
 
+TURN = 2 * np.pi
+
 FULL_SECONDS = 9
 """Decimals of a second of arc, 5e-15 rad, about what double precision holds of an angle of one radian."""
 
@@ -36,10 +38,17 @@ class Style:
         """One column of lengths (rows,); blank where NaN."""
         return {f"{name}_{ending}": self.numbers(name, metres, LENGTH_ENDINGS[ending])}
 
-    def angle(self, name: str, radians: FloatArray) -> Table:
-        """One column of angles (rows,); blank where NaN."""
+    def angle(self, name: str, radians: FloatArray, *, full_circle: bool = False) -> Table:
+        """One column of angles (rows,); blank where NaN.
+
+        With `full_circle` what rounds up to a whole turn is written 0.
+        """
+        unit = ANGLE_ENDINGS["arcsec" if self.sexagesimal else "deg"]
+        if full_circle and name in self.decimals:
+            step = unit / 10 ** self.decimals[name]
+            radians = np.round(radians / step) % round(TURN / step) * step
         if not self.sexagesimal:
-            return {f"{name}_deg": self.numbers(name, radians, ANGLE_ENDINGS["deg"])}
+            return {f"{name}_deg": self.numbers(name, radians, unit)}
         decimals = self.decimals.get(name, FULL_SECONDS)
         cells = ["" if angle != angle else format_dms(angle, decimals) for angle in radians.tolist()]
         return {f"{name}_dms": cells}

@@ -41,11 +41,12 @@ class JobFolder:
     job_file: dict[str, Any]
     tables: dict[str, Table]
 
-    def write(self, folder: Path, comments: Mapping[str, Sequence[str]] | None = None) -> None:
+    def write(self, folder: str | Path, comments: Mapping[str, Sequence[str]] | None = None) -> None:
         """Write all files, `comments` by table above the header rows; files of the same names are overwritten.
 
         Raises FileExistsError when the folder holds a table that is not part of this job.
         """
+        folder = Path(folder)
         foreign = [name for name in TABLES if name not in self.tables and (folder / f"{name}.csv").exists()]
         if foreign:
             raise FileExistsError(
@@ -63,15 +64,17 @@ class JobFolder:
         return {JOB_FILE: toml_text(self.job_file)} | tables
 
 
-def write_job(job: Job, folder: Path, style: Style = EXACT) -> None:
+def write_job(job: Job, folder: str | Path, style: Style = EXACT) -> None:
     """Write a job as a folder that `read_job` reads back as the same job, to the last digit unless `style` rounds.
 
     Rows that state an sd keep it; those on an instrument's model name an instrument of the job file that is written
     for them. Raises FileExistsError when the folder holds a table that is not part of this job.
     """
     describe_job(job, style).write(folder)
-    if job.geoid_grid is not None and job.geoid_grid.path.resolve() != (folder / job.geoid_grid.path.name).resolve():
-        shutil.copyfile(job.geoid_grid.path, folder / job.geoid_grid.path.name)
+    if job.geoid_grid is not None:
+        source, target = job.geoid_grid.path, Path(folder) / job.geoid_grid.path.name
+        if source.resolve() != target.resolve():
+            shutil.copyfile(source, target)
 
 
 def describe_job(
@@ -172,8 +175,8 @@ def _rows_table(job: Job, rows: Observations, use: str, style: Style, book: Inst
 
 def _value_columns(rows: Observations, style: Style) -> Table:
     """The observed value, the heights of instrument and target, and the row's own sd."""
-    write = style.length if rows.unit == "m" else style.angle
-    table = write(VALUE_COLUMNS[rows.kind], rows.observed[:, 0])
+    name, values = VALUE_COLUMNS[rows.kind], rows.observed[:, 0]
+    table = style.length(name, values) if rows.unit == "m" else style.angle(name, values, full_circle=rows.full_circle)
     if isinstance(rows, SlopeDistances | ZenithAngles) and np.any(rows.heights):
         table |= style.length("instrument_height", rows.heights[:, 0])
         table |= style.length("target_height", rows.heights[:, 1])
