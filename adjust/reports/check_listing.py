@@ -16,6 +16,7 @@ from adjust.reports.check_words import (
     observations,
     rules_used,
     small,
+    sources,
     suspected,
     walk,
 )
