@@ -179,10 +179,10 @@ def test_version_is_that_of_the_distribution(capsys):
     assert capsys.readouterr().out == f"hubtack, version {version('hubtack')}\n"
 
 
-def test_a_console_without_greek_still_gets_the_verdict(folder_of):
+def test_a_console_that_lacks_a_letter_still_gets_the_verdict(folder_of):
     """Letters that the console's encoding lacks are replaced."""
     line = [sys.executable, "-c", "from cli.main import main; main()", "adjust", str(folder_of("levelling"))]
-    surroundings = {"PYTHONIOENCODING": "ascii", "PYTHONPATH": str(ROOT), "PATH": ""}
+    surroundings = {"PYTHONIOENCODING": "cp1252", "PYTHONPATH": str(ROOT), "PATH": ""}
     done = subprocess.run(line, capture_output=True, env=surroundings, timeout=120, check=False)
     assert done.returncode == 0
     assert b"v?Pv is" in done.stdout

@@ -10,7 +10,7 @@ from adjust.job import Statistics
 from adjust.reports import layout
 from adjust.reports.layout import Column, shortened, table
 from adjust.reports.listing import STANDING_CAUTION, listing
-from adjust.reports.records import mark_records, observation_records
+from adjust.reports.records import mark_figures, observation_figures, records
 from adjust.reports.verdict import cautions, digits_left, verdict
 from tests.adjusted_networks import JOBS, adjusted
 
@@ -40,6 +40,10 @@ def test_title_and_verdict_come_first(name):
     assert " ".join(lines[2:4]).startswith(verdict(adjustment)[:90])
 
 
+def rows_of(chunks):
+    return [record for figures in chunks for record in records(figures)]
+
+
 def section(lines, heading):
     """The lines under a heading, up to the next blank line."""
     first = next(place for place, line in enumerate(lines) if line.startswith(heading)) + 2
@@ -51,7 +55,7 @@ def section(lines, heading):
 def test_coordinates_are_printed_to_a_tenth_of_a_millimetre(name):
     adjustment = adjusted(name)
     lines = section(listing(adjustment), "Coordinates")
-    for record in mark_records(adjustment):
+    for record in rows_of(mark_figures(adjustment)):
         line = next(line for line in lines if line.split()[0] == record["mark"])
         figures = [float(cell) for cell in line.split()[1:]]
         expected = [record[key] for key in ("easting_m", "northing_m", "height_m")]
@@ -70,12 +74,12 @@ def test_worst_order_goes_by_size_and_book_order_by_line(name):
     sizes = [abs(float(line.split()[0].rstrip("!"))) for line in observation_lines(listing(adjustment, "worst"))]
     assert sizes == sorted(sizes, reverse=True)
     sources = [line.split()[-1] for line in observation_lines(listing(adjustment, "book"))]
-    assert sources == [record["source"] for record in observation_records(adjustment)]
+    assert sources == [record["source"] for record in rows_of(observation_figures(adjustment))]
 
 
 def test_residuals_are_millimetres_and_arcseconds():
     adjustment = adjusted("blunder")
-    records = list(observation_records(adjustment))
+    records = rows_of(observation_figures(adjustment))
     for line, record in zip(observation_lines(listing(adjustment, "book")), records, strict=True):
         scale, unit = (1000, "mm") if record["unit"] == "m" else (3600, '"')
         cells = line.split()

@@ -36,7 +36,7 @@ def control(adjustment: Adjustment, most: int) -> list[str]:
     if len(rows) == 0:
         return []
     columns = (MARK, Column("plan", text=True), Column("height", text=True), *PLACES)
-    records = list(mark_records(adjustment, rows[:most]))
+    records = mark_records(adjustment, rows[:most])
     cells = [[record["mark"], record["plan_status"], record["height_status"], *_places(record)] for record in records]
     lines = [*title("Control"), *table(columns, cells)]
     return lines + shown_of(len(records), len(rows), "the first in the book", "coordinates.csv")
@@ -44,7 +44,7 @@ def control(adjustment: Adjustment, most: int) -> list[str]:
 
 def coordinates(adjustment: Adjustment, most: int) -> list[str]:
     """Coordinates with sds and 95 % figures, then geographic coordinates, then ellipses."""
-    records = list(mark_records(adjustment, listed_marks(adjustment, most)))
+    records = mark_records(adjustment, listed_marks(adjustment, most))
     columns = (
         MARK,
         *PLACES,
@@ -116,7 +116,7 @@ def _north(adjustment: Adjustment) -> str:
 
 def relative(adjustment: Adjustment, most: int) -> list[str]:
     """Accuracy of every observed pair of marks against each other."""
-    records = list(line_records(adjustment, listed_lines(adjustment, most)))
+    records = line_records(adjustment, listed_lines(adjustment, most))
     if not records:
         return []
     columns = (

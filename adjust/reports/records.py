@@ -1,13 +1,12 @@
-"""The figures of an adjustment in the units of the outputs, one record for each mark, observation and line.
+"""The figures of an adjustment in the units of the outputs: of marks, of observations and of lines.
 
-`results.json` writes the records as they are and the tables flatten them, so that all outputs carry the same figures.
-A figure that does not exist is None, never NaN.
+All outputs are made of these columns, hence carry the same figures. A figure that does not exist is None, never NaN.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterator, Mapping
 from typing import Any
 
 import numpy as np
@@ -18,13 +17,17 @@ from adjust.observations import ControlCoordinates, Observations
 from adjust.quality import Ellipse
 from adjust.residuals import Residuals
 
+Figures = dict[str, Any]
+"""Equally long columns by key; a nested one holds the columns of a nested record."""
+
 Record = dict[str, Any]
+"""One row of `Figures`: what a mark, an observation or a line has to show."""
 
 MILLIMETRES = 1000.0
 SQUARE_MILLIMETRES = 1e6
 
 ROWS_AT_ONCE = 20_000
-"""Records made from arrays together: enough to spread NumPy's overhead, few enough to spare the memory."""
+"""Rows made from arrays together: enough to spread NumPy's overhead, few enough to spare the memory."""
 
 CONTROL_COMPONENTS = ("easting", "northing", "height")
 
@@ -50,19 +53,23 @@ def known_coordinates(adjustment: Adjustment) -> FloatArray:
     return shown
 
 
-def mark_records(adjustment: Adjustment, rows: IntArray | None = None) -> Iterator[Record]:
-    """One record for each mark, or for the marks `rows`, in that order."""
+def mark_figures(adjustment: Adjustment, rows: IntArray | None = None) -> Iterator[Figures]:
+    """Figures of all marks, or of the marks `rows` in that order, some rows at a time."""
     chosen = np.arange(len(adjustment.job.marks)) if rows is None else rows
     coordinates = known_coordinates(adjustment)
     for first in range(0, len(chosen), ROWS_AT_ONCE):
-        yield from _marks(adjustment, coordinates, chosen[first : first + ROWS_AT_ONCE])
+        yield _marks(adjustment, coordinates, chosen[first : first + ROWS_AT_ONCE])
 
 
-def _marks(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> Iterator[Record]:
+def mark_records(adjustment: Adjustment, rows: IntArray) -> list[Record]:
+    """One record for each of the marks `rows`."""
+    return [record for figures in mark_figures(adjustment, rows) for record in records(figures)]
+
+
+def _marks(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> Figures:
     statuses = [adjustment.statuses[row] for row in rows.tolist()]
     sds = adjustment.standard_deviations[rows] * MILLIMETRES
-    covariances = (adjustment.mark_covariances[rows] * SQUARE_MILLIMETRES).reshape(-1, 9)
-    columns: Record = {
+    return {
         "mark": [adjustment.job.marks.names[row] for row in rows.tolist()],
         "plan_status": [plan for plan, _ in statuses],
         "height_status": [height for _, height in statuses],
@@ -70,16 +77,15 @@ def _marks(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> I
         "sd_easting_mm": plain(sds[:, 0]),
         "sd_northing_mm": plain(sds[:, 1]),
         "sd_height_mm": plain(sds[:, 2]),
-        "covariance_mm2": [_square(plain(entries)) for entries in covariances],
+        "covariance_mm2": _matrices(adjustment.mark_covariances[rows] * SQUARE_MILLIMETRES),
         "ellipse": _ellipses(adjustment.ellipses, rows),
         "ellipse_confidence": _ellipses(adjustment.ellipses.scaled(adjustment.ellipse_factor), rows),
         "horizontal_95_mm": plain(adjustment.horizontal_95[rows] * MILLIMETRES),
         "height_95_mm": plain(adjustment.height_95[rows] * MILLIMETRES),
     }
-    return _records(columns)
 
 
-def _places(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> Record:
+def _places(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> Figures:
     """Grid, geographic and ellipsoidal coordinates, as far as the frame has them."""
     frame, geometry = adjustment.job.frame, adjustment.geometry
     grid = frame.grid_coordinates(coordinates[rows])
@@ -96,30 +102,32 @@ def _places(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> 
     }
 
 
-def _square(entries: list[Any]) -> list[list[Any]]:
-    return [entries[0:3], entries[3:6], entries[6:9]]
+def _matrices(matrices: FloatArray) -> list[list[list[Any]]]:
+    """Nested lists of matrices (n, 3, 3)."""
+    entries = plain(matrices.ravel())
+    lines = [entries[first : first + 3] for first in range(0, len(entries), 3)]
+    return [lines[first : first + 3] for first in range(0, len(lines), 3)]
 
 
-def _ellipses(ellipses: Ellipse, rows: IntArray) -> list[Record]:
+def _ellipses(ellipses: Ellipse, rows: IntArray) -> Figures:
     azimuths = np.degrees(ellipses.azimuth[rows])
-    columns = {
+    return {
         "semi_major_mm": plain(ellipses.semi_major[rows] * MILLIMETRES),
         "semi_minor_mm": plain(ellipses.semi_minor[rows] * MILLIMETRES),
         "azimuth_deg": plain(np.where(azimuths >= 180.0, 0.0, azimuths)),
     }
-    return list(_records(columns))
 
 
-def observation_records(adjustment: Adjustment) -> Iterator[Record]:
-    """One record for each component of each observation, kinds in the registry's order, rows in the book's."""
+def observation_figures(adjustment: Adjustment) -> Iterator[Figures]:
+    """Figures of each component of each observation, kinds in the registry's order, rows in the book's."""
     for table in adjustment.residuals:
         scalars = table.residual.size
         for first in range(0, scalars, ROWS_AT_ONCE):
-            yield from scalar_records(adjustment, table, np.arange(first, min(first + ROWS_AT_ONCE, scalars)))
+            yield scalar_figures(adjustment, table, np.arange(first, min(first + ROWS_AT_ONCE, scalars)))
 
 
-def scalar_records(adjustment: Adjustment, table: Residuals, scalars: IntArray) -> Iterator[Record]:
-    """Records of one kind's `scalars`: row · components + component."""
+def scalar_figures(adjustment: Adjustment, table: Residuals, scalars: IntArray) -> Figures:
+    """Figures of one kind's `scalars`: row · components + component."""
     observations = table.observations
     rows, components = np.divmod(scalars, len(observations.components))
     angular = observations.unit == "rad"
@@ -129,7 +137,7 @@ def scalar_records(adjustment: Adjustment, table: Residuals, scalars: IntArray) 
         chosen = values.ravel()[scalars]
         return plain(np.degrees(chosen) if angular else chosen)
 
-    columns = {
+    return {
         "source": _sources(observations, rows),
         "kind": [observations.kind] * len(scalars),
         "component": _components(observations, rows, components),
@@ -145,7 +153,6 @@ def scalar_records(adjustment: Adjustment, table: Residuals, scalars: IntArray) 
         "tau": plain(table.tau.ravel()[scalars]),
         "suspect": table.suspect.ravel()[scalars].tolist(),
     }
-    return _records(columns)
 
 
 def _values(
@@ -178,10 +185,10 @@ def _components(observations: Observations, rows: IntArray, components: IntArray
     return [observations.components[component] or None for component in components.tolist()]
 
 
-def _roles(adjustment: Adjustment, observations: Observations, rows: IntArray) -> Record:
+def _roles(adjustment: Adjustment, observations: Observations, rows: IntArray) -> Figures:
     """Names of the marks and of the setup, None where the kind has no such role."""
     names, setup = adjustment.job.marks.names, observations.setup
-    columns: Record = dict.fromkeys(("at", "from", "to", "setup"), [None] * len(rows))
+    columns: Figures = dict.fromkeys(("at", "from", "to", "setup"), [None] * len(rows))
     for position, role in enumerate(observations.roles):
         columns[role] = [names[mark] for mark in observations.marks[rows, position].tolist()]
     if setup is not None:
@@ -189,17 +196,22 @@ def _roles(adjustment: Adjustment, observations: Observations, rows: IntArray) -
     return columns
 
 
-def line_records(adjustment: Adjustment, rows: IntArray | None = None) -> Iterator[Record]:
-    """One record for each observed pair of marks, or for the lines `rows`, in that order."""
+def line_figures(adjustment: Adjustment, rows: IntArray | None = None) -> Iterator[Figures]:
+    """Figures of each observed pair of marks, or of the lines `rows` in that order, some rows at a time."""
     chosen = np.arange(len(adjustment.lines)) if rows is None else rows
     for first in range(0, len(chosen), ROWS_AT_ONCE):
-        yield from _lines(adjustment, chosen[first : first + ROWS_AT_ONCE])
+        yield _lines(adjustment, chosen[first : first + ROWS_AT_ONCE])
 
 
-def _lines(adjustment: Adjustment, rows: IntArray) -> Iterator[Record]:
+def line_records(adjustment: Adjustment, rows: IntArray) -> list[Record]:
+    """One record for each of the lines `rows`."""
+    return [record for figures in line_figures(adjustment, rows) for record in records(figures)]
+
+
+def _lines(adjustment: Adjustment, rows: IntArray) -> Figures:
     names = adjustment.job.marks.names
     ellipses = adjustment.line_ellipses
-    columns: Record = {
+    return {
         "from": [names[mark] for mark in adjustment.lines[rows, 0].tolist()],
         "to": [names[mark] for mark in adjustment.lines[rows, 1].tolist()],
         "distance_m": plain(adjustment.line_lengths[rows]),
@@ -207,11 +219,11 @@ def _lines(adjustment: Adjustment, rows: IntArray) -> Iterator[Record]:
         "ellipse_confidence": _ellipses(ellipses.scaled(adjustment.ellipse_factor), rows),
         "sd_height_difference_mm": plain(np.sqrt(adjustment.line_covariances[rows, 2, 2]) * MILLIMETRES),
     }
-    return _records(columns)
 
 
-def _records(columns: Mapping[str, Iterable[Any]]) -> Iterator[Record]:
-    """Rows of equally long columns."""
-    keys = tuple(columns)
-    for values in zip(*columns.values(), strict=True):
+def records(figures: Mapping[str, Any]) -> Iterator[Record]:
+    """The rows of columns."""
+    keys = tuple(figures)
+    columns = [records(column) if isinstance(column, dict) else column for column in figures.values()]
+    for values in zip(*columns, strict=True):
         yield dict(zip(keys, values, strict=True))

@@ -5,11 +5,11 @@ from __future__ import annotations
 import json
 from collections.abc import Iterable, Iterator
 from pathlib import Path
-from typing import TextIO
+from typing import Any, TextIO
 
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame
-from adjust.reports.records import Record, line_records, mark_records, number, observation_records
+from adjust.reports.records import Figures, Record, line_figures, mark_figures, number, observation_figures
 
 SCHEMA = "hubtack-results/1"
 
@@ -20,15 +20,15 @@ _ENCODER = json.JSONEncoder(ensure_ascii=False, allow_nan=False)
 def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path) -> None:
     """One key a line, and one line for each mark, observation and pair, so that results compare line by line.
 
-    Records are written as they are made: a million observations never stand in memory as objects.
+    Text is made column by column and some rows at a time: a million observations never stand in memory as objects.
     """
     with path.open("w", encoding="utf-8", newline="\n") as file:
         file.write(f'{{\n"schema": {_ENCODER.encode(SCHEMA)},\n')
         file.write(f'"job": {_ENCODER.encode(job_record(adjustment))},\n')
         file.write(f'"solution": {_ENCODER.encode(solution_record(adjustment))},\n')
-        write_list(file, "marks", mark_records(adjustment))
-        write_list(file, "observations", observation_records(adjustment))
-        write_list(file, "relative", line_records(adjustment))
+        _write_records(file, "marks", mark_figures(adjustment))
+        _write_records(file, "observations", observation_figures(adjustment))
+        _write_records(file, "relative", line_figures(adjustment))
         write_list(file, "suspects", iter(adjustment.suspects))
         write_list(file, "cautions", iter(cautions))
         write_list(file, "notes", iter(adjustment.notes), last=True)
@@ -36,12 +36,41 @@ def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path) -
 
 
 def write_list(file: TextIO, key: str, entries: Iterator[Record] | Iterator[str], *, last: bool = False) -> None:
+    """Write a list under `key`, one entry a line."""
+    _write_lines(file, key, ([_ENCODER.encode(entry)] for entry in entries), last)
+
+
+def _write_records(file: TextIO, key: str, chunks: Iterator[Figures]) -> None:
+    """Write the rows of columns under `key`, one record a line."""
+    _write_lines(file, key, map(_record_texts, chunks), last=False)
+
+
+def _write_lines(file: TextIO, key: str, blocks: Iterator[list[str]], last: bool) -> None:
     separator = f'"{key}": [\n'
     empty = True
-    for entry in entries:
-        file.write(separator + _ENCODER.encode(entry))
+    for block in blocks:
+        file.write(separator + ",\n".join(block))
         separator, empty = ",\n", False
     file.write((f'"{key}": []' if empty else "\n]") + ("\n" if last else ",\n"))
+
+
+def _record_texts(figures: Figures) -> list[str]:
+    """JSON of each row of columns: the columns' texts, put into one template."""
+    template = "{" + ", ".join(f"{_ENCODER.encode(key)}: %s" for key in figures) + "}"
+    return [template % row for row in zip(*map(_texts, figures.values()), strict=True)]
+
+
+def _texts(column: Any) -> list[str]:
+    """JSON of each entry of a column: nested columns, matrices, text, or else numbers and truth values."""
+    if isinstance(column, dict):
+        return _record_texts(column)
+    kinds = set(map(type, column))
+    if list in kinds:
+        return [_ENCODER.encode(entry) for entry in column]
+    if str in kinds:
+        known = {entry: _ENCODER.encode(entry) for entry in dict.fromkeys(column)}
+        return [known[entry] for entry in column]
+    return _ENCODER.encode(column)[1:-1].split(", ")
 
 
 def job_record(adjustment: Adjustment) -> Record:

@@ -9,7 +9,7 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.arrays import FloatArray, IntArray
-from adjust.reports.records import Record, scalar_records
+from adjust.reports.records import Record, records, scalar_figures
 
 Order = Literal["worst", "book"]
 
@@ -32,11 +32,11 @@ def listed_observations(adjustment: Adjustment, order: Order, most: int) -> list
     """The records to print: at most `most`, those that fit worst, worst first or as they stand in the book."""
     chosen = worst_first(tested(adjustment), most)
     in_book = np.sort(chosen)
-    records = list(_in_book_order(adjustment, in_book))
+    listed = list(_in_book_order(adjustment, in_book))
     if order == "book":
-        return records
+        return listed
     place = {scalar: position for position, scalar in enumerate(in_book.tolist())}
-    return [records[place[scalar]] for scalar in chosen.tolist()]
+    return [listed[place[scalar]] for scalar in chosen.tolist()]
 
 
 def _in_book_order(adjustment: Adjustment, scalars: IntArray) -> Iterator[Record]:
@@ -44,7 +44,7 @@ def _in_book_order(adjustment: Adjustment, scalars: IntArray) -> Iterator[Record
     for table in adjustment.residuals:
         size = table.residual.size
         here = scalars[(scalars >= first) & (scalars < first + size)]
-        yield from scalar_records(adjustment, table, here - first)
+        yield from records(scalar_figures(adjustment, table, here - first))
         first += size
 
 

@@ -65,7 +65,7 @@ def _facts(adjustment: Adjustment) -> list[tuple[str, str]]:
 
 def _marks(adjustment: Adjustment) -> tuple[tuple[Column, ...], list[list[str]]]:
     """The first marks, by easting and northing where the frame has them, else by latitude and longitude."""
-    records = list(mark_records(adjustment, np.arange(min(GLANCE, len(adjustment.job.marks)))))
+    records = mark_records(adjustment, np.arange(min(GLANCE, len(adjustment.job.marks))))
     columns = (
         Column("mark", text=True),
         *(Column(name, unit) for name, unit in (("easting", "m"), ("northing", "m"))),

@@ -5,10 +5,9 @@ from __future__ import annotations
 import csv
 from collections.abc import Iterable, Iterator
 from pathlib import Path
-from typing import Any
 
 from adjust.adjustment import Adjustment
-from adjust.reports.records import Record, mark_records, observation_records
+from adjust.reports.records import Figures, mark_figures, observation_figures
 
 COVARIANCE_COLUMNS = {
     "cov_ee_mm2": (0, 0),
@@ -26,44 +25,48 @@ VALUES = ("observed", "adjusted", "residual", "sd", "minimal_detectable_bias")
 
 def write_coordinates(adjustment: Adjustment, cautions: Iterable[str], path: Path) -> None:
     """One row for each mark."""
-    _write(path, cautions, (_flat_mark(record) for record in mark_records(adjustment)))
+    _write(path, cautions, map(_flat_marks, mark_figures(adjustment)))
 
 
 def write_residuals(adjustment: Adjustment, cautions: Iterable[str], path: Path) -> None:
     """One row for each component of each observation."""
-    _write(path, cautions, (_flat_observation(record) for record in observation_records(adjustment)))
+    _write(path, cautions, map(_flat_observations, observation_figures(adjustment)))
 
 
-def _flat_mark(record: Record) -> Record:
-    flat: Record = {}
-    for key, value in record.items():
+def _flat_marks(figures: Figures) -> Figures:
+    flat: Figures = {}
+    for key, column in figures.items():
         if key == "covariance_mm2":
-            flat.update({name: value[row][column] for name, (row, column) in COVARIANCE_COLUMNS.items()})
-        elif isinstance(value, dict):
-            flat.update({f"{key}_{name}": figure for name, figure in value.items()})
+            for name, (row, place) in COVARIANCE_COLUMNS.items():
+                flat[name] = [matrix[row][place] for matrix in column]
+        elif isinstance(column, dict):
+            flat |= {f"{key}_{name}": figure for name, figure in column.items()}
         else:
-            flat[key] = value
+            flat[key] = column
     return flat
 
 
-def _flat_observation(record: Record) -> Record:
-    flat: Record = {}
-    for key, value in record.items():
+def _flat_observations(figures: Figures) -> Figures:
+    """Both columns of each value; all rows of a kind share a unit."""
+    nothing = [None] * len(figures["unit"])
+    in_metres = figures["unit"][0] == "m"
+    flat: Figures = {}
+    for key, column in figures.items():
         if key in VALUES:
-            flat[f"{key}_m"] = value if record["unit"] == "m" else None
-            flat[f"{key}_deg"] = value if record["unit"] == "deg" else None
+            flat[f"{key}_m"] = column if in_metres else nothing
+            flat[f"{key}_deg"] = nothing if in_metres else column
         else:
-            flat[key] = value
-    flat["suspect"] = "yes" if record["suspect"] else "no"
+            flat[key] = column
+    flat["suspect"] = ["yes" if suspect else "no" for suspect in figures["suspect"]]
     return flat
 
 
-def _write(path: Path, cautions: Iterable[str], rows: Iterator[dict[str, Any]]) -> None:
+def _write(path: Path, cautions: Iterable[str], chunks: Iterator[Figures]) -> None:
     """Cautions as comment lines ahead of the header row, the way the field book's own tables carry comments."""
     with path.open("w", encoding="utf-8", newline="") as file:
         file.writelines(f"# Caution: {caution}\n" for caution in cautions)
         table = csv.writer(file, lineterminator="\n")
-        for count, row in enumerate(rows):
+        for count, columns in enumerate(chunks):
             if count == 0:
-                table.writerow(row)
-            table.writerow(row.values())
+                table.writerow(columns)
+            table.writerows(zip(*columns.values(), strict=True))
