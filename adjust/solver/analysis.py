@@ -8,11 +8,11 @@ import numpy as np
 import scipy.sparse
 
 from adjust.arrays import FloatArray, IntArray
-from adjust.solver.batches import Batch, form_batches
 from adjust.solver.dissection import dissect
 from adjust.solver.factor import Factor, factorise
-from adjust.solver.pattern import groups_of_rows, meeting_pairs, places_known, tied_to_everything
-from adjust.solver.tree import Tree, grow_tree
+from adjust.solver.layout import Layout, lay_out
+from adjust.solver.pattern import groups_of_rows, meeting_pairs, tied_to_everything
+from adjust.solver.tree import grow_tree
 
 
 @dataclass(frozen=True)
@@ -21,9 +21,7 @@ class Analysis:
 
     indptr: IntArray
     indices: IntArray
-    groups: IntArray
-    tree: Tree
-    batches: tuple[Batch, ...]
+    layout: Layout
 
     def factorise(self, matrix: scipy.sparse.csr_array, right_side: FloatArray) -> Factor:
         """Orthogonal decomposition of (A | b) for an A (rows, columns) of the analysed pattern.
@@ -32,7 +30,7 @@ class Analysis:
         """
         if not (np.array_equal(matrix.indptr, self.indptr) and np.array_equal(matrix.indices, self.indices)):
             raise ValueError("the matrix has another pattern than the one analysed")
-        return factorise(self.tree, self.batches, self.groups, matrix, right_side)
+        return factorise(self.layout, matrix, right_side)
 
 
 def analyse(matrix: scipy.sparse.csr_array, groups: IntArray, positions: FloatArray | None = None) -> Analysis:
@@ -46,6 +44,6 @@ def analyse(matrix: scipy.sparse.csr_array, groups: IntArray, positions: FloatAr
     pairs = meeting_pairs(row, group, count)
     tied = tied_to_everything(row, group, pairs, count)
     sizes = np.bincount(groups, minlength=count)
-    node = dissect(pairs, sizes, places_known(positions, count), tied)
+    node = dissect(pairs, sizes, positions, tied)
     tree = grow_tree(node, groups, row, group, matrix.shape[0])
-    return Analysis(matrix.indptr, matrix.indices, groups, tree, form_batches(tree, matrix))
+    return Analysis(matrix.indptr, matrix.indices, lay_out(tree, matrix))

@@ -18,7 +18,10 @@ SETTLED = 1e-6  # relative change of the Ritz value: a condition number is quote
 
 
 def condition_number(factor: Factor) -> float:
-    """σ_max / σ_min of A with unit column norms: Lanczos on SAᵀAS and on its inverse (Golub & Van Loan 2013, § 10.1)."""
+    """σ_max / σ_min of A with unit column norms: Lanczos on SAᵀAS and on its inverse.
+
+    Golub & Van Loan 2013, *Matrix Computations*, 4th edition, section 10.1.
+    """
     matrix, transposed = factor.matrix, factor.matrix.T.tocsr()
     norms = np.sqrt(np.bincount(matrix.indices, matrix.data**2, matrix.shape[1]))[:, None]
 

@@ -1,6 +1,7 @@
 """Selected covariance: the entries of C = (AᵀA)⁻¹ within the fronts, from the root down, never the whole inverse.
 
-Takahashi, Fagan & Chin 1973 (8th PICA Conference, 63–69); Erisman & Tinney 1975, *Communications of the ACM* 18, 177–179.
+Takahashi, Fagan & Chin 1973, *8th Power Industry Computer Applications Conference*, 63–69; Erisman & Tinney 1975,
+*Communications of the ACM* 18, 177–179.
 """
 
 from __future__ import annotations
@@ -11,9 +12,13 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
+from adjust.solver.layout import Batch, Layout, Run
+from adjust.solver.workers import one_blas_thread, side_by_side
 
 if TYPE_CHECKING:
     from adjust.solver.factor import Factor
+
+WIDE = 24  # elements: a row with more is multiplied by the whole front, one with fewer picks its elements of C
 
 
 @dataclass(frozen=True)
@@ -25,59 +30,90 @@ class SelectedCovariance:
 
 
 def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> SelectedCovariance:
-    """Work down the tree; from each front take what was asked of it. Raises ValueError for a pair no front holds."""
-    tree = factor.tree
-    a, b = tree.place[first], tree.place[second]
-    front = np.minimum(tree.owner[a], tree.owner[b])
-    entries = np.empty(len(front))
-    variances = np.empty(factor.matrix.shape[0])
-    data = factor.matrix.data * factor.scale[factor.matrix.indices]
+    """Work down the tree and take from each front what was asked of it. Raises ValueError for a pair no front holds."""
+    layout = factor.layout
+    wanted = find_pairs(layout, first, second)
+    entries, variances = np.empty(len(first)), np.zeros(factor.matrix.shape[0])
     held: dict[int, FloatArray] = {}
-    position_a, position_b = padded_positions(factor, front, a), padded_positions(factor, front, b)
-    for number in reversed(range(len(factor.batches))):
-        batch, block = factor.batches[number], factor.blocks[number]
-        count, own, border = batch.shape
-        outer = np.zeros((count, border, border))
-        if border:
-            outer = gather_outer(factor, number, held)
-        inverse = np.linalg.inv(block[:, :, :own])
-        reach = inverse @ block[:, :, own:-1]
-        cross = -reach @ outer
-        inside = inverse @ inverse.transpose(0, 2, 1) - cross @ reach.transpose(0, 2, 1)
-        covariance = np.block([[inside, cross], [cross.transpose(0, 2, 1), outer]])
-        held[number] = covariance
-        where = np.full(tree.count, -1)
-        where[batch.fronts] = np.arange(count)
-        mine = np.flatnonzero(where[front] >= 0)
-        entries[mine] = covariance[where[front[mine]], position_a[mine], position_b[mine]]
-        rows = np.zeros((count * batch.rows, own + border + 1))
-        rows.ravel()[batch.targets] = data[batch.entries]
-        rows = rows.reshape(count, batch.rows, -1)[:, :, :-1]
-        leverage = np.einsum("frc,frc->fr", rows @ covariance, rows)
-        variances[batch.source_rows] = leverage.ravel()[batch.target_rows]
+
+    def work(number: int) -> None:
+        covariance = front_covariance(factor, number, held)
+        if layout.from_children[number]:
+            held[number] = covariance
+        pairs = wanted.of_batch(number)
+        entries[wanted.order[pairs]] = covariance[wanted.slot[pairs], wanted.row[pairs], wanted.column[pairs]]
+        for run in layout.batches[number].runs:
+            variances[layout.rows[run.rows]] = row_variances(layout.batches[number], run, factor.elements, covariance)
+
+    with one_blas_thread() as workers:
+        for level in reversed(layout.shapes.levels):
+            side_by_side(work, level, workers)
     return SelectedCovariance(entries * factor.scale[first] * factor.scale[second], variances)
 
 
-def padded_positions(factor: Factor, front: IntArray, column: IntArray) -> IntArray:
-    """Position of new columns in their padded fronts."""
-    tree = factor.tree
-    pads = np.empty(tree.count, dtype=np.int64)
-    for batch in factor.batches:
-        pads[batch.fronts] = batch.own.shape[1]
-    own = np.diff(tree.start)
-    position = tree.position(front, column)
-    return np.where(position < own[front], position, position + (pads - own)[front])
+@dataclass(frozen=True)
+class Pairs:
+    """Pairs of columns sorted by batch (`order`): the front's `slot`, `row` and `column` of each, `cuts` by batch."""
+
+    order: IntArray
+    slot: IntArray
+    row: IntArray
+    column: IntArray
+    cuts: IntArray
+
+    def of_batch(self, number: int) -> slice:
+        """The pairs that are found in one batch."""
+        return slice(int(self.cuts[number]), int(self.cuts[number + 1]))
 
 
-def gather_outer(factor: Factor, number: int, held: dict[int, FloatArray]) -> FloatArray:
-    """Covariance of the border columns (fronts, border, border), from the parents' fronts."""
-    batch = factor.batches[number]
-    count, _, border = batch.shape
-    outer = np.zeros((count, border, border))
-    for above, other in enumerate(factor.batches):
-        for hand in other.handovers:
-            if hand.source == number:
-                covariance = held[above]
-                at = np.where(hand.columns[:, :-1] < covariance.shape[1], hand.columns[:, :-1], 0)
-                outer[hand.members] = covariance[hand.fronts[:, None, None], at[:, :, None], at[:, None, :]]
-    return outer
+def find_pairs(layout: Layout, first: IntArray, second: IntArray) -> Pairs:
+    """The front that holds each pair of columns: that of the column eliminated first."""
+    tree, shapes = layout.tree, layout.shapes
+    front = np.minimum(tree.owner[tree.place[first]], tree.owner[tree.place[second]])
+    order = np.argsort(shapes.home[front], kind="stable")
+    front = front[order]
+    row, column = (tree.position(front, tree.place[end[order]], shapes.own) for end in (first, second))
+    cuts = np.searchsorted(shapes.home[front], np.arange(len(layout.batches) + 1))
+    return Pairs(order, shapes.slot[front], row, column, cuts)
+
+
+def front_covariance(factor: Factor, number: int, held: dict[int, FloatArray]) -> FloatArray:
+    """C (fronts, own + border, own + border) of the columns of each front of a batch.
+
+    With W = R_oo⁻¹ R_ob and the border's C_bb from the parents: C_ob = −W C_bb, C_oo = R_oo⁻¹ R_oo⁻ᵀ − C_ob Wᵀ.
+    """
+    count, own, border = factor.layout.batches[number].shape
+    inverse = factor.inverses[number]
+    inside = inverse @ inverse.transpose(0, 2, 1)
+    if not border:
+        return inside
+    covariance = np.empty((count, own + border, own + border))
+    outer = covariance[:, own:, own:]
+    for hand in factor.layout.to_parents[number]:
+        parents = held[hand.target]
+        size = parents.shape[1]
+        at = np.minimum(hand.columns[:, :-1], size - 1)
+        outer[hand.members] = parents.ravel()[((hand.into * size)[:, None] + at)[:, :, None] * size + at[:, None, :]]
+    reach = inverse @ factor.blocks[number][:, :, own:-1]
+    cross = reach @ outer
+    covariance[:, :own, :own] = inside + cross @ reach.transpose(0, 2, 1)
+    covariance[:, :own, own:] = -cross
+    covariance[:, own:, :own] = -cross.transpose(0, 2, 1)
+    return covariance
+
+
+def row_variances(batch: Batch, run: Run, elements: FloatArray, covariance: FloatArray) -> FloatArray:
+    """a C aᵀ for the rows of one run of a batch."""
+    count, size, _ = covariance.shape
+    first = batch.elements_here.start
+    targets = batch.targets[run.elements.start - first : run.elements.stop - first].reshape(-1, run.width)
+    row, column = np.divmod(targets, size + 1)
+    values = elements[run.elements].reshape(-1, run.width)
+    if run.width > WIDE:
+        dense = np.zeros((count * batch.rows, size))
+        dense[row, column] = values
+        dense = dense.reshape(count, batch.rows, size)
+        return np.asarray(np.einsum("frc,frc->fr", dense @ covariance, dense).ravel()[row[:, 0]])
+    base = row[:, :1] // batch.rows * size
+    picked = covariance.ravel()[((base + column) * size)[:, :, None] + column[:, None, :]]
+    return np.asarray(np.einsum("ri,rij,rj->r", values, picked, values))

@@ -1,7 +1,7 @@
 """Nested dissection: cut the groups in two by a small separator, then each part, until the parts are small.
 
 George 1973, *SIAM Journal on Numerical Analysis* 10, 345–363; all parts of a level are cut at once. Where every group
-of a part has a position the cut is a straight line; elsewhere it runs between breadth-first levels of the graph.
+of a part has a position the cut is a straight line; elsewhere it follows breadth-first search through the graph.
 """
 
 from __future__ import annotations
@@ -9,144 +9,164 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+import scipy.sparse
 
 from adjust.arrays import BoolArray, FloatArray, IntArray
 
 LEAF_COLUMNS = 40  # parts of at most this many columns are not cut: measured, see docs/performance.md
-IMBALANCE_PRICE = 0.5  # separator columns that a wholly one-sided cut must save, as a share of the smallest separator
+IMBALANCE_PRICE = 0.5  # × √columns: what a wholly one-sided cut would have to save in separator columns
 MOST_LOPSIDED = 0.5  # a cut leaves at least a quarter on either side, which bounds the depth of the tree
 SEPARATOR_SHARE = 0.6  # of a part: a separator larger than this gains nothing over leaving the part whole
 
 
 @dataclass(frozen=True)
-class Cut:
-    """The best cut of each part along one ordering of its groups: where it is, and what it costs."""
+class Level:
+    """The open parts of one level: `members` numbered by part, their `ends` (pairs, 2) that meet, their `weight`."""
 
-    place: IntArray
-    first: IntArray
-    ahead: IntArray
-    back: IntArray
-    at: IntArray
-    low_side: BoolArray
-    cost: FloatArray
+    members: IntArray
+    part: IntArray
+    parts: int
+    ends: IntArray
+    weight: IntArray
 
 
-def dissect(pairs: IntArray, sizes: IntArray, positions: FloatArray, tied: BoolArray) -> IntArray:
+@dataclass(frozen=True)
+class Cuts:
+    """The best cut of each part along one ordering: who is above it, who is on its separator, and its price."""
+
+    above: BoolArray
+    separator: BoolArray
+    price: FloatArray
+
+
+def dissect(pairs: IntArray, sizes: IntArray, positions: FloatArray | None, tied: BoolArray) -> IntArray:
     """Node of the dissection tree of each group: 1 is the root, node i is cut into 2 i and 2 i + 1; 0 for empty groups.
 
     `pairs` (pairs, 2) are groups that share a row, `sizes` (groups,) their columns, `positions` (groups, 2) may be NaN,
     `tied` groups are put into the root. No pair ever joins two nodes of which neither is an ancestor of the other.
     """
     node = np.where(sizes > 0, 1, 0)
-    open_ = (sizes > 0) & ~tied
-    pairs = pairs[open_[pairs].all(axis=1)]
+    places = ranks(positions, len(sizes))
+    moving = np.flatnonzero((sizes > 0) & ~tied)
     while True:
-        open_ &= in_large_part(node, open_, sizes)
-        members = np.flatnonzero(open_)
-        if not len(members):
+        level = open_level(node, moving, pairs, sizes)
+        if not len(level.members):
             return node
-        pairs = pairs[open_[pairs].all(axis=1) & (node[pairs[:, 0]] == node[pairs[:, 1]])]
-        settle_level(node, open_, members, pairs, sizes, positions)
+        pairs = level.members[level.ends]
+        moving = cut_level(node, level, places[:, level.members])
 
 
-def in_large_part(node: IntArray, open_: BoolArray, sizes: IntArray) -> BoolArray:
-    """Groups whose part is still to be cut."""
-    _, part = np.unique(node, return_inverse=True)
-    return np.bincount(part, np.where(open_, sizes, 0))[part] > LEAF_COLUMNS
+def ranks(positions: FloatArray | None, count: int) -> IntArray:
+    """Order (2, count) of the groups from west to east and from south to north, −1 where the position is unknown."""
+    places = np.full((2, count), -1)
+    if positions is not None:
+        known = np.flatnonzero(~np.isnan(positions).any(axis=1))
+        for axis in range(2):
+            places[axis, known[np.argsort(positions[known, axis], kind="stable")]] = np.arange(len(known))
+    return places
 
 
-def settle_level(
-    node: IntArray, open_: BoolArray, members: IntArray, pairs: IntArray, sizes: IntArray, positions: FloatArray
-) -> None:
-    """Cut every open part once: separators and parts not worth cutting are settled, the others move to child nodes."""
-    _, part = np.unique(node[members], return_inverse=True)
-    local = np.full(len(node), -1)
-    local[members] = np.arange(len(members))
-    ends = local[pairs]
-    weight = sizes[members]
-    cuts = [best_cuts(key, part, ends, weight) for key in orderings(positions[members], part, ends)]
-    cost = np.stack([cut.cost for cut in cuts])
-    best = np.argmin(cost, axis=0)
-    separator, high = (np.zeros(len(members), dtype=bool) for _ in range(2))
-    for number, cut in enumerate(cuts):
-        mine = best[part] == number
-        above = cut.place >= cut.at[part]
-        crossing = np.where(above, cut.back < cut.at[part], cut.ahead >= cut.at[part])
-        separator |= mine & crossing & (above != cut.low_side[part])
-        high |= mine & above
-    whole = np.bincount(part, weight)
-    settled = ~(np.bincount(part, weight * separator) <= SEPARATOR_SHARE * whole)[part]
-    settled |= np.isinf(cost.min(axis=0))[part]
-    moving = ~(separator | settled)
-    node[members[moving]] = 2 * node[members[moving]] + high[moving]
-    open_[members[~moving]] = False
+def open_level(node: IntArray, moving: IntArray, pairs: IntArray, sizes: IntArray) -> Level:
+    """The parts still to be cut, and the pairs within them."""
+    order = moving[np.argsort(node[moving], kind="stable")]
+    part = np.cumsum(np.diff(node[order], prepend=0) > 0) - 1
+    large = np.bincount(part, sizes[order]) > LEAF_COLUMNS
+    kept = large[part]
+    members = order[kept]
+    number = np.full(len(node), -1)
+    number[members] = np.arange(len(members))
+    ends = number[pairs]
+    inside = (ends.min(axis=1, initial=0) >= 0) & (node[pairs[:, 0]] == node[pairs[:, 1]])
+    part = (np.cumsum(large) - 1)[part[kept]]
+    return Level(members, part, int(np.count_nonzero(large)), ends[inside], sizes[members])
 
 
-def orderings(positions: FloatArray, part: IntArray, ends: IntArray) -> list[FloatArray]:
-    """Keys (members,) along which the parts may be cut: east and north, or breadth-first order where those are unknown."""
-    unknown = np.isnan(positions).any(axis=1)
+def cut_level(node: IntArray, level: Level, places: IntArray) -> IntArray:
+    """Cut every part once. Separators and parts not worth cutting stay; returns the groups moved on to child nodes."""
+    cuts = [best_cuts(level, places) for places in orderings(level, places)]
+    best = np.argmin([cut.price for cut in cuts], axis=0)[level.part]
+    above = np.choose(best, [cut.above for cut in cuts])
+    separator = np.choose(best, [cut.separator for cut in cuts])
+    price = np.min([cut.price for cut in cuts], axis=0)
+    total = np.bincount(level.part, level.weight)
+    worth = (np.bincount(level.part, level.weight * separator) <= SEPARATOR_SHARE * total) & np.isfinite(price)
+    moves = ~separator & worth[level.part]
+    moved = level.members[moves]
+    node[moved] = 2 * node[moved] + above[moves]
+    return np.asarray(moved)
+
+
+def orderings(level: Level, places: IntArray) -> list[IntArray]:
+    """Ways (members,) to line up each part for cutting: east, north, or breadth first where a place is unknown."""
+    unknown = places[0] < 0
     if not unknown.any():
-        return [positions[:, 0], positions[:, 1]]
-    drawn = np.bincount(part, unknown)[part] == 0
-    if not drawn.any():
-        return [breadth_first_places(part, ends)]
-    walked = breadth_first_places(part, ends)
-    return [np.where(drawn, positions[:, axis], walked) for axis in range(2)]
+        return [places[0], places[1]]
+    drawn = (np.bincount(level.part, unknown) == 0)[level.part]
+    walked = breadth_first_places(level)
+    return [np.where(drawn, places[axis], walked) for axis in range(2)] if drawn.any() else [walked]
 
 
-def best_cuts(key: FloatArray, part: IntArray, ends: IntArray, weight: IntArray) -> Cut:
-    """The cheapest cut of every part along `key`, from the separator sizes of all cuts at once.
+def best_cuts(level: Level, places: IntArray) -> Cuts:
+    """The cheapest cut of every part along one ordering, from the separator sizes of all cuts at once.
 
-    A group below a cut is on its low separator when a neighbour lies at or above the cut, so it counts for the cuts
+    A group below a cut is on its lower separator when a neighbour lies at or above the cut, so it counts for the cuts
     from its own place to its farthest neighbour's: a running sum over those intervals gives the size for every cut.
     """
-    count = len(part)
-    order = np.lexsort((key, part))
+    count, part = len(level.members), level.part
+    order = np.argsort(part * (places.max() + 1) + places)
     place = np.empty(count, dtype=np.int64)
     place[order] = np.arange(count)
+    ahead, back = farthest_neighbours(place, level.ends)
+    low, high = running_weight(place, ahead, level.weight), running_weight(back, place, level.weight)
+    first = np.searchsorted(part, np.arange(level.parts))
+    below = np.concatenate([[0], np.cumsum(level.weight[order])])
+    total = np.diff(below[np.append(first, count)])[part]
+    lopsided = np.abs(2.0 * (below[:-1] - below[first][part]) / total - 1.0)
+    price = np.minimum(low, high) + IMBALANCE_PRICE * np.sqrt(total) * lopsided**2
+    price[lopsided > MOST_LOPSIDED] = np.inf
+    least = np.minimum.reduceat(price, first)
+    hits = np.flatnonzero(price == least[part])
+    cut = hits[np.searchsorted(part[hits], np.arange(level.parts))]
+    above = place >= cut[part]
+    crossing = np.where(above, back < cut[part], ahead >= cut[part])
+    return Cuts(above, crossing & (above != (low <= high)[cut][part]), least)
+
+
+def farthest_neighbours(place: IntArray, ends: IntArray) -> tuple[IntArray, IntArray]:
+    """Highest and lowest place among each member and its neighbours."""
     ahead, back = place.copy(), place.copy()
-    here, there = place[ends[:, 0]], place[ends[:, 1]]
-    np.maximum.at(ahead, ends[:, 0], there)
-    np.maximum.at(ahead, ends[:, 1], here)
-    np.minimum.at(back, ends[:, 0], there)
-    np.minimum.at(back, ends[:, 1], here)
-    low = running_weight(place, ahead, weight)
-    high = running_weight(back, place, weight)
-    first = np.flatnonzero(np.diff(part[order], prepend=-1))
-    below = np.concatenate([[0], np.cumsum(weight[order])])
-    total = np.diff(below[np.append(first, count)])
-    lopsided = np.abs(2.0 * (below[:-1] - below[first][part[order]]) / total[part[order]] - 1.0)
-    smaller = np.minimum(low, high)
-    least = np.sqrt(total)[part[order]]
-    price = np.where(lopsided > MOST_LOPSIDED, np.inf, smaller + IMBALANCE_PRICE * least * lopsided**2)
-    ranked = np.lexsort((price, part[order]))[first]
-    return Cut(place, first, ahead, back, ranked, low[ranked] <= high[ranked], price[ranked])
+    for here, there in (ends.T, ends.T[::-1]):
+        np.maximum.at(ahead, here, place[there])
+        np.minimum.at(back, here, place[there])
+    return ahead, back
 
 
 def running_weight(start: IntArray, end: IntArray, weight: IntArray) -> IntArray:
     """For every cut c, the weight of the members with start < c ≤ end."""
-    steps = np.bincount(start + 1, weight, len(start) + 1) - np.bincount(end + 1, weight, len(start) + 1)
-    return np.cumsum(steps)[:-1].astype(np.int64)
+    count = len(start)
+    steps = np.bincount(start + 1, weight, count + 2) - np.bincount(end + 1, weight, count + 2)
+    return np.cumsum(steps[:count]).astype(np.int64)
 
 
-def breadth_first_places(part: IntArray, ends: IntArray) -> FloatArray:
-    """Order of the members, component by component, by breadth-first search from an end of each component."""
-    import scipy.sparse
+def breadth_first_places(level: Level) -> IntArray:
+    """Order of the members by breadth-first search from an end of each component, one component after the other."""
     from scipy.sparse.csgraph import breadth_first_order, connected_components
 
-    count = len(part)
-    graph = scipy.sparse.csr_array((np.ones(len(ends)), (ends[:, 0], ends[:, 1])), shape=(count, count))
-    pieces, piece = connected_components(graph, directed=False)
+    count = len(level.members)
+    pieces, piece = connected_components(joined(level.ends, count), directed=False)
     start = np.full(pieces, count)
     np.minimum.at(start, piece, np.arange(count))
-    for _ in range(2):  # the second search starts from the farthest member of the first
-        sources = np.column_stack([np.full(pieces, count), start])
-        joined = np.concatenate([ends, sources])
-        whole = scipy.sparse.csr_array(
-            (np.ones(len(joined)), (joined[:, 0], joined[:, 1])), shape=(count + 1, count + 1)
-        )
-        order = breadth_first_order(whole, count, directed=False, return_predecessors=False)[1:]
+    for _ in range(2):  # the second search starts from the last member that the first one reached
+        everything = np.concatenate([level.ends, np.column_stack([start, np.full(pieces, count)])])
+        order = breadth_first_order(joined(everything, count + 1), count, directed=False, return_predecessors=False)[1:]
         start[piece[order]] = order
-    place = np.empty(count)
+    place = np.empty(count, dtype=np.int64)
     place[order] = np.arange(count)
-    return piece * float(count) + place
+    rank = np.empty(count, dtype=np.int64)
+    rank[np.argsort(piece * np.int64(count) + place)] = np.arange(count)
+    return rank
+
+
+def joined(ends: IntArray, count: int) -> scipy.sparse.csr_array:
+    """Graph with the given ends of its edges."""
+    return scipy.sparse.csr_array((np.ones(len(ends)), (ends[:, 0], ends[:, 1])), shape=(count, count))

@@ -32,10 +32,10 @@ def second_opinion(factor: Factor) -> SecondOpinion:
     matrix, transposed = factor.matrix, factor.matrix.T.tocsr()
     operator = LinearOperator(
         matrix.shape,
-        matvec=lambda y: matrix @ factor.apply_inverse(y),
-        rmatvec=lambda v: factor.apply_inverse_transposed(transposed @ v),
+        matvec=lambda y: matrix @ factor.apply_inverse(y.reshape(-1, 1))[:, 0],
+        rmatvec=lambda v: factor.apply_inverse_transposed((transposed @ v).reshape(-1, 1))[:, 0],
     )
     found = lsqr(operator, factor.right_side, atol=TOLERANCE, btol=TOLERANCE, iter_lim=MOST_ITERATIONS)
-    solution = factor.apply_inverse(found[0])
+    solution = factor.apply_inverse(found[0][:, None])[:, 0]
     gap = float(np.max(np.abs(solution - factor.solution), initial=0.0))
     return SecondOpinion(solution, gap, int(found[2]))

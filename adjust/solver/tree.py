@@ -1,12 +1,14 @@
-"""The elimination tree of fronts: what each owns, what it borders on, and where everything goes in its dense block."""
+"""The elimination tree of fronts: which columns each one owns, and which it borders on."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
 from adjust.arrays import IntArray
+from adjust.solver.pattern import distinct
 
 
 @dataclass(frozen=True)
@@ -14,7 +16,8 @@ class Tree:
     """Fronts numbered children first. Columns are renumbered front by front: `order` old numbers, `place` new ones.
 
     Front f owns the new columns `start[f]` to `start[f + 1]`; its border columns are `border[edge[f]:edge[f + 1]]`, in
-    rising order, all owned by its ancestors. `front_of_row` is where each row of the matrix is first used.
+    rising order, all owned by its ancestors. `owner` is the front of each new column, `parent` is −1 at a root,
+    `front_of_row` is where each row of the matrix is first used.
     """
 
     parent: IntArray
@@ -36,40 +39,71 @@ class Tree:
         """Number of columns."""
         return len(self.order)
 
-    def position(self, front: IntArray, column: IntArray) -> IntArray:
-        """Position of new `column` within `front`: own columns first, then border columns."""
-        own = column - self.start[front]
-        size = np.diff(self.start)[front]
-        inside = (own >= 0) & (own < size)
-        code = np.repeat(np.arange(self.count), np.diff(self.edge)) * self.columns + self.border
-        outside = np.searchsorted(code, front * self.columns + column) - self.edge[front]
-        return np.where(inside, own, size + outside)
+    @cached_property
+    def own_sizes(self) -> IntArray:
+        """Own columns of each front."""
+        return np.diff(self.start)
+
+    @cached_property
+    def border_sizes(self) -> IntArray:
+        """Border columns of each front."""
+        return np.diff(self.edge)
+
+    @cached_property
+    def front_of_border(self) -> IntArray:
+        """Front of each element of `border`."""
+        return np.repeat(np.arange(self.count), self.border_sizes)
+
+    @cached_property
+    def border_codes(self) -> IntArray:
+        """Front and column of each element of `border` as one rising number, for look-up."""
+        return self.front_of_border * self.columns + self.border
+
+    def position(self, front: IntArray, column: IntArray, own_sizes: IntArray) -> IntArray:
+        """Position of new `column` in its `front`: own columns (padded to `own_sizes`) first, then border columns.
+
+        Raises ValueError where the front does not hold the column.
+        """
+        position = column - self.start[front]
+        outside = np.flatnonzero(self.owner[column] != front)
+        front, column = front[outside], column[outside]
+        code = front * self.columns + column
+        found = np.searchsorted(self.border_codes, code)
+        if not np.array_equal(self.border_codes.take(found, mode="clip"), code):
+            raise ValueError("two columns that share neither a row nor a group")
+        position[outside] = found - self.edge[front] + own_sizes[front]
+        return position
 
 
 def grow_tree(node: IntArray, groups: IntArray, row: IntArray, group: IntArray, rows: int) -> Tree:
     """Fronts from the dissection node of each group, the group of each column, and the (row, group) incidence."""
-    front_of_group, parent = number_fronts(node)
-    order = np.lexsort((groups, front_of_group[groups]))
+    front_of_group, parent, depth = number_fronts(node)
+    turn = np.empty(len(node), dtype=np.int64)
+    turn[np.argsort(front_of_group, kind="stable")] = np.arange(len(node))
+    order = np.argsort(turn[groups], kind="stable")
     place = np.empty_like(order)
     place[order] = np.arange(len(order))
-    owner = front_of_group[groups[order]]
-    start = np.searchsorted(owner, np.arange(len(parent) + 1))
-    front_of_row = np.full(rows, len(parent) - 1)  # where rows without columns go, as between two held marks
+    front_of_turn = np.sort(front_of_group)
+    owner = front_of_turn[turn[groups[order]]]
+    front_of_row = np.full(rows, len(parent))
     np.minimum.at(front_of_row, row, front_of_group[group])
-    edge, border_group = borders(parent, front_of_group, front_of_row[row], group)
-    size = np.bincount(groups, minlength=len(node))
-    first = np.full(len(node), len(order))
-    np.minimum.at(first, groups[order], np.arange(len(order)))
-    border, edge = spread(first[border_group], size[border_group], edge)
+    incidence = front_of_row[row] * len(node) + turn[group]
+    code = borders(distinct(incidence), parent, depth, front_of_turn)
+    front = code // len(node)
+    size = np.bincount(turn[groups], minlength=len(node))
+    border, offsets = spread(np.cumsum(size) - size, size, code - front * len(node))
+    edge = offsets[np.searchsorted(front, np.arange(len(parent) + 1))]
+    start = np.searchsorted(owner, np.arange(len(parent) + 1))
     return Tree(parent, start, order, place, owner, edge, border, front_of_row)
 
 
-def number_fronts(node: IntArray) -> tuple[IntArray, IntArray]:
-    """Front of each group (−1 for empty ones) and parent of each front (−1 for roots), the deepest fronts first."""
-    used = np.unique(node[node > 0])
+def number_fronts(node: IntArray) -> tuple[IntArray, IntArray, IntArray]:
+    """Front of each group (−1 for empty ones), parent (−1 for roots) and depth of each front, the deepest first."""
+    used = distinct(node[node > 0])
     depth = np.frexp(used.astype(float))[1]
+    order = np.argsort(-depth, kind="stable")
     rank = np.empty(len(used), dtype=np.int64)
-    rank[np.lexsort((used, -depth))] = np.arange(len(used))
+    rank[order] = np.arange(len(used))
     above = used // 2
     while True:
         at = np.minimum(np.searchsorted(used, above), len(used) - 1)
@@ -77,32 +111,33 @@ def number_fronts(node: IntArray) -> tuple[IntArray, IntArray]:
         if not missing.any():
             break
         above = np.where(missing, above // 2, above)
-    parent = np.empty_like(rank)
-    parent[rank] = np.where(above > 0, rank[at], -1)
+    parent = np.where(above > 0, rank[at], -1)[order]
     front = np.full(len(node), -1)
     front[node > 0] = rank[np.searchsorted(used, node[node > 0])]
-    return front, parent
+    return front, parent, depth[order].astype(np.int64)
 
 
-def borders(parent: IntArray, front_of_group: IntArray, front: IntArray, group: IntArray) -> tuple[IntArray, IntArray]:
-    """Groups that border on each front, front by front (offsets, groups): those of its rows and of its children."""
-    count = len(front_of_group)
-    new = np.unique(front * count + group)
-    found = []
-    while len(new):
-        front, group = new // count, new % count
-        outside = front_of_group[group] > front
-        front, group = front[outside], group[outside]
-        found.append(front * count + group)
-        new = np.setdiff1d(np.unique(parent[front] * count + group), np.concatenate(found), assume_unique=True)
-    code = np.unique(np.concatenate(found)) if found else np.empty(0, dtype=np.int64)
-    front, group = code // count, code % count
-    sorted_ = np.lexsort((group, front_of_group[group], front))
-    return np.searchsorted(front, np.arange(len(parent) + 1)), group[sorted_]
+def borders(incidence: IntArray, parent: IntArray, depth: IntArray, front_of_turn: IntArray) -> IntArray:
+    """Border groups of all fronts as rising codes front × groups + turn: from its rows and its children's borders."""
+    count = len(front_of_turn)
+    own_depth = depth[incidence // count]
+    waiting = {level: [incidence[own_depth == level]] for level in range(int(depth.max(initial=0)) + 1)}
+    found = [np.empty(0, dtype=np.int64)]
+    for level in reversed(range(len(waiting))):
+        code = distinct(np.concatenate(waiting[level]))
+        front = code // count
+        turn = code - front * count
+        outside = front_of_turn[turn] > front
+        found.append(code[outside])
+        above = parent[front[outside]]
+        code = above * count + turn[outside]
+        for next_level in range(level):
+            waiting[next_level].append(code[depth[above] == next_level])
+    return np.sort(np.concatenate(found))
 
 
-def spread(first: IntArray, size: IntArray, edge: IntArray) -> tuple[IntArray, IntArray]:
-    """Columns of runs of groups, and the offsets of the runs counted in columns."""
-    end = np.cumsum(size)
-    columns = np.repeat(first - (end - size), size) + np.arange(int(end[-1]) if len(end) else 0)
-    return columns, np.concatenate([[0], end])[edge]
+def spread(first: IntArray, size: IntArray, runs: IntArray) -> tuple[IntArray, IntArray]:
+    """The members of runs with given first members and sizes, end to end, and where each run starts among them."""
+    length = size[runs]
+    offsets = np.concatenate([[0], np.cumsum(length)])
+    return np.repeat(first[runs] - offsets[:-1], length) + np.arange(offsets[-1]), offsets
