@@ -60,12 +60,15 @@ def _adjust_and_write(job: Path, folder: Path, order: Literal["worst", "book"]) 
     with ProgressLine(sys.stderr) as progress:
         progress("reading the field book", 0.0)
         from adjust import adjust, read_job
+        from adjust.network.closures import check_job
         from adjust.reports import write_reports
 
         field_book = read_job(job)
+        progress("closing loops", READ)
+        check = check_job(field_book)
         adjustment = adjust(field_book, lambda stage, done: progress(stage, READ + (ADJUSTED - READ) * done))
         progress("writing the results", ADJUSTED)
-        write_reports(adjustment, folder, order)
+        write_reports(adjustment, folder, order, check)
     return adjustment
 
 

@@ -27,6 +27,8 @@ from adjust.units import format_dms
 
 LISTED = 100
 """Closures of one check in the listing, the worst; check.json has them all."""
+REMARKS = 10
+"""Remarks in the brief section of an adjustment's listing; check.txt has them all."""
 TRAVERSES = 20
 """Traverses whose compass-rule coordinates are listed, in the order found; check.json has them all."""
 STANDING_CAUTION = (
@@ -56,6 +58,17 @@ def check_listing(check: Check) -> list[str]:
         *_tolerances(check),
         *_sentences("Notes", check.notes),
         *_sentences("Caution", (STANDING_CAUTION,)),
+    ]
+
+
+def check_section(check: Check) -> list[str]:
+    """The check in brief, for the listing of the adjustment: the verdict, how it went, and what cannot be right."""
+    beyond = [remark.text for remark in check.remarks if remark.exceeds][:REMARKS]
+    return [
+        *title("Checks before the adjustment"),
+        *paragraph(check_verdict(check)),
+        *[line for text in beyond for line in paragraph(text)],
+        *(["", *_summary_table(check)] if check.closures else []),
     ]
 
 
@@ -96,8 +109,10 @@ def _remarks(check: Check) -> list[str]:
 
 def summary(check: Check) -> list[str]:
     """How many closures there are of each kind, how many exceed, and the largest share of the allowance."""
-    if not check.closures:
-        return []
+    return [*title("Closures"), *_summary_table(check)] if check.closures else []
+
+
+def _summary_table(check: Check) -> list[str]:
     columns = (Column("Closures", text=True), Column("Number"), Column("Exceed"), Column("Largest", "of allowed"))
     rows = [
         (
@@ -108,7 +123,7 @@ def summary(check: Check) -> list[str]:
         )
         for judged in check.closures
     ]
-    return [*title("Closures"), *table(columns, rows)]
+    return table(columns, rows)
 
 
 def _closures(check: Check, judged: Judged) -> list[str]:

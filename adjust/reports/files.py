@@ -5,6 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 
 from adjust.adjustment import Adjustment
+from adjust.network.closures.check import Check
 from adjust.reports.listing import write_listing
 from adjust.reports.publish import Writer, publish
 from adjust.reports.results import write_results
@@ -15,16 +16,17 @@ from adjust.reports.verdict import cautions
 REPORTS = ("results.json", "coordinates.csv", "residuals.csv", "listing.txt")
 
 
-def write_reports(adjustment: Adjustment, folder: Path, order: Order = "worst") -> None:
+def write_reports(adjustment: Adjustment, folder: Path, order: Order = "worst", check: Check | None = None) -> None:
     """Write all `REPORTS` into `folder`, or none: earlier files stay as they were when anything fails.
 
-    `order` is that of the listing's observations. Raises OutputError where the folder cannot be written.
+    `order` is that of the listing's observations; `check` is what was said of the job before it was adjusted. Raises
+    OutputError where the folder cannot be written.
     """
     warned = cautions(adjustment)
     writers: dict[str, Writer] = {
         "results.json": lambda path: write_results(adjustment, warned, path),
         "coordinates.csv": lambda path: write_coordinates(adjustment, warned, path),
         "residuals.csv": lambda path: write_residuals(adjustment, warned, path),
-        "listing.txt": lambda path: write_listing(adjustment, order, path),
+        "listing.txt": lambda path: write_listing(adjustment, order, path, check),
     }
     publish(folder, writers)

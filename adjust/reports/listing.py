@@ -8,8 +8,10 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame, PlaneFrame
+from adjust.network.closures.check import Check
 from adjust.quality import critical_tau, critical_w
 from adjust.reports import listing_marks, listing_observations
+from adjust.reports.check_listing import check_section
 from adjust.reports.layout import facts, paragraph, title
 from adjust.reports.reduction_text import listed_reduction
 from adjust.reports.selection import Order
@@ -27,17 +29,20 @@ STANDING_CAUTION = (
 """Ends every listing, whatever the figures."""
 
 
-def write_listing(adjustment: Adjustment, order: Order, path: Path) -> None:
-    """Write the listing; `order` is that of the observations."""
-    path.write_text("\n".join(listing(adjustment, order)) + "\n", encoding="utf-8", newline="\n")
+def write_listing(adjustment: Adjustment, order: Order, path: Path, check: Check | None = None) -> None:
+    """Write the listing; `order` is that of the observations, `check` what was said before the adjustment."""
+    path.write_text("\n".join(listing(adjustment, order, check=check)) + "\n", encoding="utf-8", newline="\n")
 
 
-def listing(adjustment: Adjustment, order: Order = "worst", most: int = LISTED) -> list[str]:
+def listing(
+    adjustment: Adjustment, order: Order = "worst", most: int = LISTED, check: Check | None = None
+) -> list[str]:
     """The lines of the listing; no table has more than `most` rows."""
     return [
         *_opening(adjustment),
         *title("Job"),
         *facts(job_facts(adjustment)),
+        *(check_section(check) if check is not None else ()),
         *listing_marks.control(adjustment, most),
         *listing_marks.coordinates(adjustment, most),
         *listing_observations.suspects(adjustment, most),

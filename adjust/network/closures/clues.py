@@ -12,6 +12,8 @@ from adjust.network.closures.closures import Judged
 from adjust.network.closures.linear import Traverse
 from adjust.network.closures.observed import Observed
 
+GROSS = 4.0
+"""Sds of an angular misclosure beyond which an angle is wrong rather than a length: once in 16 000 by chance."""
 MOST_CLUES = 100
 """Failing closures, the worst of each check, that are looked into: a screen or two of text."""
 TELLING = 20.0
@@ -122,7 +124,7 @@ def _on_the_way(observed: Observed, traverse: Traverse, allowed: float, check: s
     """Where a traverse that does not close is likely to be wrong, if it is wrong in one place."""
     names = observed.job.marks.names
     sites = [names[mark] for mark in traverse.marks]
-    if abs(traverse.angular) * traverse.length / 2.0 > allowed:
+    if abs(traverse.angular) > GROSS * traverse.angular_sd:
         corners = doubtful_angles(traverse, allowed)
         if 0 < len(corners) < len(traverse.steps):
             text = f"one wrong angle, at {' or '.join(sites[corner] for corner in corners)}, would explain it"

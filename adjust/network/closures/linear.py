@@ -28,10 +28,10 @@ class Traverse:
     """A traverse computed; metres.
 
     `marks` as walked; `steps` (legs, 2) east and north along its azimuths, with the angular misclosure (`angular`,
-    radians) shared out, or `unbalanced`; `arrival` (2,) is what they ought to sum to. `misclosure` (2,) is their sum
-    minus that. `leg_rows` are the observations of each leg's length, `corner_rows` those of the angle at the start of
-    a leg (the last corner at the end). `positions` (legs − 1, 2 or 3) are the frame's coordinates of the marks on the
-    way by the compass rule, where the traverse sets out from control; None elsewhere.
+    radians, with its sd) shared out, or `unbalanced`; `arrival` (2,) is what they ought to sum to. `misclosure` (2,)
+    is their sum minus that. `leg_rows` are the observations of each leg's length, `corner_rows` those of the angle at
+    the start of a leg (the last corner at the end). `positions` (legs − 1, 2 or 3) are the frame's coordinates of the
+    marks on the way by the compass rule, where the traverse sets out from control; None elsewhere.
     """
 
     marks: list[int]
@@ -40,6 +40,7 @@ class Traverse:
     arrival: FloatArray
     length: float
     angular: float
+    angular_sd: float
     sd: float
     leg_rows: list[list[int]]
     corner_rows: dict[int, list[int]]
@@ -101,7 +102,8 @@ class Traversing:
         along = arrival if marks[0] != marks[-1] and not course.oriented else None
         leg_rows = [self.lines.lengths.rows[place].tolist() for place in line.tolist()]
         corner_rows = self._corner_rows(course)
-        sd = self._precision(course, corner_rows, line, unbalanced, along)
+        angles = np.array([np.sum(self.observed.sd[rows] ** 2) for rows in corner_rows])
+        sd = self._precision(course, angles, line, unbalanced, along)
         positions = self._positions(marks, steps, reference, length) if self._controlled(marks) else None
         return Traverse(
             marks,
@@ -110,6 +112,7 @@ class Traversing:
             arrival,
             float(length.sum()),
             course.angular,
+            float(np.sqrt(angles.sum())),
             sd,
             leg_rows,
             {corner.first: rows for corner, rows in zip(course.corners, corner_rows, strict=True)},
@@ -150,14 +153,9 @@ class Traversing:
         return [stations.readings.rows[way].tolist() for way in ways]
 
     def _precision(
-        self,
-        course: Course,
-        corner_rows: list[list[int]],
-        line: IntArray,
-        steps: FloatArray,
-        along: FloatArray | None,
+        self, course: Course, angles: FloatArray, line: IntArray, steps: FloatArray, along: FloatArray | None
     ) -> float:
-        """The sd of a traverse's linear misclosure, metres.
+        """The sd of a traverse's linear misclosure, metres, from the variances of its corners' `angles` (corners,).
 
         Each length moves the end along its leg, each angle across the line from its mark to the end; where the angular
         misclosure is shared out, an angle's error moves the end by its own lever less the mean of all levers. A
@@ -170,7 +168,6 @@ class Traversing:
         moves = np.vstack([steps / np.hypot(*steps.T)[:, None], levers @ QUARTER_TURN])
         if along is not None:
             moves = moves @ (along / np.hypot(*along))[:, None]
-        angles = [float(np.sum(self.observed.sd[rows] ** 2)) for rows in corner_rows]
         variances = np.concatenate([self.variance[line], angles])
         return float(np.sqrt(variances @ np.sum(moves**2, axis=1)))
 
