@@ -5,12 +5,15 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
 
 from adjust.job import Statistics
 from adjust.reports import layout
 from adjust.reports.layout import Column, shortened, table
 from adjust.reports.listing import STANDING_CAUTION, listing
 from adjust.reports.records import mark_figures, observation_figures, records
+from adjust.reports.selection import worst_first
 from adjust.reports.verdict import cautions, digits_left, verdict
 from tests.adjusted_networks import JOBS, adjusted
 
@@ -129,6 +132,12 @@ def test_thinned_book_order_keeps_the_worst():
     book = observation_lines(listing(adjustment, "book", most=7))
     assert sorted(worst) == sorted(book)
     assert worst != book
+
+
+@given(st.lists(st.sampled_from([0.0, 1.0, 2.5, np.nan]) | st.floats(0, 10), max_size=40), st.integers(1, 50))
+def test_worst_first_is_a_stable_sort_cut_off(figures, most):
+    whole = sorted(range(len(figures)), key=lambda place: -np.nan_to_num(figures[place], nan=-np.inf))
+    assert worst_first(np.array(figures), most).tolist() == whole[:most]
 
 
 def test_posterior_basis_tests_with_tau():

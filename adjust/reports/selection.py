@@ -24,8 +24,11 @@ def tested(adjustment: Adjustment) -> FloatArray:
 
 def worst_first(figures: FloatArray, most: int) -> IntArray:
     """Indices of the `most` largest figures, largest first; ties in their given order, NaN last."""
-    order: IntArray = np.argsort(-np.nan_to_num(figures, nan=-np.inf), kind="stable")[:most]
-    return order
+    sizes = np.nan_to_num(figures, nan=-np.inf)
+    if most >= len(sizes):
+        return np.argsort(-sizes, kind="stable")
+    candidates = np.flatnonzero(sizes >= np.partition(sizes, -most)[-most])
+    return candidates[np.argsort(-sizes[candidates], kind="stable")][:most]
 
 
 def listed_observations(adjustment: Adjustment, order: Order, most: int) -> list[Record]:
