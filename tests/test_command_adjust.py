@@ -154,7 +154,7 @@ def test_every_help_shows_an_example_that_runs(name, tmp_path, monkeypatch, caps
     monkeypatch.chdir(tmp_path)
     given = set(tmp_path.rglob("*"))
     assert run(example[1].split()) in (0, 1)
-    assert [path for path in set(tmp_path.rglob("*")) - given if path.suffix == ".json"]
+    assert [path for path in set(tmp_path.rglob("*")) - given if path.suffix in (".json", ".csv")]
 
 
 @pytest.mark.parametrize("name", [name for name in COMMANDS if name])
