@@ -66,8 +66,9 @@ class _Assessment:
         ]
         solution = self._solution()
         grid = grid_axes(self.converged.state.geometry)
-        marks = grid @ located[0] @ grid.transpose(0, 2, 1) * solution.variance_scale
-        across = grid[lines[:, 0]] @ located[1] @ grid[lines[:, 1]].transpose(0, 2, 1) * solution.variance_scale
+        scale = solution.variance_scale
+        marks = _scaled(grid @ located[0] @ grid.transpose(0, 2, 1), scale)
+        across = _scaled(grid[lines[:, 0]] @ located[1] @ grid[lines[:, 1]].transpose(0, 2, 1), scale)
         differences = marks[lines[:, 0]] + marks[lines[:, 1]] - across - across.transpose(0, 2, 1)
         known = self._known()
         return Adjustment(
@@ -153,6 +154,11 @@ def grid_axes(geometry: Geometry) -> FloatArray:
     axes[:, 0, 1], axes[:, 1, 0] = -np.sin(rotation), np.sin(rotation)
     axes[:, 2, 2] = 1.0
     return axes
+
+
+def _scaled(covariances: FloatArray, scale: float) -> FloatArray:
+    """Covariances times `scale`; what is exactly 0 stays so, even where the scale is unknown (NaN)."""
+    return np.where(covariances == 0.0, 0.0, covariances * scale)
 
 
 def _masked(covariances: FloatArray, known: BoolArray) -> FloatArray:

@@ -156,3 +156,11 @@ def test_posterior_basis_scales_with_the_estimated_sigma() -> None:
     factor = prior.solution.variance_factor
     assert factor is not None
     assert_allclose(posterior.mark_covariances, prior.mark_covariances * factor, rtol=0, atol=1e-15)  # m²
+
+
+def test_posterior_basis_without_degrees_of_freedom_knows_only_fixed_marks() -> None:
+    marks = {"A": (0.0, 0.0, 10.0), "B": (0.0, 0.0, None)}
+    job = build_job(marks, fixed_height=["A"], levels=[("A", "B", 2.0)])
+    result = adjust(replace(job, statistics=replace(job.statistics, sd_basis="posterior")))
+    assert result.standard_deviations[0, 2] == 0
+    assert np.isnan(result.standard_deviations[1, 2])
