@@ -8,7 +8,7 @@ from itertools import repeat
 
 import numpy as np
 
-from adjust.arrays import FloatArray
+from adjust.arrays import FloatArray, IntArray
 from adjust.units import ANGLE_ENDINGS, LENGTH_ENDINGS, format_dms
 
 Table = dict[str, list[str]]
@@ -115,7 +115,7 @@ def _quoted(cells: list[str]) -> list[str]:
     ]
 
 
-def names_of(numbers: np.ndarray, names: Sequence[str]) -> list[str]:
+def names_of(numbers: IntArray, names: Sequence[str]) -> list[str]:
     """Names (rows,) by their numbers."""
     found: list[str] = np.array(names, dtype=object)[numbers].tolist()
     return found
