@@ -13,7 +13,7 @@ from numpy.testing import assert_allclose
 from adjust.job import Job
 from adjust.network.closures import Check, check_job
 from adjust.network.closures.compass_rule import BalancedTraverse, compass_rule, legs
-from adjust.network.closures.linear import Traverse
+from adjust.network.closures.traverse import Traverse
 from adjust.units import ARCSEC, INTERNATIONAL_FOOT, parse_dms
 from tests.building import build_job
 from tests.published import published

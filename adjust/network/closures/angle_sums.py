@@ -36,8 +36,7 @@ class Corners:
     def between(cls, observed: Observed, orientations: Orientations, entering: IntArray, leaving: IntArray) -> Corners:
         """Corners with the observations on the way from one node to the other."""
         stations = orientations.stations
-        pairs = zip(entering.tolist(), leaving.tolist(), strict=True)
-        edges = Ragged.of([stations.way(one, other) for one, other in pairs])
+        edges = stations.ways(entering, leaving)
         rows = Ragged(stations.readings.rows[edges.values], edges.starts)
         return cls(entering, leaving, rows, rows.total(observed.sd[rows.values] ** 2))
 

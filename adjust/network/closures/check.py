@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
+import numpy as np
+
 from adjust.errors import NetworkError
 from adjust.frames import Geometry
 from adjust.job import Job
@@ -14,7 +16,7 @@ from adjust.network.closures.coordinates import control_distance_closures
 from adjust.network.closures.entries import entry_remarks
 from adjust.network.closures.heights import height_closures
 from adjust.network.closures.levelling import level_closures
-from adjust.network.closures.linear import Traverse, Traversing, traverse_closures
+from adjust.network.closures.linear import Traversing
 from adjust.network.closures.lines import Lines, distance_closures, zenith_closures
 from adjust.network.closures.observed import Observed
 from adjust.network.closures.orientation import Orientations, control_orientation_closures
@@ -23,6 +25,7 @@ from adjust.network.closures.positions import position_remarks
 from adjust.network.closures.remarks import Remark
 from adjust.network.closures.stations import Stations, station_closures
 from adjust.network.closures.suspicion import SharedLine, Suspicion, shared_lines, suspicions
+from adjust.network.closures.traverse import Traverse, traverse_at, traverse_closures
 from adjust.network.closures.vectors import vector_closures
 from adjust.network.start import find_start
 from adjust.unknowns import find_unknowns
@@ -69,7 +72,7 @@ def check_job(job: Job) -> Check:
     observed = Observed(job, geometry)
     lines, stations = Lines(observed), Stations(observed)
     orientations = Orientations(observed, stations)
-    traverses = Traversing(observed, orientations, lines).traverses()
+    traverses = Traversing(observed, orientations, lines)
     closures = [
         *level_closures(observed),
         *station_closures(observed, stations),
@@ -88,12 +91,11 @@ def check_job(job: Job) -> Check:
         *two_place_remarks(observed, stations, lines),
         *entry_remarks(observed, job.tolerances),
     ]
-    traverses = sorted(traverses, key=lambda traverse: traverse.marks[0] != traverse.marks[-1])
     return Check(
         observed,
         checks,
         tuple(remarks),
-        tuple(traverses),
+        tuple(traverse_at(traverses, number) for number in np.flatnonzero(traverses.from_control).tolist()),
         tuple(shared_lines(checks)),
         tuple(find_clues(observed, checks, traverses)),
         tuple(suspicions(checks, observed)),

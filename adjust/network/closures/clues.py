@@ -9,8 +9,9 @@ import numpy as np
 
 from adjust.arrays import BoolArray, FloatArray
 from adjust.network.closures.closures import Judged
-from adjust.network.closures.linear import Traverse
+from adjust.network.closures.linear import Traversing
 from adjust.network.closures.observed import Observed
+from adjust.network.closures.traverse import Traverse, traverse_at
 
 GROSS = 4.0
 """Sds of an angular misclosure beyond which an angle is wrong rather than a length: once in 16 000 by chance."""
@@ -34,10 +35,9 @@ class Clue:
     rows: tuple[int, ...] = ()
 
 
-def find_clues(observed: Observed, checks: Sequence[Judged], traverses: Sequence[Traverse]) -> Iterator[Clue]:
+def find_clues(observed: Observed, checks: Sequence[Judged], traverses: Traversing) -> Iterator[Clue]:
     """Clues of every check's failing closures, the worst first."""
-    closed = sum(traverse.marks[0] == traverse.marks[-1] for traverse in traverses)
-    first = {"traverse_loop": 0, "traverse_link": closed}
+    first = {"traverse_loop": 0, "traverse_link": int(traverses.closed.sum())}
     for judged in checks:
         check = judged.closures.check
         worst = np.argsort(-judged.severity, kind="stable")[: min(MOST_CLUES, int(judged.exceeds.sum()))]
@@ -45,8 +45,8 @@ def find_clues(observed: Observed, checks: Sequence[Judged], traverses: Sequence
             yield from _slips(judged, number)
             yield from _turned(observed, judged, number)
             if check in first:
-                traverse, allowed = traverses[first[check] + number], float(judged.allowed[number, 0])
-                yield from _on_the_way(observed, traverse, allowed, check, number)
+                traverse = traverse_at(traverses, first[check] + number)
+                yield from _on_the_way(observed, traverse, float(judged.allowed[number, 0]), check, number)
 
 
 def _slips(judged: Judged, number: int) -> Iterator[Clue]:

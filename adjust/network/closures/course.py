@@ -53,23 +53,19 @@ class Part:
 
 @dataclass(frozen=True)
 class Course:
-    """A traverse leg by leg; arrays (legs,).
+    """A traverse leg by leg; arrays (legs,). `marks` are those it passes, first and last included.
 
     `azimuth` radians, from an arbitrary north unless `oriented`. `angular` is the angular misclosure, 0 where nothing
     shows one; `share` the part of it that each leg's azimuth carries when every angle takes an equal part.
     """
 
     legs: list[Step]
+    marks: list[int]
     azimuth: FloatArray
     share: FloatArray
     angular: float
     corners: list[Corner]
     oriented: bool
-
-    @property
-    def balanced(self) -> FloatArray:
-        """Azimuths (legs,) with the angular misclosure shared out."""
-        return self.azimuth - self.share * self.angular
 
 
 class Courses:
@@ -92,7 +88,8 @@ class Courses:
         angular, share = self._angular(parts[0], zeros[0]) if len(parts) == 1 else (0.0, np.zeros(len(azimuth)))
         corners = [corner for part, north in zip(parts, norths, strict=True) for corner in self._corners(part, north)]
         legs = [step for step in walk if step.line >= 0]
-        return Course(legs, np.array(azimuth), share, angular, corners, None not in norths)
+        marks = [leg.start for leg in legs] + [leg.end for leg in legs[-1:]]
+        return Course(legs, marks, np.array(azimuth), share, angular, corners, None not in norths)
 
     def _parts(self, walk: Walk) -> list[Part]:
         """The walk, cut where it passes over a bare mark."""

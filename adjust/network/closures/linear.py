@@ -1,230 +1,231 @@
-"""Linear misclosures of traverses, once their angular misclosure is shared out."""
+"""Linear misclosures of traverses, once their angular misclosure is shared out; all traverses at once."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
-from adjust.arrays import FloatArray, IntArray
+from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.frames import PlaneFrame
-from adjust.network.closures.closures import Closures
-from adjust.network.closures.compass_rule import compass_rule, legs
+from adjust.network.closures.compass_rule import legs
 from adjust.network.closures.course import Course, Courses
 from adjust.network.closures.lines import Lines
 from adjust.network.closures.observed import Observed
 from adjust.network.closures.orientation import Orientations
 from adjust.network.closures.ragged import Ragged
-from adjust.network.closures.traverses import Step, find_legs, find_walks
+from adjust.network.closures.traverses import find_legs, find_walks
 from adjust.observations.direction import azimuth_of
-from adjust.tolerances import Quantity
 
 QUARTER_TURN = np.array([[0.0, -1.0], [1.0, 0.0]])
 """Turns rows east, north clockwise by a right angle."""
 
 
 @dataclass(frozen=True)
-class Traverse:
-    """A traverse computed; metres.
+class Legs:
+    """The legs of all courses, one after the other: `of` lists the legs of each course.
 
-    `marks` as walked; `steps` (legs, 2) east and north along its azimuths, with the angular misclosure (`angular`,
-    radians, with its sd) shared out, or `unbalanced`; `arrival` (2,) is what they ought to sum to. `misclosure` (2,)
-    is their sum minus that. `leg_rows` are the observations of each leg's length, `corner_rows` those of the angle at
-    the start of a leg (the last corner at the end). `positions` (legs − 1, 2 or 3) are the frame's coordinates of the
-    marks on the way by the compass rule, where the traverse sets out from control; None elsewhere.
+    Arrays (legs,): `line` is the place in the lines' lengths, `node` the sight that gives the direction, seen from the
+    leg's start where `outward`, else from its end.
     """
 
-    marks: list[int]
-    steps: FloatArray
-    unbalanced: FloatArray
-    arrival: FloatArray
-    length: float
-    angular: float
-    angular_sd: float
-    sd: float
-    leg_rows: list[list[int]]
-    corner_rows: dict[int, list[int]]
-    oriented: bool
-    positions: FloatArray | None
+    of: Ragged
+    line: IntArray
+    node: IntArray
+    outward: BoolArray
 
-    @property
-    def rows(self) -> list[int]:
-        """All observations that it rests on."""
-        return [row for rows in (*self.leg_rows, *self.corner_rows.values()) for row in rows]
+    @classmethod
+    def of_courses(cls, courses: list[Course]) -> Legs:
+        """From courses."""
+        every = [leg for course in courses for leg in course.legs]
+        counts = [len(course.legs) for course in courses]
+        starts = np.concatenate([[0], np.cumsum(counts, dtype=np.int64)]).astype(np.int64)
+        leaving = np.array([leg.leaving for leg in every], dtype=np.int64)
+        entering = np.array([leg.entering for leg in every], dtype=np.int64)
+        line = np.array([leg.line for leg in every], dtype=np.int64)
+        return cls(Ragged(np.arange(starts[-1]), starts), line, np.where(leaving >= 0, leaving, entering), leaving >= 0)
 
-    @property
-    def misclosure(self) -> FloatArray:
-        """East and north (2,), metres."""
-        closing: FloatArray = self.steps.sum(axis=0) - self.arrival
-        return closing
 
-    @property
-    def from_control(self) -> bool:
-        """Whether it sets out from a mark of control."""
-        return self.positions is not None
+@dataclass(frozen=True)
+class Corners:
+    """The angles that courses rest on: `of` lists those of each course; the others are arrays (corners,).
+
+    `first` and `last` are the legs of all courses between which it turns them; `rows` its observations.
+    """
+
+    of: Ragged
+    first: IntArray
+    last: IntArray
+    rows: Ragged
+
+    @classmethod
+    def of_courses(cls, courses: list[Course], legs_of: Legs, orientations: Orientations) -> Corners:
+        """From courses, with the observations on the way between the two sights of each angle."""
+        stations = orientations.stations
+        every = [corner for course in courses for corner in course.corners]
+        counts = [len(course.corners) for course in courses]
+        starts = np.concatenate([[0], np.cumsum(counts, dtype=np.int64)]).astype(np.int64)
+        base = np.repeat(legs_of.of.starts[:-1], counts)
+        nodes = np.array([(corner.one, corner.other) for corner in every], dtype=np.int64).reshape(-1, 2)
+        turned = np.array([(corner.first, corner.last) for corner in every], dtype=np.int64).reshape(-1, 2)
+        edges = stations.ways(nodes[:, 0], nodes[:, 1])
+        rows = Ragged(stations.readings.rows[edges.values], edges.starts)
+        return cls(Ragged(np.arange(starts[-1]), starts), base + turned[:, 0], base + turned[:, 1], rows)
 
 
 class Traversing:
-    """Computes the traverses of a job."""
+    """The traverses of a job, as arrays over them all; metres and radians.
+
+    `courses` are those that can be computed: first the closed ones, then those between two marks of control.
+    """
 
     def __init__(self, observed: Observed, orientations: Orientations, lines: Lines) -> None:
         self.observed, self.orientations, self.lines = observed, orientations, lines
         self.geometry = observed.geometry
-        self.length = lines.lengths.length
-        self.variance = lines.lengths.covariance[:, 0, 0]
         self.curved = not isinstance(self.geometry.frame, PlaneFrame)
         sights = orientations.stations.readings.sights
-        self.azimuth = azimuth_of(self.geometry.sight(*sights.T, plumb=True).enu)
-        self.apart = self.geometry.level_distance(*lines.lengths.marks.T)[0]
+        self._azimuth = azimuth_of(self.geometry.sight(*sights.T, plumb=True).enu)
+        self._apart = self.geometry.level_distance(*lines.lengths.marks.T)[0]
+        self.courses = self._courses()
+        self.legs = Legs.of_courses(self.courses)
+        self.corners = Corners.of_courses(self.courses, self.legs, orientations)
+        ends = np.array([(course.marks[0], course.marks[-1]) for course in self.courses], dtype=np.int64).reshape(-1, 2)
+        self.start, self.end = ends.T
+        self.angular = np.array([course.angular for course in self.courses])
 
-    def traverses(self) -> list[Traverse]:
-        """Every traverse that can be computed, in the order of a basis of short ones."""
+    def _courses(self) -> list[Course]:
         found, places = find_legs(self.observed, self.orientations, self.lines)
-        walks = find_walks(found, places, self.length, self.orientations.stations.groups)
-        courses = Courses(self.orientations)
-        computed = (self._computed(courses.course(walk)) for walk in walks)
-        return [traverse for traverse in computed if traverse is not None]
+        walks = find_walks(found, places, self.lines.lengths.length, self.orientations.stations.groups)
+        finder = Courses(self.orientations)
+        courses = [course for course in map(finder.course, walks) if course is not None and len(course.legs) > 1]
+        known = [course for course in courses if self._is_located(course)]
+        return sorted(known, key=lambda course: course.marks[0] != course.marks[-1])
 
-    def _computed(self, course: Course | None) -> Traverse | None:
-        if course is None or len(course.legs) < 2:
-            return None
-        line = np.array([leg.line for leg in course.legs])
-        marks = [course.legs[0].start, *(leg.end for leg in course.legs)]
-        length = self.length[line]
-        reference = self._reference(course, marks, line)
-        if not np.isfinite(reference).all():
-            return None
-        arrival: FloatArray = reference.sum(axis=0)
-        steps, unbalanced = legs(course.balanced, length), legs(course.azimuth, length)
-        if not course.oriented:
-            turn = self._turn(course, marks, unbalanced, reference)
-            steps, unbalanced = _turned(steps, turn), _turned(unbalanced, turn)
-        along = arrival if marks[0] != marks[-1] and not course.oriented else None
-        leg_rows = [self.lines.lengths.rows[place].tolist() for place in line.tolist()]
-        corner_rows = self._corner_rows(course)
-        angles = np.array([np.sum(self.observed.sd[rows] ** 2) for rows in corner_rows])
-        sd = self._precision(course, angles, line, unbalanced, along)
-        positions = self._positions(marks, steps, reference, length) if self._controlled(marks) else None
-        return Traverse(
-            marks,
-            steps,
-            unbalanced,
-            arrival,
-            float(length.sum()),
-            course.angular,
-            float(np.sqrt(angles.sum())),
-            sd,
-            leg_rows,
-            {corner.first: rows for corner, rows in zip(course.corners, corner_rows, strict=True)},
-            course.oriented,
-            positions,
-        )
+    def _is_located(self, course: Course) -> bool:
+        """Whether it can be computed: on the ellipsoid, where axes turn from mark to mark, its marks need places."""
+        places = self.geometry.coordinates[course.marks, 0]
+        return not self.curved or bool(np.isfinite(places).all())
 
-    def _controlled(self, marks: list[int]) -> bool:
-        held = self.observed.held[:, 0]
-        return bool(held[marks[0]] and held[marks[-1]])
+    def __len__(self) -> int:
+        return len(self.courses)
 
-    def _reference(self, course: Course, marks: list[int], line: IntArray) -> FloatArray:
-        """What the legs (legs, 2) ought to be: between coordinates on the ellipsoid, where axes turn from mark to mark;
-        in a plane anything with the right sum, so that no coordinates are needed on the way."""
+    @property
+    def closed(self) -> BoolArray:
+        """Traverses (traverses,) that end where they began."""
+        return np.asarray(self.start == self.end)
+
+    @property
+    def from_control(self) -> BoolArray:
+        """Traverses (traverses,) that set out from a mark of control and arrive at one."""
+        held: BoolArray = self.observed.held[:, 0]
+        return held[self.start] & held[self.end]
+
+    @cached_property
+    def leg_length(self) -> FloatArray:
+        """Horizontal lengths (legs,)."""
+        return self.lines.lengths.length[self.legs.line]
+
+    @cached_property
+    def length(self) -> FloatArray:
+        """Lengths of the traverses (traverses,)."""
+        return self.legs.of.total(self.leg_length)
+
+    @cached_property
+    def _predicted(self) -> FloatArray:
+        """Azimuths (legs,) between coordinates, in the axes of the station that sights along each leg."""
+        return self._azimuth[self.legs.node] + np.where(self.legs.outward, 0.0, np.pi)
+
+    @cached_property
+    def reference(self) -> FloatArray:
+        """What the legs (legs, 2) ought to be: between coordinates on the ellipsoid; in a plane anything with the
+        right sum, so that no coordinates are needed on the way."""
         if self.curved:
-            return legs(np.array([self._predicted(leg) for leg in course.legs]), self.apart[line])
+            return legs(self._predicted, self._apart[self.legs.line])
         given = self.geometry.coordinates[:, :2]
-        arrival = given[marks[-1]] - given[marks[0]] if marks[-1] != marks[0] else np.zeros(2)
-        share: FloatArray = self.length[line] / self.length[line].sum()
-        return share[:, None] * arrival
+        arrival = np.where(self.closed[:, None], 0.0, given[self.end] - given[self.start])
+        owner = self.legs.of.owner
+        share: FloatArray = (self.leg_length / self.length[owner])[:, None] * arrival[owner]
+        return share
 
-    def _predicted(self, leg: Step) -> float:
-        """Azimuth of a leg between coordinates, in the axes of the station that sights along it."""
-        return float(self.azimuth[leg.leaving] if leg.leaving >= 0 else self.azimuth[leg.entering] + np.pi)
+    @cached_property
+    def unbalanced(self) -> FloatArray:
+        """The legs (legs, 2) east and north by the angles as observed."""
+        azimuth = np.concatenate([np.empty(0), *(course.azimuth for course in self.courses)])
+        return legs(azimuth + self._turn(azimuth)[self.legs.of.owner], self.leg_length)
 
-    def _turn(self, course: Course, marks: list[int], steps: FloatArray, reference: FloatArray) -> float:
-        """How far to turn a traverse that no known direction orients: to where it has to arrive, else to its first
-        leg."""
-        if marks[0] != marks[-1]:
-            return _azimuth(reference.sum(axis=0)) - _azimuth(steps.sum(axis=0))
-        turn = self._predicted(course.legs[0]) - float(course.azimuth[0])
-        return turn if np.isfinite(turn) else 0.0
+    @cached_property
+    def steps(self) -> FloatArray:
+        """The legs (legs, 2) with the angular misclosure shared out."""
+        share = np.concatenate([np.empty(0), *(course.share for course in self.courses)])
+        back = -share * self.angular[self.legs.of.owner]
+        return _turned(self.unbalanced, back)
 
-    def _corner_rows(self, course: Course) -> list[list[int]]:
-        """The observations of each corner's angle."""
-        stations = self.orientations.stations
-        ways = [stations.way(corner.one, corner.other) for corner in course.corners]
-        return [stations.readings.rows[way].tolist() for way in ways]
+    def _turn(self, azimuth: FloatArray) -> FloatArray:
+        """How far to turn each traverse (traverses,) that no known direction orients: to where it has to arrive, else
+        to the azimuth of its first leg between coordinates, if they are known."""
+        of, oriented = self.legs.of, np.array([course.oriented for course in self.courses], dtype=bool)
+        arrival = azimuth_of(of.total(self.reference)) - azimuth_of(of.total(legs(azimuth, self.leg_length)))
+        first = np.nan_to_num(self._predicted[of.starts[:-1]] - azimuth[of.starts[:-1]])
+        return np.where(oriented, 0.0, np.where(self.closed, first, arrival))
 
-    def _precision(
-        self, course: Course, angles: FloatArray, line: IntArray, steps: FloatArray, along: FloatArray | None
-    ) -> float:
-        """The sd of a traverse's linear misclosure, metres, from the variances of its corners' `angles` (corners,).
+    @cached_property
+    def misclosure(self) -> FloatArray:
+        """East and north (traverses, 2): where the legs lead minus where they ought to."""
+        return self.legs.of.total(self.steps - self.reference)
+
+    @cached_property
+    def angle_variance(self) -> FloatArray:
+        """Variances (corners,) of the angles, rad²."""
+        return self.corners.rows.total(self.observed.sd[self.corners.rows.values] ** 2)
+
+    @cached_property
+    def angular_sd(self) -> FloatArray:
+        """Sds (traverses,) of the sum of all angles."""
+        return np.sqrt(self.corners.of.total(self.angle_variance))
+
+    @cached_property
+    def sd(self) -> FloatArray:
+        """Sds (traverses,) of the linear misclosures.
 
         Each length moves the end along its leg, each angle across the line from its mark to the end; where the angular
         misclosure is shared out, an angle's error moves the end by its own lever less the mean of all levers. A
-        traverse that nothing orients shows only what the end is off by `along` (2,) the line to it.
+        traverse between two marks that nothing orients shows only what is off along the line between them.
         """
-        at = np.vstack([np.zeros(2), np.cumsum(steps, axis=0)])
-        levers = np.array([at[corner.last] - at[corner.first] for corner in course.corners]).reshape(-1, 2)
-        if course.share.any():
-            levers = levers - levers.mean(axis=0)
-        moves = np.vstack([steps / np.hypot(*steps.T)[:, None], levers @ QUARTER_TURN])
-        if along is not None:
-            moves = moves @ (along / np.hypot(*along))[:, None]
-        variances = np.concatenate([self.variance[line], angles])
-        return float(np.sqrt(variances @ np.sum(moves**2, axis=1)))
+        along = self._shown()
+        leg, corner = self.legs.of.owner, self.corners.of.owner
+        by_length = _square(self.unbalanced / np.hypot(*self.unbalanced.T)[:, None], along[leg])
+        by_angle = _square(self._levers() @ QUARTER_TURN, along[corner])
+        variance = self.legs.of.total(self.lines.lengths.covariance[self.legs.line, 0, 0] * by_length)
+        return np.sqrt(variance + self.corners.of.total(self.angle_variance * by_angle))
 
-    def _positions(self, marks: list[int], steps: FloatArray, reference: FloatArray, length: FloatArray) -> FloatArray:
-        """Coordinates (legs − 1, 3) by the compass rule of the marks on the way; the heights are not the traverse's."""
-        balanced = compass_rule(steps, length, reference.sum(axis=0))
-        on_the_way = marks[1:-1]
-        if not self.curved:
-            plan = self.geometry.coordinates[marks[0], :2] + np.cumsum(balanced.steps, axis=0)[:-1]
-            return np.column_stack([plan, np.full(len(plan), np.nan)])
-        shift = np.cumsum(balanced.steps - reference, axis=0)[:-1]
-        moved = np.column_stack([shift, np.zeros(len(shift))])
-        return self.geometry.frame.moved(self.geometry.coordinates[on_the_way], moved)
+    def _levers(self) -> FloatArray:
+        """From each corner (corners, 2) to the end of the legs that it turns, less the mean where they are balanced."""
+        at = np.vstack([np.zeros(2), np.cumsum(self.unbalanced, axis=0)])
+        levers: FloatArray = at[self.corners.last] - at[self.corners.first]
+        balanced = np.array([bool(course.share.any()) for course in self.courses], dtype=bool)
+        mean = self.corners.of.total(levers) / np.maximum(self.corners.of.lengths, 1)[:, None]
+        return levers - np.where(balanced[:, None], mean, 0.0)[self.corners.of.owner]
 
-
-def traverse_closures(traverses: list[Traverse]) -> list[Closures]:
-    """Linear misclosures of closed traverses, and of those from one mark of control to another.
-
-    `precision` is N of 1 : N, `east` and `north` the misclosure's parts (towards an arbitrary north where nothing
-    orients the traverse), `angular` what was shared out before.
-    """
-    closed = [traverse.marks[0] == traverse.marks[-1] for traverse in traverses]
-    loops = [traverse for traverse, back in zip(traverses, closed, strict=True) if back]
-    links = [traverse for traverse, back in zip(traverses, closed, strict=True) if not back]
-    return [_closures("traverse_loop", loops), _closures("traverse_link", links)]
+    def _shown(self) -> FloatArray:
+        """The direction (traverses, 2) along which a misclosure shows, NaN where it shows in all."""
+        arrival = self.legs.of.total(self.reference)
+        oriented = np.array([course.oriented for course in self.courses], dtype=bool)
+        everywhere = oriented | self.closed
+        length = np.where(everywhere, 1.0, np.hypot(*arrival.T))
+        return np.where(everywhere[:, None], np.nan, arrival / length[:, None])
 
 
-def _closures(check: str, traverses: list[Traverse]) -> Closures:
-    parts = np.array([traverse.misclosure for traverse in traverses]).reshape(-1, 2)
-    linear = np.hypot(*parts.T)
-    length = np.array([traverse.length for traverse in traverses])
-    with np.errstate(divide="ignore"):
-        precision = length / linear
-    return Closures(
-        check,
-        "m",
-        linear[:, None],
-        np.array([traverse.sd for traverse in traverses])[:, None],
-        Ragged.of([traverse.marks for traverse in traverses]),
-        Ragged.of([traverse.rows for traverse in traverses]),
-        length,
-        np.array([len(traverse.marks) - 1 for traverse in traverses], dtype=np.int64),
-        Quantity.POSITION,
-        figures={
-            "east": parts[:, 0],
-            "north": parts[:, 1],
-            "precision": precision,
-            "angular": np.array([traverse.angular for traverse in traverses]),
-        },
-    )
+def _square(moves: FloatArray, along: FloatArray) -> FloatArray:
+    """Squared lengths (moves,) of moves (moves, 2), or of their parts along unit vectors where those are given."""
+    part = np.einsum("mi,mi->m", moves, np.nan_to_num(along))
+    whole = np.einsum("mi,mi->m", moves, moves)
+    squares: FloatArray = np.where(np.isnan(along[:, 0]), whole, part**2)
+    return squares
 
 
-def _azimuth(step: FloatArray) -> float:
-    return float(np.arctan2(step[0], step[1]))
-
-
-def _turned(steps: FloatArray, angle: float) -> FloatArray:
-    """Steps (legs, 2) turned clockwise."""
+def _turned(steps: FloatArray, angle: FloatArray) -> FloatArray:
+    """Steps (legs, 2) turned clockwise by angles (legs,)."""
     sine, cosine = np.sin(angle), np.cos(angle)
-    return np.column_stack([steps[:, 0] * cosine + steps[:, 1] * sine, steps[:, 1] * cosine - steps[:, 0] * sine])
+    east, north = steps.T
+    return np.column_stack([east * cosine + north * sine, north * cosine - east * sine])

@@ -110,8 +110,7 @@ def control_orientation_closures(observed: Observed, orientations: Orientations)
     nodes, azimuth, variance, group = nodes[further], azimuth[further], variance[further], group[further]
     observed_angle = stations.reading[nodes] - stations.reading[tie.node[group]]
     misclosure = wrapped(observed_angle - (azimuth - tie.azimuth[group]))
-    ways = [stations.way(one, other) for one, other in zip(tie.node[group].tolist(), nodes.tolist(), strict=True)]
-    edges = Ragged.of(ways)
+    edges = stations.ways(tie.node[group], nodes)
     rows = Ragged(stations.readings.rows[edges.values], edges.starts)
     spread = rows.total(observed.sd[rows.values] ** 2) + variance + tie.variance[group]
     at, to = stations.readings.sights[nodes].T

@@ -49,10 +49,13 @@ def local_plan(observed: Observed, coordinates: FloatArray) -> FloatArray:
 
 
 def _two_names(observed: Observed, lines: Lines, tolerance: float) -> Iterator[Remark]:
-    from shapely import STRtree, points
-
     plan = local_plan(observed, observed.geometry.coordinates)
     known = np.flatnonzero(np.isfinite(plan).all(axis=1))
+    if not (np.diff(np.sort(plan[known, 0])) <= tolerance).any():
+        # no two marks share an easting: nothing to search, nor a library to load
+        return
+    from shapely import STRtree, points
+
     places = points(plan[known])
     one, other = STRtree(places).query(places, predicate="dwithin", distance=tolerance)
     pairs = np.sort(np.column_stack([known[one], known[other]])[one < other], axis=1)

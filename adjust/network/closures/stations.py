@@ -7,7 +7,8 @@ reading outside the forest closes a figure of angles round the station.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -101,7 +102,8 @@ class Stations:
         links = csr_array((np.ones(len(readings.ends)), (readings.ends[:, 0], readings.ends[:, 1])), shape=shape)
         self.groups, group = connected_components(links, directed=False)
         self.group: IntArray = group[:-1].astype(np.int64)
-        roots = np.unique(self.group, return_index=True)[1]
+        # zeros of rounds and norths are numbered last: most sights then hang directly below their root
+        roots = count - 1 - np.unique(self.group[::-1], return_index=True)[1]
         rooted = csr_array((np.ones(len(roots)), (np.full(len(roots), count), roots)), shape=shape)
         order, before = breadth_first_order(links + rooted, count, directed=False)
         self.above = np.where(before[:-1] == count, np.arange(count), before[:-1]).astype(np.int64)
@@ -154,6 +156,15 @@ class Stations:
         north[self.group[used]] = used
         return north
 
+    def ways(self, one: IntArray, other: IntArray) -> Ragged:
+        """Edges of the forest between pairs of nodes (pairs,), each of one group."""
+        same = one == other
+        beside = ~same & (self.above[one] == self.above[other]) & (self.through[one] >= 0) & (self.through[other] >= 0)
+        lists: list[Sequence[int]] = np.column_stack([self.through[one], self.through[other]]).tolist()
+        for place in np.flatnonzero(~beside).tolist():
+            lists[place] = self.way(int(one[place]), int(other[place]))
+        return Ragged.of(lists)
+
     def way(self, one: int, other: int) -> list[int]:
         """Edges of the forest between two nodes of a group."""
         up_one, up_other = self._way_up(one), self._way_up(other)
@@ -204,6 +215,4 @@ def station_closures(observed: Observed, stations: Stations) -> list[Closures]:
         cycles.edges.lengths,
         Quantity.STATION,
     )
-    from dataclasses import replace
-
     return [replace(whole.take(one_way), check="horizon"), whole.take(~one_way)]

@@ -55,6 +55,8 @@ def suspicions(checks: Sequence[Judged], observed: Observed) -> list[Suspicion]:
     Taken one after the other: what most failing closures not yet explained rest on, each passing closure that rests on
     it counting against it. What the same closures rest on is named together.
     """
+    if not any(judged.exceeds.any() for judged in checks):
+        return []
     rows, size = len(observed), len(observed) + len(observed.job.marks)
     incidence = joined([_rests_on(judged, observed) for judged in checks])
     failing: BoolArray = np.concatenate([np.zeros(0, dtype=bool), *(judged.exceeds for judged in checks)])
