@@ -127,7 +127,7 @@ def test_the_angle(result: Adjustment, directions: Residuals) -> None:
 
 
 def test_target_heights_explain_the_step_to_the_ellipsoid(result: Adjustment) -> None:
-    """Azimuth to a target h above the ellipsoid: h e² cos²φ sin 2α / 2ρ. Torge & Müller (2012), *Geodesy*, from memory."""
+    """Azimuth to a target h above the ellipsoid: h e² cos²φ sin 2α / 2ρ (Torge & Müller 2012, from memory)."""
     lines, spatial, ellipsoid = lines_of(result), result.geometry.spatial, result.job.frame.ellipsoid  # type: ignore[attr-defined]
     latitude, height = spatial[lines.marks[:, 1], 1], spatial[lines.marks[:, 1], 2]
     turn = height * ellipsoid.eccentricity_squared * np.cos(latitude) ** 2 * np.sin(2 * lines.azimuth)

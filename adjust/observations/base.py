@@ -5,6 +5,7 @@ from __future__ import annotations
 from abc import ABC, abstractmethod
 from collections.abc import Sequence
 from dataclasses import dataclass, fields, replace
+from itertools import pairwise
 from typing import Any, ClassVar, Literal, Self
 
 import numpy as np
@@ -51,9 +52,9 @@ class Provenance(Columns):
         the groups, none empty and none across two files."""
         order = np.argsort(group, kind="stable")
         starts = np.searchsorted(group[order], np.arange(groups))
-        lines = np.split(self.line[order], starts[1:])
+        lines, bounds = self.line[order].tolist(), [*starts.tolist(), len(order)]
         further = np.empty(groups, dtype=object)
-        further[:] = [tuple(part[1:].tolist()) for part in lines]
+        further[:] = [tuple(lines[start + 1 : end]) for start, end in pairwise(bounds)]
         return Provenance(self.files, self.file[order][starts], self.line[order][starts], further)
 
 

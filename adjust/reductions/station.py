@@ -111,12 +111,12 @@ def equivalent_variances(covariance: FloatArray, weights: FloatArray, part: IntA
     out as the plain rule has it, variance over number of rounds. `weights` (targets,) is where the search starts.
     """
     together = (part[:, None] == part).astype(float)
+    own = covariance.diagonal()
     for _ in range(MOST_WEIGHT_STEPS):
-        total = together @ weights
-        deviation = np.eye(len(weights)) - together * (weights / total[:, None])
-        own = np.sum((deviation @ covariance) * deviation, axis=1)
-        renewed = 1.0 / (own + 1.0 / total)
-        change = np.max(np.abs(renewed / weights - 1.0))
+        total, mixed = together @ weights, covariance @ weights
+        deviation = own - 2.0 * mixed / total + together @ (weights * mixed) / total**2
+        renewed = 1.0 / (deviation + 1.0 / total)
+        change = abs(renewed / weights - 1.0).max()
         weights = renewed
         if change < WEIGHTS_SETTLED:
             break
