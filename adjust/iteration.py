@@ -62,6 +62,16 @@ def iterate(job: Job, unknowns: Unknowns, start: Start, progress: Progress) -> C
     return _GaussNewton(job, unknowns, start, progress).run()
 
 
+def after_step(job: Job, unknowns: Unknowns, state: State, step: FloatArray) -> State:
+    """The state after a step (unknowns,): metres along local axes, then radians of the orientations."""
+    corrections = np.zeros(unknowns.sought.shape)
+    corrections[unknowns.sought] = step[: unknowns.coordinates]
+    before = state.geometry
+    reached = np.where(unknowns.sought, before.moved(corrections).coordinates, before.coordinates)
+    geometry = with_geoid(job, replace(before, coordinates=reached))
+    return State(geometry, state.orientations + step[unknowns.coordinates :])
+
+
 class _GaussNewton:
     """The iteration of one job; the symbolic analysis is done once and reused."""
 
@@ -113,12 +123,7 @@ class _GaussNewton:
         return reached
 
     def _after(self, step: FloatArray) -> State:
-        corrections = np.zeros(self.unknowns.sought.shape)
-        corrections[self.unknowns.sought] = step[: self.unknowns.coordinates]
-        before = self.state.geometry
-        reached = np.where(self.unknowns.sought, before.moved(corrections).coordinates, before.coordinates)
-        geometry = with_geoid(self.job, replace(before, coordinates=reached))
-        return State(geometry, self.state.orientations + step[self.unknowns.coordinates :])
+        return after_step(self.job, self.unknowns, self.state, step)
 
     def _fit_to_given(self) -> InnerDatum | None:
         """Under inner constraints, move the whole network to its fit on the given coordinates."""

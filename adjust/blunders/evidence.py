@@ -1,0 +1,189 @@
+"""What the residuals say of errors supposed anywhere: scores and information of all of them, in closed form.
+
+Whitened, the observations minus what the adjustment makes of them are e = M ε, M = I − Ã C Ãᵀ. Errors of sizes ∇ in the
+columns H enter as M H ∇, so that with the score g = Hᵀe and the information G = HᵀMH
+
+    ∇ = G⁻¹ g,   Q_∇ = G⁻¹,   T = gᵀ G⁻¹ g                                                           (1)
+
+is what vᵀPv falls by when the errors are allowed for: χ² of as many degrees of freedom as columns when there are none
+(Teunissen 2006, *Testing theory*, 2nd edition, Delft, §4; Kok 1984, *On data snooping and multiple outlier testing*,
+NOAA Technical Report NOS NGS 30). Allowing for some errors S changes the rest to
+
+    g|S = g − G_·S G_SS⁻¹ g_S,   G|S = G − G_·S G_SS⁻¹ G_S·                                          (2)
+
+without another adjustment: one step of a Cholesky decomposition of G for each column of S.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+from functools import cached_property
+
+import numpy as np
+
+from adjust.arrays import BoolArray, FloatArray, IntArray
+from adjust.blunders.information import InformationMatrix
+
+LEAST_INFORMATION = 1e-6
+"""Share of its weight hᵀh, and of the information it has by itself, below which an error can not be told from the
+unknowns or from other errors: it would show by less than a thousandth of itself."""
+
+
+@dataclass(frozen=True)
+class Evidence:
+    """Scores g and information G of all supposed errors.
+
+    `members` lists for each number q of columns the hypotheses that have so many, (m, q) indices of columns, and
+    `numbers` their numbers (m,) among all hypotheses. `weight` (columns,) is hᵀh. `square_sum` is eᵀe = vᵀPv, of
+    `freedom` degrees.
+    """
+
+    score: FloatArray
+    information: InformationMatrix
+    weight: FloatArray
+    members: dict[int, IntArray]
+    numbers: dict[int, IntArray]
+    square_sum: float
+    freedom: int
+
+    @cached_property
+    def count(self) -> int:
+        """Number of hypotheses."""
+        return sum(len(rows) for rows in self.numbers.values())
+
+    @cached_property
+    def size(self) -> IntArray:
+        """Columns (hypotheses,) of each hypothesis."""
+        size = np.zeros(self.count, dtype=np.int64)
+        for width, numbers in self.numbers.items():
+            size[numbers] = width
+        return size
+
+    @cached_property
+    def place(self) -> IntArray:
+        """Row (hypotheses,) of each hypothesis among those of its size."""
+        place = np.zeros(self.count, dtype=np.int64)
+        for numbers in self.numbers.values():
+            place[numbers] = np.arange(len(numbers))
+        return place
+
+    @cached_property
+    def by_itself(self) -> Allowed:
+        """The tests of each hypothesis with nothing else allowed for."""
+        return Allowed(self, ())
+
+    def columns_of(self, hypothesis: int) -> IntArray:
+        """Columns (q,) of one hypothesis."""
+        columns: IntArray = self.members[int(self.size[hypothesis])][self.place[hypothesis]]
+        return columns
+
+    def allowing(self, chosen: Sequence[int]) -> Allowed:
+        """The tests of all others once the errors of `chosen` hypotheses are allowed for."""
+        return Allowed(self, tuple(chosen))
+
+
+@dataclass(frozen=True)
+class Allowed:
+    """Equation (2) for one set of hypotheses S, `chosen`."""
+
+    evidence: Evidence
+    chosen: tuple[int, ...]
+    columns: IntArray = field(init=False)
+    """Columns (s,) of the chosen."""
+    basis: FloatArray = field(init=False)
+    """U (columns, s) with U Uᵀ = G_·S G_SS⁻¹ G_S·."""
+    coordinates: FloatArray = field(init=False)
+    """L⁻¹ g_S (s,), G_SS = L Lᵀ: T is their square sum."""
+
+    def __post_init__(self) -> None:
+        evidence = self.evidence
+        owned = [evidence.columns_of(hypothesis) for hypothesis in self.chosen]
+        columns = np.concatenate([np.empty(0, dtype=np.int64), *owned])
+        strips = evidence.information.columns(columns)
+        lower = np.linalg.cholesky(strips[columns])
+        object.__setattr__(self, "columns", columns)
+        object.__setattr__(self, "basis", np.linalg.solve(lower, strips.T).T)
+        object.__setattr__(self, "coordinates", np.linalg.solve(lower, evidence.score[columns]))
+        object.__setattr__(self, "_lower", lower)
+
+    @property
+    def statistic(self) -> float:
+        """T of the whole set."""
+        return float(self.coordinates @ self.coordinates)
+
+    @cached_property
+    def score(self) -> FloatArray:
+        """g|S (columns,)."""
+        score: FloatArray = self.evidence.score - self.basis @ self.coordinates
+        return score
+
+    @cached_property
+    def diagonal(self) -> FloatArray:
+        """Diagonal (columns,) of G|S."""
+        diagonal: FloatArray = self.evidence.information.diagonal - np.einsum("ps,ps->p", self.basis, self.basis)
+        return diagonal
+
+    @cached_property
+    def testable(self) -> BoolArray:
+        """Which columns (columns,) still show an error of their own."""
+        by_itself = self.evidence.information.diagonal
+        checked = by_itself > LEAST_INFORMATION * self.evidence.weight
+        testable: BoolArray = checked & (self.diagonal > LEAST_INFORMATION * by_itself)
+        return testable
+
+    @cached_property
+    def w(self) -> FloatArray:
+        """Normalised score (columns,) of each column: standard normal when nothing more is wrong; 0 untestable."""
+        return np.where(self.testable, self.score / np.sqrt(np.where(self.testable, self.diagonal, 1.0)), 0.0)
+
+    @cached_property
+    def gains(self) -> FloatArray:
+        """T (hypotheses,) of each hypothesis on top of the chosen ones; 0 for these and where it can not be tested."""
+        gains = np.zeros(self.evidence.count)
+        for width, members in self.evidence.members.items():
+            numbers = self.evidence.numbers[width]
+            gains[numbers] = self.w[members[:, 0]] ** 2 if width == 1 else self._joint(members)
+        gains[list(self.chosen)] = 0.0
+        return gains
+
+    def _joint(self, members: IntArray) -> FloatArray:
+        """T (m,) of hypotheses of several columns (m, q)."""
+        along = self.basis[members]
+        blocks = self.evidence.information.blocks(members) - along @ along.transpose(0, 2, 1)
+        scale = np.sqrt(self.evidence.information.diagonal[members])
+        sound = self.testable[members].all(axis=1)
+        scaled = blocks[sound] / (scale[sound, :, None] * scale[sound, None, :])
+        values, vectors = np.linalg.eigh(scaled)
+        turned = np.einsum("mij,mi->mj", vectors, self.score[members[sound]] / scale[sound])
+        regular = values[:, 0] > LEAST_INFORMATION
+        joint = np.zeros(len(members))
+        joint[np.flatnonzero(sound)[regular]] = np.sum(turned[regular] ** 2 / values[regular], axis=1)
+        return joint
+
+    @cached_property
+    def covariance(self) -> FloatArray:
+        """Q_∇ = G_SS⁻¹ (s, s)."""
+        inverse = np.linalg.inv(self._lower)
+        covariance: FloatArray = inverse.T @ inverse
+        return covariance
+
+    @cached_property
+    def errors(self) -> FloatArray:
+        """∇ (s,) of the chosen, column by column."""
+        errors: FloatArray = np.linalg.solve(self._lower.T, self.coordinates)
+        return errors
+
+    def own(self, hypothesis: int) -> slice:
+        """Where one of the chosen stands among their columns."""
+        before = self.chosen[: self.chosen.index(hypothesis)]
+        first = int(self.evidence.size[list(before)].sum())
+        return slice(first, first + int(self.evidence.size[hypothesis]))
+
+    @cached_property
+    def losses(self) -> FloatArray:
+        """T (chosen,) of each of the chosen given the others: what vᵀPv rises by without it."""
+        parts = [self.own(hypothesis) for hypothesis in self.chosen]
+        return np.array(
+            [self.errors[own] @ np.linalg.solve(self.covariance[own, own], self.errors[own]) for own in parts]
+        )

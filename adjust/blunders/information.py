@@ -1,0 +1,109 @@
+"""The information matrix G = HᵀMH of all supposed errors, whole or as far as it is asked for."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import Protocol
+
+import numpy as np
+from scipy.sparse import csr_array
+
+from adjust.arrays import FloatArray, IntArray
+from adjust.solver import Factor
+
+
+class InformationMatrix(Protocol):
+    """G of all columns, whole or in parts."""
+
+    affordable: int
+    """Columns that may be asked for at once without a second thought."""
+
+    @property
+    def diagonal(self) -> FloatArray:
+        """Diagonal (columns,)."""
+        ...
+
+    def columns(self, wanted: IntArray) -> FloatArray:
+        """Columns (columns, k) of G."""
+        ...
+
+    def blocks(self, members: IntArray) -> FloatArray:
+        """Diagonal blocks (m, q, q) of members (m, q)."""
+        ...
+
+
+@dataclass(frozen=True)
+class DenseInformation:
+    """G in memory: for up to a few thousand columns."""
+
+    matrix: FloatArray
+    affordable: int = 400
+
+    @cached_property
+    def diagonal(self) -> FloatArray:
+        """Diagonal (columns,)."""
+        return np.diagonal(self.matrix).copy()
+
+    def columns(self, wanted: IntArray) -> FloatArray:
+        """Columns (columns, k) of G."""
+        return self.matrix[:, wanted]
+
+    def blocks(self, members: IntArray) -> FloatArray:
+        """Diagonal blocks (m, q, q) of members (m, q)."""
+        return self.matrix[members[:, :, None], members[:, None, :]]
+
+
+@dataclass(frozen=True)
+class SparseInformation:
+    """G = HᵀH − HᵀÃ C ÃᵀH column by column, each by one solution with the factor; those asked for once are kept.
+
+    `columns` is H, `through` ÃᵀH; `singles` are the diagonal blocks (rows, c, c) of the observations' own errors, with
+    the first column of each kind. The columns behind them are those of groups.
+    """
+
+    supposed: csr_array
+    through: csr_array
+    factor: Factor
+    singles: tuple[tuple[int, FloatArray], ...]
+    affordable: int = 30
+    _kept: dict[int, FloatArray] = field(default_factory=dict, repr=False)
+
+    @cached_property
+    def diagonal(self) -> FloatArray:
+        """Diagonal (columns,) of G."""
+        own = [np.einsum("rii->ri", block).ravel() for _, block in self.singles]
+        first = sum(len(part) for part in own)
+        groups = np.arange(first, self.supposed.shape[1])
+        return np.concatenate([*own, self.columns(groups)[groups, np.arange(len(groups))]])
+
+    def columns(self, wanted: IntArray) -> FloatArray:
+        """Columns (columns, k) of G."""
+        lacking = np.array(
+            [column for column in dict.fromkeys(wanted.tolist()) if column not in self._kept], dtype=np.int64
+        )
+        if len(lacking):
+            spread = self.factor.normal_solve(self.through[:, lacking].toarray())
+            fresh = (self.supposed.T @ self.supposed[:, lacking]).toarray() - self.through.T @ spread
+            self._kept.update(zip(lacking.tolist(), fresh.T, strict=True))
+        return np.column_stack(
+            [np.empty((self.supposed.shape[1], 0)), *(self._kept[column] for column in wanted.tolist())]
+        )
+
+    def blocks(self, members: IntArray) -> FloatArray:
+        """Diagonal blocks (m, q, q) of members (m, q): those of whole observations are known, groups are solved for."""
+        width = members.shape[1]
+        blocks = np.empty((len(members), width, width))
+        waiting = np.ones(len(members), dtype=bool)
+        for first, own in self.singles:
+            row, component = np.divmod(members[:, 0] - first, own.shape[1])
+            if own.shape[1] == width:
+                here = (row >= 0) & (row < len(own)) & (component == 0)
+                blocks[here] = own[row[here]]
+                waiting &= ~here
+        if waiting.any():
+            chosen = members[waiting]
+            whole = self.columns(chosen.ravel())
+            place = np.arange(chosen.size).reshape(chosen.shape)
+            blocks[waiting] = whole[chosen[:, :, None], place[:, None, :]]
+        return blocks

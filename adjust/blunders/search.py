@@ -1,0 +1,159 @@
+"""The set of errors that costs least: snooping with look-back, and pairs at once where errors mask each other.
+
+To a set the best further error joins, or the best further pair; when none is worth it, others take the place of each
+member in turn, and of two that lean on each other; until no set in reach costs less. All of it is algebra on scores
+and information (`adjust.blunders.evidence`): no adjustment is repeated.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator, Sequence
+from dataclasses import dataclass
+from itertools import combinations
+
+import numpy as np
+
+from adjust.arrays import FloatArray, IntArray
+from adjust.blunders.criterion import Criterion
+from adjust.blunders.evidence import LEAST_INFORMATION, Allowed, Evidence
+
+LEAST_SAVING = 1e-9
+"""Of cost: below it a move is rounding, and could be undone by the next."""
+
+
+COUPLED = 0.05
+"""Correlation of two estimated errors below which neither can stand in for a part of the other."""
+
+
+@dataclass(frozen=True)
+class Choice:
+    """Hypotheses in ascending order and what they cost together."""
+
+    cost: float
+    chosen: tuple[int, ...]
+
+
+def find_errors(evidence: Evidence, criterion: Criterion, start: Sequence[int] = ()) -> Choice:
+    """The set of least cost that the moves reach from `start`."""
+    search = _Search(evidence, criterion)
+    best = search.choice(start)
+    effort = 0
+    while effort < len(search.efforts):
+        following = min(
+            search.efforts[effort](best.chosen), key=lambda choice: (choice.cost, choice.chosen), default=best
+        )
+        if following.cost < best.cost - LEAST_SAVING:
+            best, effort = following, 0
+        else:
+            effort += 1
+    return best
+
+
+@dataclass(frozen=True)
+class _Search:
+    evidence: Evidence
+    criterion: Criterion
+
+    @property
+    def efforts(self) -> tuple[Callable[[tuple[int, ...]], Iterator[Choice]], ...]:
+        """Moves in the order of the work they take."""
+        return self._joined, self._exchanged, self._two_exchanged
+
+    def choice(self, chosen: Sequence[int]) -> Choice:
+        """A set and its cost."""
+        ordered = tuple(sorted(chosen))
+        return self._as_it_is(self.evidence.allowing(ordered))
+
+    def _as_it_is(self, allowed: Allowed) -> Choice:
+        return Choice(float(self.criterion.worth(allowed.statistic)) + self._price(allowed.chosen), allowed.chosen)
+
+    def _price(self, chosen: Sequence[int], *joining: int) -> float:
+        return self.criterion.price([*self.evidence.size[list(chosen)].tolist(), *joining])
+
+    def _joined(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
+        """One more, or two."""
+        allowed = self.evidence.allowing(chosen)
+        yield from self._with_one(allowed)
+        yield from self._with_two(allowed)
+
+    def _exchanged(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
+        """Without one, or with one or two others in its place."""
+        for removed in chosen:
+            allowed = self.evidence.allowing([other for other in chosen if other != removed])
+            yield self._as_it_is(allowed)
+            yield from self._with_one(allowed)
+            yield from self._with_two(allowed)
+
+    def _two_exchanged(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
+        """One or two others in the place of two that lean on each other."""
+        for removed in coupled_pairs(self.evidence, chosen):
+            allowed = self.evidence.allowing([other for other in chosen if other not in removed])
+            yield from self._with_one(allowed)
+            yield from self._with_two(allowed)
+
+    def _with_one(self, allowed: Allowed) -> Iterator[Choice]:
+        """The best hypothesis of each size on top."""
+        for width, numbers in self.evidence.numbers.items():
+            gains = allowed.gains[numbers]
+            if not len(gains) or gains.max() <= 0.0:
+                continue
+            best = int(np.argmax(gains))
+            cost = float(self.criterion.worth(allowed.statistic + gains[best])) + self._price(allowed.chosen, width)
+            yield Choice(cost, tuple(sorted((*allowed.chosen, int(numbers[best])))))
+
+    def _with_two(self, allowed: Allowed) -> Iterator[Choice]:
+        """The best pair of single-column hypotheses on top."""
+        columns = self._paired(allowed)
+        if len(columns) < 2:
+            return
+        joint = pair_gains(allowed, columns)
+        best = int(np.argmax(joint))
+        first, second = divmod(best, len(columns))
+        if joint[first, second] <= 0.0:
+            return
+        cost = float(self.criterion.worth(allowed.statistic + joint[first, second])) + self._price(allowed.chosen, 1, 1)
+        owners = self._owner[columns[[first, second]]]
+        yield Choice(cost, tuple(sorted((*allowed.chosen, *owners.tolist()))))
+
+    @property
+    def _owner(self) -> IntArray:
+        """Single-column hypothesis (columns,) of each column, −1 for columns that have none."""
+        owner = np.full(len(self.evidence.score), -1)
+        owner[self.evidence.members[1][:, 0]] = self.evidence.numbers[1]
+        return owner
+
+    def _paired(self, allowed: Allowed) -> IntArray:
+        """The columns (k,) that pairs are made of: those that fit worst, as many as can be afforded."""
+        columns = self.evidence.members[1][:, 0]
+        columns = columns[allowed.testable[columns]]
+        most = self.evidence.information.affordable
+        if len(columns) <= most:
+            return columns
+        return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:most]])
+
+
+def coupled_pairs(evidence: Evidence, chosen: tuple[int, ...]) -> Iterator[tuple[int, int]]:
+    """Pairs of the chosen whose estimated errors are correlated by more than `COUPLED`."""
+    if len(chosen) < 2:
+        return
+    allowed = evidence.allowing(chosen)
+    scale = np.sqrt(np.diagonal(allowed.covariance))
+    correlation = np.abs(allowed.covariance) / np.outer(scale, scale)
+    for first, second in combinations(chosen, 2):
+        if correlation[allowed.own(first), allowed.own(second)].max() > COUPLED:
+            yield first, second
+
+
+def pair_gains(allowed: Allowed, columns: IntArray) -> FloatArray:
+    """T (k, k) of every pair of `columns` (k,) on top; 0 where the two can not be told apart."""
+    information = (
+        allowed.evidence.information.columns(columns)[columns] - allowed.basis[columns] @ allowed.basis[columns].T
+    )
+    scale = np.sqrt(allowed.diagonal[columns])
+    w = allowed.w[columns]
+    correlation = information / np.outer(scale, scale)
+    np.fill_diagonal(correlation, 1.0)
+    apart = 1.0 - correlation**2
+    sound = apart > LEAST_INFORMATION
+    square = w[:, None] ** 2 + w[None, :] ** 2 - 2.0 * correlation * np.outer(w, w)
+    return np.where(sound, square / np.where(sound, apart, 1.0), 0.0)
