@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -37,10 +37,32 @@ def adjust(job: Job, progress: Progress = _unwatched) -> Adjustment:
     progress("checking the network", 0.0)
     check_solvable(job, unknowns)
     progress("finding start coordinates", 0.05)
-    start = find_start(job, unknowns)
-    converged = iterate(job, unknowns, start, lambda stage, done: progress(stage, 0.1 + 0.5 * done))
+    converged, notes = _converge(job, unknowns, lambda stage, done: progress(stage, 0.1 + 0.5 * done))
     progress("finding the covariance", 0.6)
-    return _Assessment(job, unknowns, converged).result((*job.notes, *start.notes))
+    return _Assessment(job, unknowns, converged).result((*job.notes, *notes))
+
+
+def _converge(job: Job, unknowns: Unknowns, progress: Progress) -> tuple[Converged, tuple[str, ...]]:
+    """Iterate from the start coordinates given; where they lead nowhere, from some built on the control alone."""
+    start = find_start(job, unknowns)
+    try:
+        return iterate(job, unknowns, start, progress), start.notes
+    except NetworkError as failure:
+        free = (job.marks.control[:, [0, 0, 1]] == Control.FREE) & ~np.isnan(job.marks.given) & unknowns.sought
+        if job.datum.mode == "inner" or not free.any():
+            raise
+        bare = replace(job, marks=replace(job.marks, given=np.where(free, np.nan, job.marks.given)))
+        try:
+            start = find_start(bare, unknowns)
+            return iterate(job, unknowns, start, progress), (*start.notes, REBUILT)
+        except NetworkError:
+            raise failure from None
+
+
+REBUILT = (
+    "The coordinates that marks.csv gives for free marks led to no solution; start coordinates were built from the "
+    "control and the observations instead. Check the coordinates given: they contradict the rest."
+)
 
 
 @dataclass(frozen=True)
@@ -78,7 +100,7 @@ class _Assessment:
             orientations=self.converged.state.orientations,
             residuals=self._residuals(solution, selected.row_variances, selected.blocks[2:]),
             solution=solution,
-            mark_covariances=_masked(marks, known),
+            mark_covariances=_masked((marks + marks.transpose(0, 2, 1)) / 2, known),
             lines=lines,
             line_covariances=_masked(differences, known[lines[:, 0]] & known[lines[:, 1]]),
             notes=notes,

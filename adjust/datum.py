@@ -73,13 +73,14 @@ Fields = tuple[dict[str, FloatArray], float]
 
 def _plane_fields(part: Part, geometry: Geometry, marks: IntArray) -> Fields:
     """Displacements (marks, 3) for each datum element of a plane network."""
-    position = geometry.coordinates[marks]
-    return _local_fields(position - np.nanmean(position, axis=0))
+    return _local_fields(geometry.coordinates[marks])
 
 
-def _local_fields(offset: FloatArray) -> Fields:
-    """The similarity motions of points `offset` (marks, 3) about their centroid."""
-    offset = np.nan_to_num(offset)
+def _local_fields(position: FloatArray) -> Fields:
+    """The similarity motions of points (marks, 3) about their centroid; unknown coordinates stay where they are."""
+    known = ~np.isnan(position)
+    position = np.where(known, position, 0.0)
+    offset = np.where(known, position - position.sum(axis=0) / np.maximum(known.sum(axis=0), 1), 0.0)
     extent = max(float(np.abs(offset).max(initial=0.0)), 1.0)
     one, none = np.ones(len(offset)), np.zeros(len(offset))
     return {
@@ -101,7 +102,7 @@ def _ellipsoid_fields(part: Part, geometry: Geometry, marks: IntArray) -> Fields
     assert isinstance(frame, EllipsoidFrame)
     spatial = geometry.spatial[marks]
     if np.isnan(spatial[:, :2]).any():
-        return _local_fields(np.column_stack([np.zeros((len(marks), 2)), spatial[:, 2]]))
+        return _local_fields(np.column_stack([np.full((len(marks), 2), np.nan), spatial[:, 2]]))
     position, axes = frame.geocentric(spatial), local_axes(spatial[:, 0], spatial[:, 1])
     centre = position.mean(axis=0)
     middle = frame.from_geocentric(centre[None])

@@ -9,6 +9,7 @@ import pytest
 from numpy.testing import assert_allclose
 
 from adjust import NetworkError, adjust
+from adjust.adjusting import REBUILT
 from adjust.adjustment import Adjustment
 from adjust.arrays import FloatArray
 from adjust.datum import motions_of
@@ -164,3 +165,13 @@ def test_posterior_basis_without_degrees_of_freedom_knows_only_fixed_marks() -> 
     result = adjust(replace(job, statistics=replace(job.statistics, sd_basis="posterior")))
     assert result.standard_deviations[0, 2] == 0
     assert np.isnan(result.standard_deviations[1, 2])
+
+
+@pytest.mark.parametrize("wrong", [[-1.0, -1.0, 1.0], [0.0, 0.0, 1.0]], ids=["mirrored", "all in one place"])
+def test_start_coordinates_that_lead_nowhere_are_built_anew(wrong: list[float]) -> None:
+    job = total_station_job(fixed=("07", "B"))
+    given = job.marks.given.copy()
+    given[2:] *= wrong
+    result = adjust(replace(job, marks=replace(job.marks, given=given)))
+    assert REBUILT in result.notes
+    assert_allclose(result.coordinates, adjust(job).coordinates, rtol=0, atol=1e-6)  # m: the same minimum
