@@ -64,6 +64,13 @@ def test_every_mark_with_a_place_and_every_line_between_them(tmp_path):
     for line in lines:
         product = float(line["line_scale"]) * float(line["height_factor"])
         assert float(line["combined_factor"]) == pytest.approx(product, rel=0, abs=2e-10)
+    measured = [line for line in lines if line["measured_grid_m"]]
+    assert len(measured) > 20
+    for line in measured:
+        assert float(line["measured_ellipsoid_m"]) == pytest.approx(
+            float(line["ellipsoid_m"]), rel=0, abs=0.004
+        )  # m: 4 sd
+        assert float(line["measured_grid_m"]) == pytest.approx(float(line["grid_m"]), rel=0, abs=0.004)
     width = max(map(len, (tmp_path / "sheet" / "grid_sheet.txt").read_text("utf-8").splitlines()))
     assert width <= 110
 

@@ -90,6 +90,7 @@ def test_records_name_their_readings(reduced):
     assert all(record["source"].startswith("pointings.csv:") for record in records["directions_scatter"])
     assert all(abs(record["difference_mm"]) < 1e-6 for record in records["lines"])
     assert len(records["sections"]) == 8
+    assert records["both_ends"] == []  # the plan measures each line from one end
     assert len(records["horizons"]) == len({record["source"] for record in records["horizons"]}) > 0
 
 

@@ -45,6 +45,17 @@ def test_pairs_give_the_errors_of_the_instrument(result: Adjustment) -> None:
         assert np.mean(errors) / ARCSEC == pytest.approx(true, rel=0, abs=4 * scatter / np.sqrt(len(errors)))
 
 
+def test_distances_agree_from_both_ends(result: Adjustment) -> None:
+    """Ten lines between five pillars; differences within three of their sds, and no shift common to them."""
+    pointings = result.job.reduction.pointings
+    assert pointings is not None
+    ends = pointings.both_ends
+    off = ends.difference / np.sqrt(ends.difference_variance)
+    assert len(off) == 10
+    assert np.max(np.abs(off)) < 3
+    assert abs(np.mean(off)) < 3 / np.sqrt(10)
+
+
 def test_without_weather_the_global_test_fails(tmp_path: Path) -> None:
     shutil.copytree(DEMO, tmp_path / "job")
     place = tmp_path / "job" / "pointings.csv"

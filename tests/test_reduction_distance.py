@@ -65,3 +65,4 @@ def test_both_ends():
     np.testing.assert_allclose(ends.difference, -0.005, rtol=0, atol=1e-9)  # m
     np.testing.assert_allclose(ends.mean, 100.0055, rtol=0, atol=1e-9)  # m
     np.testing.assert_allclose(ends.variance, 0.5e-6, rtol=0, atol=1e-15)  # m²
+    np.testing.assert_allclose(ends.difference_variance, 2e-6, rtol=0, atol=1e-15)  # m²

@@ -20,7 +20,13 @@ from adjust.reductions.distance import slope_of
 from adjust.reductions.faces import LEFT, RIGHT
 from adjust.reductions.outcome import Means, PointingsReduced, Reduced
 from adjust.reductions.pointings import Pointings, carried, carried_by_target, faces_of
-from adjust.reductions.rounds import closed_horizons, reduce_directions, reduce_slopes, reduce_zeniths
+from adjust.reductions.rounds import (
+    closed_horizons,
+    compare_both_ends,
+    reduce_directions,
+    reduce_slopes,
+    reduce_zeniths,
+)
 
 STATED = {"circle": "direction_arcsec", "zenith": "zenith_arcsec", "slope": "distance_mm or distance_ppm"}
 """The keys of an instrument that give the sd of what each column makes."""
@@ -51,12 +57,14 @@ class PointingsBuilder:
         ):
             return (), None
         setups = len(self.setups.names)
+        zeniths, slopes = reduce_zeniths(book, setups), reduce_slopes(book, setups)
         reduced = PointingsReduced(
             self.setups.names,
             reduce_directions(book, setups),
-            reduce_zeniths(book, setups),
-            reduce_slopes(book, setups),
+            zeniths,
+            slopes,
             closed_horizons(book),
+            compare_both_ends(book, slopes.means, zeniths.means),
         )
         self._take_notes(book, reduced)
         return self._observations(book, reduced), reduced
@@ -87,10 +95,14 @@ class PointingsBuilder:
 
     def _slopes(self, used: IntArray) -> FloatArray:
         """Distances (rows,) corrected for air, scale and the target's constant."""
-        velocity = self.errors.velocity(used, *self._weather())
         constant = self.targets.constant[self._target()]
         scale = np.nan_to_num(self.errors.scale[used])
-        return slope_of(self.rows.numbers["slope"], np.where(np.isnan(velocity), 1.0, velocity), scale, constant)
+        return slope_of(self.rows.numbers["slope"], self._velocity(), scale, constant)
+
+    def _velocity(self) -> FloatArray:
+        """Factor (rows,) of the correction for the air, 1 where nothing is known of it."""
+        velocity = self.errors.velocity(self.instruments.of_rows(self.rows), *self._weather())
+        return np.where(np.isnan(velocity), 1.0, velocity)
 
     def _weather(self) -> tuple[FloatArray, FloatArray, FloatArray]:
         numbers, setup = self.rows.numbers, self.rows.indices["setup"]

@@ -51,12 +51,13 @@ def mark_to_mark(slope: FloatArray, zenith: FloatArray, instrument: FloatArray, 
 @dataclass(frozen=True)
 class BothEnds:
     """Lines measured from both ends: `marks` (lines, 2), weighted `mean`, `difference` there minus back, and the
-    `variance` of the mean, each (lines,)."""
+    variances of both, each (lines,)."""
 
     marks: IntArray
     mean: FloatArray
     difference: FloatArray
     variance: FloatArray
+    difference_variance: FloatArray
 
 
 def means_of_both_ends(at: IntArray, to: IntArray, value: FloatArray, variance: FloatArray) -> BothEnds:
@@ -77,4 +78,5 @@ def means_of_both_ends(at: IntArray, to: IntArray, value: FloatArray, variance: 
     both = (weight_there > 0) & (weight_back > 0)
     weight = (weight_there + weight_back)[both]
     mean = (there[both] * weight_there[both] + back[both] * weight_back[both]) / weight
-    return BothEnds(line[both], mean, (there - back)[both], 1.0 / weight)
+    apart = 1.0 / weight_there[both] + 1.0 / weight_back[both]
+    return BothEnds(line[both], mean, (there - back)[both], 1.0 / weight, apart)

@@ -11,6 +11,7 @@ from adjust.arrays import FloatArray, IntArray
 from adjust.frames.ellipsoid import EllipsoidFrame
 from adjust.observations.base import Columns
 from adjust.reductions.circle import FULL_TURN, wrapped
+from adjust.reductions.ellipsoid_distance import ellipsoid_distance, radius_in_azimuth
 
 if TYPE_CHECKING:
     from pyproj import Geod
@@ -135,6 +136,24 @@ def line_factors(frame: EllipsoidFrame, coordinates: FloatArray, marks: IntArray
             wrapped(plane_bearing - grid_bearing),
             wrapped(plane_bearing + np.pi - back_bearing),
         )
+
+
+def measured_on_ellipsoid(
+    frame: EllipsoidFrame, coordinates: FloatArray, marks: IntArray, slope: FloatArray, heights: FloatArray
+) -> FloatArray:
+    """Measured slope distances (rows,) between `marks` (rows, 2), reduced to the ellipsoid, metres.
+
+    `heights` (rows, 2) are those of instrument and target above the marks. See `ellipsoid_distance`; the radius is that
+    of the section at the line's middle.
+    """
+    from pyproj import Geod
+
+    geodesic = Geod(a=frame.ellipsoid.semi_major, f=frame.ellipsoid.flattening)
+    start, end = (coordinates[marks[:, role]] for role in (0, 1))
+    azimuth, back, _ = geodesic.inv(start[:, 0], start[:, 1], end[:, 0], end[:, 1], radians=True)
+    at_middle = azimuth + wrapped(np.asarray(back) + np.pi - azimuth) / 2.0
+    radius = radius_in_azimuth(frame.ellipsoid, (start[:, 1] + end[:, 1]) / 2.0, at_middle)
+    return ellipsoid_distance(slope, start[:, 2] + heights[:, 0], end[:, 2] + heights[:, 1], radius)
 
 
 def _bearing_on_map(frame: EllipsoidFrame, geodesic: Geod, points: FloatArray, azimuth: FloatArray) -> FloatArray:

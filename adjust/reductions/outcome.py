@@ -9,6 +9,7 @@ import numpy as np
 from adjust.arrays import FloatArray, IntArray
 from adjust.observations.base import Columns, Provenance
 from adjust.reductions.circle import group_sums
+from adjust.reductions.distance import BothEnds
 from adjust.reductions.level_book import ArithmeticCheck, Sections
 from adjust.reductions.spread import Spread, spread_from
 
@@ -95,13 +96,17 @@ class Horizons(Columns):
 
 @dataclass(frozen=True)
 class PointingsReduced:
-    """What came of the pointings. `setups` names the setups that the other columns number."""
+    """What came of the pointings. `setups` names the setups that the other columns number; `velocity` is what the first
+    reading of each slope distance was multiplied by for the air, 1 where nothing was known of it."""
 
     setups: tuple[str, ...]
     directions: Reduced
     zeniths: Reduced
     slopes: Reduced
     horizons: Horizons
+    velocity: FloatArray
+    both_ends: BothEnds
+    """Lines with slope and zenith angle measured at either end, from mark to mark."""
 
 
 @dataclass(frozen=True)

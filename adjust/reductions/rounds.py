@@ -7,6 +7,7 @@ import numpy as np
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.reductions import faces
 from adjust.reductions.circle import first_of_groups, group_sums, number_groups
+from adjust.reductions.distance import BothEnds, mark_to_mark, means_of_both_ends
 from adjust.reductions.faces import FaceMeans
 from adjust.reductions.horizon import horizon_closures
 from adjust.reductions.outcome import FaceErrors, Horizons, Means, Reduced, Scatter, no_errors
@@ -166,6 +167,21 @@ def closed_horizons(book: Pointings) -> Horizons:
         closures.misclosure,
         rows.provenance.take(ends).gathered(np.tile(np.arange(count), 2), count),
     )
+
+
+def compare_both_ends(book: Pointings, slopes: Means, zeniths: Means) -> BothEnds:
+    """Slope distances of lines measured from either end, reduced from mark to mark with the zenith angle of the same
+    sight. Sights without one, and lines measured from one end, are left out."""
+    rows = np.concatenate([slopes.row, zeniths.row])
+    sight, sights = number_groups(book.setup[rows], book.to[rows], *book.heights[rows].T)
+    of_slope, of_zenith = sight[: len(slopes)], sight[len(slopes) :]
+    zenith = np.full(sights, np.nan)
+    zenith[of_zenith] = zeniths.value
+    both = ~np.isnan(zenith[of_slope])
+    row, value = slopes.row[both], slopes.value[both]
+    reduced = mark_to_mark(value, zenith[of_slope[both]], *book.heights[row].T)
+    variance = slopes.sd[both] ** 2 + (book.proportional[row] * value) ** 2
+    return means_of_both_ends(book.at[row], book.to[row], reduced, variance)
 
 
 def _zenith_of_groups(rows: Pointings, group: IntArray, groups: int) -> FloatArray:

@@ -9,10 +9,17 @@ from pathlib import Path
 import numpy as np
 
 from adjust.adjustment import Adjustment
-from adjust.arrays import FloatArray
+from adjust.arrays import FloatArray, IntArray
 from adjust.errors import FieldDataError, Mistake
 from adjust.frames import EllipsoidFrame
-from adjust.reductions.grid_sheet import LineFactors, MarkFactors, line_factors, mark_factors
+from adjust.observations import SlopeDistances
+from adjust.reductions.grid_sheet import (
+    LineFactors,
+    MarkFactors,
+    line_factors,
+    mark_factors,
+    measured_on_ellipsoid,
+)
 from adjust.reports.layout import Column, paragraph, shown_of, table, title
 from adjust.reports.publish import publish
 from adjust.units import ARCSEC, format_dms
@@ -74,11 +81,28 @@ class GridSheet:
         self.heights = coordinates[self.marks, 2]
         self.mark_factors: MarkFactors = mark_factors(frame, coordinates[self.marks])
         self.line_factors: LineFactors = line_factors(frame, coordinates, lines)
+        self.measured = measured_lengths(adjustment, frame, lines)
 
     @property
     def conformal(self) -> bool:
         """Whether the map keeps angles, so that a point has one scale factor."""
         return bool(np.all(self.mark_factors.largest_shear < CONFORMAL))
+
+
+def measured_lengths(adjustment: Adjustment, frame: EllipsoidFrame, lines: IntArray) -> FloatArray:
+    """Mean slope distance measured along each line (lines,), reduced to the ellipsoid; NaN where there is none."""
+    total, count = np.zeros(len(lines)), np.zeros(len(lines))
+    place = {frozenset(line): row for row, line in enumerate(lines.tolist())}
+    for rows in adjustment.job.observations:
+        if isinstance(rows, SlopeDistances):
+            along = np.array([place.get(frozenset(sight), -1) for sight in rows.marks.tolist()], dtype=np.int64)
+            chosen = rows.take(along >= 0)
+            reduced = measured_on_ellipsoid(
+                frame, adjustment.geometry.spatial, chosen.marks, chosen.observed[:, 0], chosen.heights
+            )
+            np.add.at(total, along[along >= 0], reduced)
+            np.add.at(count, along[along >= 0], 1.0)
+    return np.where(count > 0, total / np.maximum(count, 1.0), np.nan)
 
 
 def write_grid_sheet(adjustment: Adjustment, folder: Path) -> None:
@@ -118,6 +142,8 @@ def line_table(sheet: GridSheet) -> dict[str, Sequence[object]]:
         "ground_m": _digits(factors.ground, 4),
         "ellipsoid_m": _digits(factors.ellipsoid, 4),
         "grid_m": _digits(factors.grid, 4),
+        "measured_ellipsoid_m": _digits(sheet.measured, 4),
+        "measured_grid_m": _digits(sheet.measured * factors.line_scale, 4),
         "line_scale": _digits(factors.line_scale, 10),
         "height_factor": _digits(factors.height_factor, 10),
         "combined_factor": _digits(factors.combined, 10),
@@ -180,8 +206,9 @@ def _line_rows(sheet: GridSheet) -> list[tuple[str, ...]]:
 
 
 def _digits(values: FloatArray, decimals: int) -> list[str]:
-    """Numbers with so many decimals; what rounds to nothing has no sign."""
-    return [f"{value:.{decimals}f}" for value in (np.round(values, decimals) + 0.0).tolist()]
+    """Numbers with so many decimals, "" for NaN; what rounds to nothing has no sign."""
+    rounded = (np.round(values, decimals) + 0.0).tolist()
+    return ["" if value != value else f"{value:.{decimals}f}" for value in rounded]
 
 
 def _angles(values: FloatArray, decimals: int) -> list[str]:

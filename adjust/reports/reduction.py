@@ -42,6 +42,7 @@ def reduction_records(job: Job) -> dict[str, list[Record]]:
     for key, kind in (("collimations", "directions"), ("indices", "zeniths")):
         errors = None if pointings is None else getattr(pointings, kind).errors
         records[key] = [] if errors is None or pointings is None else [*_pairs(pointings, errors, names)]
+    records["both_ends"] = [] if pointings is None else [*both_ends_records(pointings, names)]
     records["horizons"] = [] if pointings is None else [*_horizons(pointings, names)]
     for kind in KINDS:
         reduced = None if pointings is None else getattr(pointings, kind)
@@ -125,6 +126,19 @@ def _horizons(pointings: PointingsReduced, names: tuple[str, ...]) -> Iterator[R
             "to": names[horizons.mark[row]],
             "face": FACE[horizons.face[row]],
             "misclosure_arcsec": _figure(horizons.misclosure[row] / ARCSEC),
+        }
+
+
+def both_ends_records(pointings: PointingsReduced, names: tuple[str, ...]) -> Iterator[Record]:
+    """Distances measured from either end of a line, mark to mark, and how far apart they are beside their sds."""
+    ends = pointings.both_ends
+    for row in range(len(ends.mean)):
+        yield {
+            "from": names[ends.marks[row, 0]],
+            "to": names[ends.marks[row, 1]],
+            "mean_m": _figure(ends.mean[row]),
+            "difference_mm": _figure(ends.difference[row] * 1e3),
+            "sd_difference_mm": _figure(np.sqrt(ends.difference_variance[row]) * 1e3),
         }
 
 

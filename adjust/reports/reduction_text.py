@@ -10,6 +10,7 @@ from adjust.reports.layout import Column, facts, paragraph, shown_of, table, tit
 from adjust.reports.records import Record
 from adjust.reports.reduction import (
     KINDS,
+    both_ends_records,
     line_records,
     reduction_records,
     section_records,
@@ -37,7 +38,7 @@ def reduction_text(job: Job, most: int = LISTED) -> list[str]:
     lines = [*paragraph(heading), "", *paragraph(reduction_verdict(job))]
     if pointings is not None:
         lines += [*title("Pointings"), *facts(spread_facts(job, pointings)), *_setups(job, pointings, most)]
-        lines += _horizons(job, most)
+        lines += [*_both_ends(job, pointings, most), *_horizons(job, most)]
     if levels is not None:
         lines += [*_lines(levels, most), *_sections(job, levels, most)]
     if job.notes:
@@ -139,6 +140,34 @@ def _marked(spread: Record) -> str:
     if spread["factor"] is None:
         return ""
     return f"{spread['factor']:.2f}{' ' if spread['passed'] else '!'}"
+
+
+def _both_ends(job: Job, pointings: PointingsReduced, most: int) -> list[str]:
+    records = [*both_ends_records(pointings, job.marks.names)]
+    if not records:
+        return []
+    columns = (
+        Column("from", text=True),
+        Column("to", text=True),
+        Column("mean", "m"),
+        Column("there − back", "mm"),
+        Column("sd", "mm"),
+    )
+    rows = [
+        (
+            record["from"],
+            record["to"],
+            decimals(record["mean_m"], 4),
+            decimals(record["difference_mm"], 2, signed=True),
+            decimals(record["sd_difference_mm"], 2),
+        )
+        for record in records[:most]
+    ]
+    return [
+        *title("Distances from both ends, mark to mark"),
+        *table(columns, rows),
+        *shown_of(len(rows), len(records), "the first", "reduction.json"),
+    ]
 
 
 def _horizons(job: Job, most: int) -> list[str]:
