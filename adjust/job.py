@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass, field
 from enum import IntEnum
 from functools import cached_property
@@ -93,6 +94,8 @@ class Job:
     geoid_grid: GeoidGrid | None = None
     """Gives geoid heights at the marks' present positions, in place of `marks.geoid`."""
     refraction_coefficient: float = 0.13
+    target_constants: Mapping[str, float] = field(default_factory=dict)
+    """Metres added to distances to each target that the job file names."""
     left_out: tuple[Observations, ...] = ()
     """Rows with `use = no`: kept in the books, not adjusted."""
     reduction: Reduction = field(default_factory=Reduction)

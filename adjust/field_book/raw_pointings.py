@@ -65,6 +65,7 @@ class PointingsBuilder:
             slopes,
             closed_horizons(book),
             compare_both_ends(book, slopes.means, zeniths.means),
+            self._velocity()[slopes.means.row],
         )
         self._take_notes(book, reduced)
         return self._observations(book, reduced), reduced

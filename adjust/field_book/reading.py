@@ -13,6 +13,7 @@ from adjust.field_book.book import Book, BookReader
 from adjust.field_book.builders import Builder, weighted_control
 from adjust.field_book.folder import Folder, open_folder
 from adjust.field_book.geoid_heights import check_geoid, marks_that_need_geoid
+from adjust.field_book.instruments import MILLIMETRE
 from adjust.field_book.job_file import JobFile, JobFileReader
 from adjust.field_book.marks import MarkReader
 from adjust.field_book.mistakes import Likeness, Mistakes
@@ -88,6 +89,7 @@ class JobReader:
             orthometric=orthometric,
             geoid_grid=grid,
             refraction_coefficient=self.job_file.frame.refraction_coefficient,
+            target_constants={name: target.constant_mm * MILLIMETRE for name, target in self.job_file.targets.items()},
             left_out=left_out,
             notes=tuple(self.notes),
             reduction=self.raw.reduction,

@@ -96,17 +96,17 @@ class Horizons(Columns):
 
 @dataclass(frozen=True)
 class PointingsReduced:
-    """What came of the pointings. `setups` names the setups that the other columns number; `velocity` is what the first
-    reading of each slope distance was multiplied by for the air, 1 where nothing was known of it."""
+    """What came of the pointings. `setups` names the setups that the other columns number."""
 
     setups: tuple[str, ...]
     directions: Reduced
     zeniths: Reduced
     slopes: Reduced
     horizons: Horizons
-    velocity: FloatArray
     both_ends: BothEnds
     """Lines with slope and zenith angle measured at either end, from mark to mark."""
+    velocity: FloatArray
+    """(slopes,): what the first reading of each was multiplied by for the air, 1 where nothing was known of it."""
 
 
 @dataclass(frozen=True)
