@@ -57,10 +57,10 @@ class Lines:
         self.zeniths, self.zenith_rows = observed.rows_of(ZenithAngles)
         self.zenith = self._zeniths_from_normal()
         """Zenith angles (rows,) counted from the frame's own vertical, radians."""
+        self.plane = isinstance(job.frame, PlaneFrame)
         curved = not isinstance(job.frame, PlaneFrame) or job.frame.earth_curvature
+        self.refraction = job.refraction_coefficient
         self.curvature = 1.0 / (2.0 * EARTH_RADIUS) if curved else 0.0
-        self.fall = (1.0 - job.refraction_coefficient) * self.curvature
-        """Share of s² by which a sighted point stands higher than a straight horizontal ray would have it."""
 
     def _zeniths_from_normal(self) -> FloatArray:
         """Zenith angles freed of the deflection of the vertical, where the marks' places are known."""
@@ -80,8 +80,8 @@ class Lines:
     def horizontal(self) -> Measured:
         """Every distance (rows,) reduced to the horizontal; NaN where nothing tells a slope's inclination.
 
-        By the zenith angle of the same sight, of the sight back, else by heights known so far: s = D sin z′ with
-        cot z′ = cot z + (1 − k) D / 2R, the zenith angle as a chord would have it; or s = √(D² − Δu²).
+        By the zenith angle of the same sight, of the sight back, else by heights known so far: s = D sin z′, with z′
+        the zenith angle as a chord would have it; or s = √(D² − Δu²).
         """
         parts = []
         if self.horizontals:
@@ -99,18 +99,35 @@ class Lines:
     def _levelled(self, slopes: SlopeDistances) -> FloatArray:
         slope, heights = slopes.observed[:, 0], slopes.heights
         forward, back = (self._zenith_of(pairs) for pairs in (slopes.marks, slopes.marks[:, ::-1]))
-        by_zenith = slope * np.sin(self._chord_zenith(forward[:, 0], slope))
-        above_mark = slope * np.cos(self._chord_zenith(back[:, 0], slope)) + back[:, 1] - back[:, 2]
+        by_zenith = self._level_of(forward[:, 0], slope)
+        back_chord = self._chord_zenith(back[:, 0], self._level_of(back[:, 0], slope))
+        above_mark = slope * np.cos(back_chord) + back[:, 1] - back[:, 2]
         by_return = _without(slope, heights[:, 1] - heights[:, 0] - above_mark)
         known = self.observed.geometry.spatial[:, 2]
         rise = known[slopes.marks[:, 1]] - known[slopes.marks[:, 0]]
         by_heights = _without(slope, rise + heights[:, 1] - heights[:, 0])
-        return np.where(np.isfinite(by_zenith), by_zenith, np.where(np.isfinite(by_return), by_return, by_heights))
+        level = np.where(np.isfinite(by_zenith), by_zenith, np.where(np.isfinite(by_return), by_return, by_heights))
+        if self.plane:
+            return level
+        # verticals spread upwards: the sight runs above the marks by the mean height of instrument and target
+        return level * (1.0 - heights.mean(axis=1) / EARTH_RADIUS)
 
-    def _chord_zenith(self, zenith: FloatArray, slope: FloatArray) -> FloatArray:
-        """z′ (rows,) of the contract's zenith angles, radians."""
-        with np.errstate(divide="ignore"):
-            return np.arctan2(1.0, 1.0 / np.tan(zenith) + self.fall * slope)
+    def _chord_zenith(self, zenith: FloatArray, level: FloatArray) -> FloatArray:
+        """Zenith angles (rows,) as a chord would have them at its middle, radians, of the contract's ones over a level
+        distance s: in a plane cot z′ = cot z + (1 − k) s / 2R, on the ellipsoid z′ = z + k D / 2R − s / 2R."""
+        bending = self.refraction * self.curvature
+        if self.plane:
+            with np.errstate(divide="ignore"):
+                return np.arctan2(1.0, 1.0 / np.tan(zenith) + (self.curvature - bending) * level)
+        chord: FloatArray = zenith + bending * level / np.sin(zenith) - self.curvature * level
+        return chord
+
+    def _level_of(self, zenith: FloatArray, slope: FloatArray) -> FloatArray:
+        """Level distances (rows,) of slopes with their zenith angles; the second step leaves nothing over."""
+        level = slope * np.sin(zenith)
+        for _ in range(2):
+            level = slope * np.sin(self._chord_zenith(zenith, level))
+        return level
 
     def _zenith_of(self, pairs: IntArray) -> FloatArray:
         """Zenith angle, instrument and target height (rows, 3) of the first row that has a pair; NaN where none has."""
@@ -144,14 +161,14 @@ class Lines:
 
     @cached_property
     def rises(self) -> Differences:
-        """Trigonometric rises above the plane or the ellipsoid: s cot z + (1 − k) s²/2R + instrument height − target
-        height, of every zenith angle whose distance is known."""
+        """Trigonometric rises above the plane or the ellipsoid: s cot z′ + instrument height − target height, of every
+        zenith angle whose distance is known."""
         if self.zeniths is None:
             return no_differences(1)
         zenith, heights = self.zenith, self.zeniths.heights
         level = self.length_of(self.zeniths.marks)
         with np.errstate(divide="ignore"):
-            rise = level / np.tan(zenith) + self.fall * level**2 + heights[:, 0] - heights[:, 1]
+            rise = level / np.tan(self._chord_zenith(zenith, level)) + heights[:, 0] - heights[:, 1]
             variance = (level / np.sin(zenith) ** 2 * self.observed.sd[self.zenith_rows]) ** 2
             variance += self._variance_of(self.zeniths.marks) / np.tan(zenith) ** 2
         known = np.flatnonzero(np.isfinite(rise))
