@@ -9,17 +9,10 @@ import numpy as np
 
 from adjust.arrays import FloatArray
 from adjust.blunders.hypothesis import Hypothesis
+from adjust.field_book.written import Cell
 from adjust.frames import Geometry
 from adjust.job import Job
 from adjust.observations import Observations
-
-
-@dataclass(frozen=True)
-class Cell:
-    """One cell of the field book: the column's title with its unit, `direction_dms`, and what stands in it."""
-
-    title: str
-    text: str
 
 
 @dataclass(frozen=True)
@@ -36,7 +29,9 @@ class Explanation:
     """A mistake that would have turned the right entry into the one that stands in the book."""
 
     mistake: str
-    """In words, with what is particular to the case: `digits 6 and 5 exchanged`."""
+    """In words, with what is particular to the case: `digits 6 and 5 exchanged: 187.564 in place of 187.654`."""
+    names: tuple[str, ...]
+    """Its name in the table of priors, `digits exchanged`; several where they come to the same value."""
     corrected_value: FloatArray | None
     """(components,) what the observation would be, m or rad; None where its value stays and another entry changes."""
     corrections: tuple[Correction, ...]
@@ -54,8 +49,9 @@ class Context:
     `geometry` and `orientations` are adjusted without this suspect and without the others that were found with it.
     `estimated_error` (q,) is observed minus true by the network, with its `error_covariance` (q, q): the variance of
     the observation itself and that of what the network expects. `cells` are those of the suspect's line in the book
-    by the plain name of their column (`slope`, `to`, `target_height`), or of the first line of a group; where the job
-    was read from no file, they are written as a book would.
+    by the plain name of their column (`slope`, `to`, `target_height`), of the first line of a group, or of the mark's
+    line for its control; where the job was read from no file, they are written as a book would. `further_cells` are
+    those of the lines after the first that a mean was made of. `adjust.blunders.cells.cells_of` finds both.
     """
 
     job: Job
@@ -69,6 +65,7 @@ class Context:
     """Bound on a misfit: what passes it is not explained."""
     fit_of: Callable[[Observations], FloatArray]
     """See `fit`."""
+    further_cells: tuple[Mapping[str, Cell], ...] = ()
 
     @property
     def observations(self) -> Observations:

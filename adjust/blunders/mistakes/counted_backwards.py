@@ -1,0 +1,32 @@
+"""A circle counted against the clock, a zenith angle counted from the horizon or from below."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from adjust.blunders.mistakes.interface import Candidates
+from adjust.blunders.mistakes.suspect import Suspect
+
+
+class CountedBackwards:
+    """360° − the direction; 180° − the zenith angle, or 90° − an elevation booked for it."""
+
+    name = "circle counted otherwise"
+
+    def candidates(self, suspect: Suspect) -> Candidates | None:
+        """The value as the usual circle would show it."""
+        if suspect.kind in ("direction", "azimuth"):
+            others = {"360° − the value, the circle counted backwards": (2 * np.pi, -1.0)}
+        elif suspect.kind == "zenith":
+            others = {
+                "180° − the value, counted from below": (np.pi, -1.0),
+                "90° − the value, an elevation booked as a zenith angle": (np.pi / 2, -1.0),
+                "90° + the value, a depression booked as a zenith angle": (np.pi / 2, 1.0),
+            }
+        else:
+            return None
+        whats = list(others)
+        start, sense = np.array([*others.values()]).T
+        return Candidates.together(
+            [entry.valued(suspect.in_range(start + sense * entry.value), whats.__getitem__) for entry in suspect.values]
+        )
