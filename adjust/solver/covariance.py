@@ -12,13 +12,12 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
-from adjust.solver.layout import Batch, Layout, Run
+from adjust.solver.layout import Layout
+from adjust.solver.row_variances import LOSS, careful_row_variances, quick_row_variances
 from adjust.solver.workers import one_blas_thread, side_by_side
 
 if TYPE_CHECKING:
     from adjust.solver.factor import Factor
-
-WIDE = 24  # elements: a row with more is multiplied by the whole front, one with fewer picks its elements of C
 
 
 @dataclass(frozen=True)
@@ -33,7 +32,8 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
     """Work down the tree and take from each front what was asked of it. Raises ValueError for a pair no front holds."""
     layout = factor.layout
     wanted = find_pairs(layout, first, second)
-    entries, variances = np.empty(len(first)), np.zeros(factor.matrix.shape[0])
+    entries = np.empty(len(first))
+    variances, rounding = np.zeros((2, factor.matrix.shape[0]))
     held: dict[int, FloatArray] = {}
 
     def work(number: int) -> None:
@@ -43,11 +43,16 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
         pairs = wanted.of_batch(number)
         entries[wanted.order[pairs]] = covariance[wanted.slot[pairs], wanted.row[pairs], wanted.column[pairs]]
         for run in layout.batches[number].runs:
-            variances[layout.rows[run.rows]] = row_variances(layout.batches[number], run, factor.elements, covariance)
+            rows = layout.rows[run.rows]
+            variances[rows], rounding[rows] = quick_row_variances(
+                layout.batches[number], run, factor.elements, covariance
+            )
 
     with one_blas_thread() as workers:
         for level in reversed(layout.shapes.levels):
             side_by_side(work, level, workers)
+        doubtful = np.flatnonzero(rounding > LOSS)
+        variances[doubtful] = careful_row_variances(factor, doubtful)
     return SelectedCovariance(entries * factor.scale[first] * factor.scale[second], variances)
 
 
@@ -100,20 +105,3 @@ def front_covariance(factor: Factor, number: int, held: dict[int, FloatArray]) -
     covariance[:, :own, own:] = -cross
     covariance[:, own:, :own] = -cross.transpose(0, 2, 1)
     return covariance
-
-
-def row_variances(batch: Batch, run: Run, elements: FloatArray, covariance: FloatArray) -> FloatArray:
-    """a C aᵀ for the rows of one run of a batch."""
-    count, size, _ = covariance.shape
-    first = batch.elements_here.start
-    targets = batch.targets[run.elements.start - first : run.elements.stop - first].reshape(-1, run.width)
-    row, column = np.divmod(targets, size + 1)
-    values = elements[run.elements].reshape(-1, run.width)
-    if run.width > WIDE:
-        dense = np.zeros((count * batch.rows, size))
-        dense[row, column] = values
-        dense = dense.reshape(count, batch.rows, size)
-        return np.asarray(np.einsum("frc,frc->fr", dense @ covariance, dense).ravel()[row[:, 0]])
-    base = row[:, :1] // batch.rows * size
-    picked = covariance.ravel()[((base + column) * size)[:, :, None] + column[:, None, :]]
-    return np.asarray(np.einsum("ri,rij,rj->r", values, picked, values))
