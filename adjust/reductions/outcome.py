@@ -60,12 +60,14 @@ class Scatter(Columns):
 
 @dataclass(frozen=True)
 class Reduced:
-    """One kind of observation of all setups; `redundancy` (setups,) counts what the readings have over the means."""
+    """One kind of observation of all setups; `redundancy` (setups,) counts what the readings have over the means,
+    `stated` (setups,) is the instrument's sd of one of them, NaN for a setup without."""
 
     means: Means
     errors: FaceErrors
     scatter: Scatter
     redundancy: IntArray
+    stated: FloatArray
     uncorrected: int = 0
     """Groups read on one face only of an instrument whose error is not known."""
 

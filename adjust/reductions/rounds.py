@@ -53,6 +53,7 @@ def reduce_directions(book: Pointings, setups: int) -> Reduced:
         FaceErrors(rows.setup[first], rows.to[first], collimation, provenance).take(~np.isnan(collimation)),
         Scatter(rows.setup[first], rows.to[first], stations.residual, np.sqrt(variance), provenance),
         stations.redundancy,
+        _of_setups(rows.direction_sd, rows.setup, setups),
         _uncorrected(means, known),
     )
 
@@ -104,7 +105,8 @@ def reduce_zeniths(book: Pointings, setups: int) -> Reduced:
     reduced = _means_of_sights(rows, chosen, sight, group, value, variance, setups)
     errors = FaceErrors(rows.setup[first], rows.to[first], means.error, rows.provenance.gathered(group, groups))
     errors = errors.take(~means.single)
-    return Reduced(reduced.means, errors, reduced.scatter, reduced.redundancy, _uncorrected(means, known))
+    stated = _of_setups(rows.zenith_sd, rows.setup, setups)
+    return Reduced(reduced.means, errors, reduced.scatter, reduced.redundancy, stated, _uncorrected(means, known))
 
 
 def reduce_slopes(book: Pointings, setups: int) -> Reduced:
@@ -125,7 +127,7 @@ def reduce_slopes(book: Pointings, setups: int) -> Reduced:
     means = Means(reduced.means.row, reduced.means.value, constant, reduced.means.part, reduced.means.provenance)
     sd = np.where(rows.distance_sd > 0, rows.distance_sd, rows.proportional * rows.slope)
     scatter = Scatter(rows.setup, rows.to, reduced.scatter.residual, sd, rows.provenance)
-    return Reduced(means, reduced.errors, scatter, reduced.redundancy)
+    return Reduced(means, reduced.errors, scatter, reduced.redundancy, _of_setups(sd, rows.setup, setups))
 
 
 def _means_of_sights(
@@ -150,6 +152,7 @@ def _means_of_sights(
         no_errors(provenance),
         Scatter(setup, rows.to[first], repeats.residual, np.sqrt(variance), provenance.gathered(group, len(value))),
         redundancy,
+        np.full(setups, np.nan),
     )
 
 
@@ -199,6 +202,13 @@ def _known_errors(stated: FloatArray, found: FloatArray, setup: IntArray, setups
     with np.errstate(invalid="ignore"):
         mean = group_sums(np.where(paired, found, 0.0), setup, setups) / np.bincount(setup[paired], minlength=setups)
     return np.where(np.isnan(stated), mean[setup], stated)
+
+
+def _of_setups(values: FloatArray, setup: IntArray, setups: int) -> FloatArray:
+    """A value (rows,) that is the same in all rows of a setup, by setup; NaN where it has no rows."""
+    found = np.full(setups, np.nan)
+    found[setup] = values
+    return found
 
 
 def _uncorrected(means: FaceMeans, known: FloatArray) -> int:

@@ -82,7 +82,9 @@ def setup_records(pointings: PointingsReduced, confidence: float) -> Iterator[Re
             record[f"{name}_pairs"] = int(pairs[setup])
         record["worst_closure_arcsec"] = _figure(closure[setup] / ARCSEC)
         for kind in KINDS:
-            record[kind] = _spread(getattr(pointings, kind).spread(confidence, setup))
+            reduced: Reduced = getattr(pointings, kind)
+            spread, (ending, unit) = reduced.spread(confidence, setup), UNITS[kind]
+            record[kind] = _spread(spread) | {f"sd_{ending}": _figure(spread.factor * reduced.stated[setup] / unit)}
         yield record
 
 

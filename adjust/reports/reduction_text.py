@@ -105,9 +105,9 @@ def _setups(job: Job, pointings: PointingsReduced, most: int) -> list[str]:
         Column("index", "″"),
         Column("scatter", "″"),
         Column("closure", "″"),
-        Column("directions", "× sd"),
-        Column("zeniths", "× sd"),
-        Column("slopes", "× sd"),
+        Column("directions", "″"),
+        Column("zeniths", "″"),
+        Column("slopes", "mm"),
     )
     records = [*setup_records(pointings, job.statistics.confidence)]
     rows = [
@@ -119,13 +119,14 @@ def _setups(job: Job, pointings: PointingsReduced, most: int) -> list[str]:
             decimals(record["index_arcsec"], 1, signed=True),
             decimals(record["index_sd_arcsec"], 1),
             decimals(record["worst_closure_arcsec"], 1),
-            *(_marked(record[kind]) for kind in KINDS),
+            *(_marked(record[kind], ending) for kind, ending in zip(KINDS, ("arcsec", "arcsec", "mm"), strict=True)),
         )
         for record in records[:most]
     ]
     explained = paragraph(
         "Of each setup: mean collimation and index error over its pairs of faces and their scatter, the worst closure "
-        "of its half-rounds, and the spread of its rounds as a multiple of the sd stated (! outside the bounds of χ²)."
+        "of its half-rounds, and the sds that its rounds show of a direction and a zenith angle on both faces and of a "
+        "distance (! outside the bounds that χ² sets about the sd stated)."
     )
     return [
         "",
@@ -136,10 +137,10 @@ def _setups(job: Job, pointings: PointingsReduced, most: int) -> list[str]:
     ]
 
 
-def _marked(spread: Record) -> str:
-    if spread["factor"] is None:
-        return ""
-    return f"{spread['factor']:.2f}{' ' if spread['passed'] else '!'}"
+def _marked(spread: Record, ending: str) -> str:
+    """The sd found, and whether it is outside the bounds of the one stated."""
+    sd = spread[f"sd_{ending}"]
+    return "" if sd is None else f"{sd:.2f}{' ' if spread['passed'] else '!'}"
 
 
 def _both_ends(job: Job, pointings: PointingsReduced, most: int) -> list[str]:
