@@ -10,6 +10,7 @@ from adjust.network.deciding import grow_decidedly
 from adjust.network.evidence import loci_of
 from adjust.network.figure import Figure
 from adjust.network.overlay import host_of_two, overlay, shared_marks
+from adjust.network.searching import search
 from adjust.network.seeds import figure_from_line, figure_from_round, lines_in_order, rounds_in_order
 from adjust.network.survey import Survey
 
@@ -22,7 +23,8 @@ class Assembly:
 
     `known` marks have points on the working plane; `wanted` marks need one. In a `free` network, without control, the
     largest figure may lie and turn as it was drawn. `world` holds what was found, `figures` what could not be laid
-    over it, `notes` what was decided for the surveyor.
+    over it, `notes` what was decided for the surveyor,
+    `found_by_search` the marks that no construction reached.
     """
 
     def __init__(self, survey: Survey, known: dict[int, complex], wanted: set[int], *, free: bool) -> None:
@@ -32,10 +34,12 @@ class Assembly:
         self.world.place_all(known.items())
         self.figures: dict[int, Figure] = {}
         self.notes: list[str] = []
+        self.found_by_search: list[int] = []
         self._homes: dict[int, set[int]] = {}
         self._born = 0
         self._looked_at = 0
         self._open = sorted(wanted)
+        self._last_resorts = (self._turn_hinges, self._decide, self._draw_freely, self._search)
 
     def missing(self) -> list[int]:
         """Wanted marks that have no point yet."""
@@ -51,7 +55,7 @@ class Assembly:
         grow_decidedly(self.world)
         for figure in self._new_figures():
             self._fit_in(figure)
-        while not self._complete() and (self._turn_hinges() or self._decide() or self._draw_freely()):
+        while not self._complete() and any(step() for step in self._last_resorts):
             pass
 
     def _new_figures(self) -> Iterator[Figure]:
@@ -181,6 +185,17 @@ class Assembly:
         self.world.absorb(figure)
         grow_decidedly(self.world)
         self._look_again()
+        return True
+
+    def _search(self) -> bool:
+        """Search for the marks that are left by fitting them all at once; whether they were found."""
+        missing = self.missing()
+        found = search(self.world, missing)
+        if found is None:
+            return False
+        self.found_by_search = missing
+        self.world.place_all(found.items())
+        grow_decidedly(self.world)
         return True
 
     def _note_drawing(self, figure: Figure, placed: bool) -> None:

@@ -27,7 +27,7 @@ def polar_point(figure: Figure, mark: int) -> complex | None:
 
 def free_station_point(figure: Figure, mark: int) -> complex | None:
     """The mark from a round on it and distances to two or more of the targets."""
-    if not figure.scaled:
+    if not (figure.scaled and figure.handed):
         return None
     distances = figure.survey.distances[mark]
     for number in figure.survey.rounds[mark]:

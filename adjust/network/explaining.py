@@ -41,7 +41,7 @@ def _plan_reason(job: Job, assembly: Assembly, mark: int) -> str:
         )
     if _crosses_flatly(world, mark):
         return (
-            "the sights that would fix it lie on one line or nearly so (they cross at less than half a degree); "
+            "the sights that lead there lie on one line or nearly so (they cross at less than half a degree); "
             f"observe another mark or a distance, {ROUGHLY}"
         )
     figures = [figure for figure in assembly.figures.values() if mark in figure.points]
@@ -54,14 +54,14 @@ def _plan_reason(job: Job, assembly: Assembly, mark: int) -> str:
     hinges = names_of(job, shared_marks(figure, world))
     if len(hinges) > 1:
         return (
-            f"fixed by distances among each other and at {listed(hinges)}, but could as well be the mirror image; "
-            f"observe a direction or angle, fix or weight one more of them, {ROUGHLY}"
+            f"a figure of distances, tied to the rest at {listed(hinges)}, that could as well be its mirror image; "
+            f"observe a direction or an angle, fix or weight one more of its marks, {ROUGHLY}"
         )
     if not hinges:
-        return f"fixed among each other, but not tied to the control; fix or weight two of them, {ROUGHLY}"
+        return f"a figure of its own, not tied to the control; fix or weight two of its marks, {ROUGHLY}"
     return (
-        f"fixed among each other, but tied to the rest only at {listed(hinges)}, about which they can turn or grow; "
-        f"observe an azimuth or another sight across, fix or weight one more of them, {ROUGHLY}"
+        f"a figure of its own, tied to the rest only at {listed(hinges)}, about which it can turn or grow; "
+        f"observe an azimuth or another sight across, fix or weight one more of its marks, {ROUGHLY}"
     )
 
 

@@ -197,14 +197,16 @@ class Figure:
 
     def _follow_orientation(self, number: int) -> None:
         """A round is oriented: its rays count, and those who look back along them are oriented too."""
-        survey, orientation = self.survey, self.orientations[number]
+        survey = self.survey
         station = survey.station[number]
         self.call_up(station)
         for target, reading in survey.sights[number].items():
             self.call_up(target)
             for back in survey.rounds[target]:
                 if station in survey.sights[back]:
-                    self.orient(back, orientation + reading + math.pi - survey.sights[back][station])
+                    # read anew each time: orienting a round that counts from north turns the whole figure
+                    forward = self.orientations[number] + reading
+                    self.orient(back, forward + math.pi - survey.sights[back][station])
 
     def _orient_by_points(self, number: int) -> None:
         """Orientation from the placed targets: the median, or the one to the farther of two."""

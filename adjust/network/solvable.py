@@ -77,7 +77,7 @@ def _check_parts(complaint: _Complaint, structure: Structure, failing: IntArray)
             complaint.add(part.marks, _plan_reason(part, structure))
     for part in heights:
         if part.missing:
-            complaint.add(part.marks, f"nothing fixes their heights; {CURES['height']}, {FREE_NETWORK}")
+            complaint.add(part.marks, f"no height here is fixed; {CURES['height']}, {FREE_NETWORK}")
 
 
 def _check_one_piece(complaint: _Complaint, parts: tuple[Part, ...], where: str) -> None:
@@ -94,8 +94,8 @@ def _check_one_piece(complaint: _Complaint, parts: tuple[Part, ...], where: str)
 def _plan_reason(part: Part, structure: Structure) -> str:
     unfixed = [_named(name) for name in ("position", "rotation", "scale") if _lacks(part, name)]
     cures = [CURES[name] for name in ("position", "rotation", "scale") if _lacks(part, name)]
-    reason = f"nothing fixes their {_enumerated(unfixed)}; {'; '.join(dict.fromkeys(cures))}"
-    return reason if np.any(structure.held_plan) else f"{reason}; {FREE_NETWORK}"
+    reason = f"nothing here fixes the {_enumerated(unfixed)}; {'; '.join(dict.fromkeys(cures))}"
+    return reason if np.any(structure.held_plan) else f"{reason}, {FREE_NETWORK}"
 
 
 def _lacks(part: Part, name: str) -> bool:
@@ -114,4 +114,4 @@ def _hinge_reason(job: Job, hinge: Hinge) -> str:
     motions = [word for word, moves in (("turn about", hinge.turns), ("grow or shrink from", hinge.grows)) if moves]
     cures = [CURES[name] for name, moves in (("rotation", hinge.turns), ("scale", hinge.grows)) if moves]
     name = job.marks.names[hinge.mark]
-    return f"can {' and '.join(motions)} mark {name}, the only one that ties them to control; {'; '.join(cures)}"
+    return f"can {' and '.join(motions)} mark {name}, the only tie to control; {'; '.join(cures)}"

@@ -15,6 +15,7 @@ from adjust.network.estimate import Estimate, given_estimate
 from adjust.network.explaining import height_error, plan_error
 from adjust.network.heights import drawn_heights, with_heights
 from adjust.network.plan_relations import plan_relations
+from adjust.network.searching import BEGINNINGS
 from adjust.network.sight_lines import SightLines
 from adjust.network.survey import Survey
 from adjust.network.wording import listed, names_of
@@ -63,30 +64,42 @@ class _Finder:
 
     def estimate(self) -> Estimate:
         """Plan and heights by turns, until what the plan was built from stays as it is."""
-        given = given_estimate(self.job, self.plane)
-        estimate, relations = self._raised(given), None
+        given = self._with_height_origin(given_estimate(self.job, self.plane))
+        estimate, relations, assembly = self._raised(given), None, None
         if not np.isnan(given.points[self.in_plan]).any():
             return estimate
         for _ in range(MOST_PASSES):
             former, relations = relations, plan_relations(self.job, self.plane, estimate, self.sights)
             if former is not None and not relations.differs(former):
                 break
-            points = self._plan(Survey(relations, len(self.job.marks)), given.points)
+            assembly = self._assembled(Survey(relations, len(self.job.marks)), given.points)
+            points = given.points.copy()
+            points[list(assembly.world.points)] = list(assembly.world.points.values())
             estimate = self._raised(given.moved(self.job, self.plane, points))
+        if assembly is not None:
+            self._note_assembly(assembly)
         return estimate
 
-    def _plan(self, survey: Survey, given: ComplexArray) -> ComplexArray:
-        """Points (n,) of all marks observed in plan; the given ones as they are."""
+    def _assembled(self, survey: Survey, given: ComplexArray) -> Assembly:
+        """The plan of all marks observed in plan, from the given points."""
         wanted = np.nonzero(self.in_plan)[0].tolist()
         known = {mark: complex(given[mark]) for mark in wanted if not np.isnan(given[mark])}
         assembly = Assembly(survey, known, set(wanted), free=self.job.datum.mode == "inner")
         assembly.run()
         if missing := assembly.missing():
             raise plan_error(self.job, assembly, missing)
-        self.notes = list(assembly.notes)
-        points = given.copy()
-        points[list(assembly.world.points)] = list(assembly.world.points.values())
-        return points
+        return assembly
+
+    def _with_height_origin(self, estimate: Estimate) -> Estimate:
+        """In a free network without any given height, the first mark whose height is sought is put at 0 m."""
+        sought = np.nonzero(self.unknowns.sought[:, 2])[0]
+        if self.job.datum.mode != "inner" or not len(sought) or not np.isnan(estimate.heights).all():
+            return estimate
+        heights = estimate.heights.copy()
+        heights[sought[0]] = 0.0
+        origin = listed(names_of(self.job, sought[:1]))
+        self.notes.append(f"free network without given heights: they count from {origin}, put at 0 m")
+        return replace(estimate, heights=heights)
 
     def _raised(self, estimate: Estimate) -> Estimate:
         """With the heights that follow from the given ones; in a plan-only job, from any."""
@@ -94,6 +107,14 @@ class _Finder:
         if not self.unknowns.plan_only:
             return raised
         return replace(raised, heights=drawn_heights(raised, self.sights, _mean_height(raised)))
+
+    def _note_assembly(self, assembly: Assembly) -> None:
+        self.notes += assembly.notes
+        if found := names_of(self.job, assembly.found_by_search):
+            self.notes.append(
+                f"{listed(found)}: no construction leads there; the start is the only fit that a search from "
+                f"{BEGINNINGS} scattered beginnings found"
+            )
 
     def geometry(self, estimate: Estimate) -> Geometry:
         """The frame's coordinates: given ones to the last digit, marks without a height at the mean height."""
@@ -103,6 +124,10 @@ class _Finder:
             raise height_error(job, lacking)
         heights = np.where(self.in_plan & np.isnan(estimate.heights), _mean_height(estimate), estimate.heights)
         self._note_mean_height(self.in_plan & np.isnan(estimate.heights), heights)
+        if self.unknowns.plan_only and np.isnan(job.marks.given[:, 2]).all() and not np.isnan(estimate.heights).all():
+            self.notes.append(
+                "no heights are given; to reduce slopes they follow from the zenith angles, counted from 0 m"
+            )
         plan = np.where(np.isnan(job.marks.given[:, :2]), self.plane.plan(estimate.points), job.marks.given[:, :2])
         return Geometry(
             job.frame,
