@@ -101,7 +101,8 @@ def doubtful_angles(traverse: Traverse, allowed: float) -> list[int]:
         return []
     sine, cosine = np.sin(traverse.angular), np.cos(traverse.angular)
     at = np.vstack([np.zeros(2), np.cumsum(traverse.unbalanced, axis=0)])
-    ahead = at[-1] - at[:-1]
+    closed = traverse.marks[0] == traverse.marks[-1]
+    ahead = at[-1] - (at[:-1] if closed else at)
     unturned = np.column_stack([ahead[:, 0] * cosine - ahead[:, 1] * sine, ahead[:, 1] * cosine + ahead[:, 0] * sine])
     left = at[-1] - traverse.arrival - (ahead - unturned)
     return _numbers(np.hypot(*left.T) <= allowed)

@@ -16,6 +16,8 @@ from adjust.network.closures.ragged import Ragged, joined
 
 MOST_SUSPICIONS = 10
 """Named at most: whoever has more failing closures than that mends these first and checks again."""
+SECOND_THOUGHT = 1e-3
+"""What a failing closure that is explained already counts against a row: it decides between equals, nothing else."""
 MOST_ROWS = 8
 """Rows that one suspicion names at most; more of them say no more than the closure itself does."""
 LINE_CHECKS = frozenset(
@@ -65,7 +67,8 @@ def suspicions(checks: Sequence[Judged], observed: Observed) -> list[Suspicion]:
     unexplained, found = failing.copy(), list[Suspicion]()
     while unexplained.any() and len(found) < MOST_SUSPICIONS:
         explained = _count(incidence, unexplained, size)
-        score = np.where(explained > 0, explained - passing, -np.inf)
+        again = SECOND_THOUGHT * (every - explained)
+        score = np.where(explained > 0, explained - passing - again, -np.inf)
         best = int(np.argmax(score))
         if not explained[best]:
             break
