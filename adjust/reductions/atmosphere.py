@@ -13,7 +13,8 @@ ICE_POINT = 273.15
 HECTOPASCAL = 100.0
 SATURATION = (1.2378847e-5, -1.9121316e-2, 33.93711047, -6.3431645e3)
 """A (K⁻²), B (K⁻¹), C, D (K) of the saturation vapour pressure, CIPM equation of state for moist air: Davis (1992),
-*Metrologia* 29, 67–70, as used by Ciddor (1996), appendix A."""
+*Metrologia* 29, 67–70, as used by Ciddor (1996), appendix A; from memory, checked against the
+formula of WMO-No. 8 and, through `ciddor`, against the paper's table."""
 ENHANCEMENT = (1.00062, 3.14e-8, 5.6e-7)
 """α, β (Pa⁻¹), γ (°C⁻²) of the enhancement factor, same source."""
 

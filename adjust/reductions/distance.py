@@ -15,7 +15,7 @@ def velocity_factor(reference_index: FloatArray, refractivity: FloatArray) -> Fl
     """What a shown distance is multiplied by (rows,): n_ref / n, the first velocity correction.
 
     `reference_index` (rows,) is the group index that the instrument was set to, `refractivity` (rows,) the n − 1 of the
-    air. Rüeger (1996), *Electronic Distance Measurement*, 4th edition, chapter 6.
+    air. Rüeger (1996), *Electronic Distance Measurement*, 4th edition, chapter 6 (number from memory).
     """
     return reference_index / (1.0 + refractivity)
 

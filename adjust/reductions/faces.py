@@ -2,7 +2,7 @@
 
 The error of an instrument is what its readings on face left are too large by, those on face right too small. Half the
 difference of the two faces is that error, their mean is free of it. ISO 17123-3:2001, 6.4 (horizontal) and 7.4
-(vertical angles).
+(vertical angles; section numbers from memory).
 """
 
 from __future__ import annotations

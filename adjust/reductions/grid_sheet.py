@@ -68,7 +68,8 @@ def mark_factors(frame: EllipsoidFrame, coordinates: FloatArray) -> MarkFactors:
     """Factors at longitudes, latitudes (radians) and ellipsoidal heights (marks, 3), by differencing the map itself.
 
     Any projection will do. The height factor is R/(R + h) with the mean radius R = √(ρν): Stem (1989), *State Plane
-    Coordinate System of 1983*, NOAA Manual NOS NGS 5, section 4.2.
+    Coordinate System of 1983*, NOAA Manual NOS NGS 5, section 4.2 (number from
+    memory).
     """
     scale, shear, convergence = _distortion(frame, coordinates)
     meridian, prime_vertical = (
