@@ -107,6 +107,7 @@ class TolerancesSection(Section):
     """`[tolerances]`; the defaults are those of `adjust.tolerances`."""
 
     standard: FileNames | None = None
+    faces_arcsec: Positive | None = None
     level_runs_mm_per_sqrt_km: Positive | None = None
     level_loops_mm_per_sqrt_km: Positive | None = None
     angles_arcsec_per_sqrt_n: Positive | None = None
@@ -123,6 +124,20 @@ class TolerancesSection(Section):
     instrument_height_m: Range | None = None
     target_height_m: Range | None = None
     same_mark_m: NotNegative | None = None
+
+
+class SpecificationSection(Section):
+    """`[specification]`; the defaults are those of `adjust.standards`."""
+
+    standard: FileNames | None = None
+    horizontal_mm: Positive | None = None
+    height_mm: Positive | None = None
+    relative_mm: Positive | None = None
+    relative_ppm: Positive | None = None
+    height_difference_mm: Positive | None = None
+    height_difference_ppm: Positive | None = None
+    pairs: Literal["observed", "all"] = "observed"
+    marks: Annotated[list[str], Field(min_length=1)] | None = None
 
 
 INSTRUMENT_KEYS = ("instrument", *(f"{name}_instrument" for name, table in TABLES.items() if table.has_instrument))
@@ -143,6 +158,7 @@ class JobFile(Section):
     targets: dict[str, Target] = {}
     statistics: StatisticsSection = StatisticsSection()
     tolerances: TolerancesSection = TolerancesSection()
+    specification: SpecificationSection = SpecificationSection()
 
     def default_instrument(self, table: str) -> str | None:
         """The instrument of rows that name none: the table's own default before the general one.
@@ -257,6 +273,7 @@ _SECTIONS: dict[str, type[Section]] = {
     "targets": Target,
     "statistics": StatisticsSection,
     "tolerances": TolerancesSection,
+    "specification": SpecificationSection,
 }
 
 

@@ -68,6 +68,7 @@ def _rules(section: TolerancesSection) -> Iterator[tuple[Quantity, Rule]]:
         arcseconds = section.angles_arcsec_per_sqrt_n
         yield Quantity.ANGLES, Rule(f'{arcseconds:g}" √n', per_root=arcseconds * ARCSEC)
     for quantity, angle in (
+        (Quantity.FACES, section.faces_arcsec),
         (Quantity.TRIANGLE, section.triangles_arcsec),
         (Quantity.STATION, section.station_arcsec),
     ):

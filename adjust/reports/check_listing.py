@@ -12,11 +12,12 @@ from adjust.network.closures.closures import Judged
 from adjust.reports.check_words import (
     MILLIMETRES,
     NAMES,
+    by_file,
     check_verdict,
     observations,
+    rests_on,
     rules_used,
     small,
-    sources,
     suspected,
     walk,
 )
@@ -141,10 +142,10 @@ def _closures(check: Check, judged: Judged) -> list[str]:
 
 def _failing(check: Check, judged: Judged, closure: int) -> str:
     """What a failing closure rests on, and what it suggests."""
-    check_name, rows = judged.closures.check, judged.closures.rows[closure].tolist()
+    check_name = judged.closures.check
     clues = [clue.text for clue in check.clues if clue.check == check_name and clue.closure == closure]
     suggests = "".join(f"; {clue}" for clue in clues)
-    return f"! {walk(check, judged, closure)} rests on {sources(check, rows)}{suggests}."
+    return f"! {walk(check, judged, closure)} rests on {by_file(rests_on(check, judged, closure))}{suggests}."
 
 
 def _columns(judged: Judged) -> list[Column]:

@@ -12,7 +12,7 @@ from adjust.arrays import FloatArray
 from adjust.frames import EllipsoidFrame
 from adjust.network.closures.check import Check
 from adjust.network.closures.closures import Judged
-from adjust.reports.check_words import observations
+from adjust.reports.check_words import observations, rests_on
 from adjust.reports.records import Record, number
 from adjust.reports.results import write_list
 from adjust.tolerances import STANDARDS
@@ -76,7 +76,7 @@ def closure_records(check: Check) -> Iterator[Record]:
             yield {
                 "check": judged.closures.check,
                 "marks": [names[mark] for mark in judged.closures.marks[closure].tolist()],
-                "observations": observations(check, judged.closures.rows[closure].tolist()),
+                "observations": rests_on(check, judged, closure),
                 **_figures(judged, closure),
                 "rule": str(judged.rules[int(judged.rule[closure])]),
                 "exceeds": exceeds[closure],

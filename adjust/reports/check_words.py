@@ -14,6 +14,12 @@ from adjust.reports.wording import SHORT_NAMES, counted
 from adjust.units import ARCSEC
 
 NAMES = {
+    "half_round": ("half-round back on its first target", "half-rounds back on their first targets"),
+    "collimation": ("pair of faces of a direction", "pairs of faces of directions"),
+    "vertical_index": ("pair of faces of a zenith angle", "pairs of faces of zenith angles"),
+    "direction_reading": ("reading of the horizontal circle", "readings of the horizontal circle"),
+    "zenith_reading": ("reading of the vertical circle", "readings of the vertical circle"),
+    "distance_reading": ("reading of a distance", "readings of distances"),
     "level_runs": ("forward and backward run", "forward and backward runs"),
     "level_loop": ("level loop", "level loops"),
     "level_line": ("level line between benchmarks", "level lines between benchmarks"),
@@ -69,13 +75,19 @@ def observations(check: Check, rows: Sequence[int]) -> list[str]:
     return [check.observed.source(row) for row in rows]
 
 
-def sources(check: Check, rows: Sequence[int]) -> str:
-    """`levels.csv:3, 7; zeniths.csv:2`: file by file, in the order of the walk."""
+def by_file(sources: Sequence[str]) -> str:
+    """`levels.csv:3, 7; zeniths.csv:2`: file by file, in the order given."""
     lines: dict[str, list[str]] = {}
-    for source in observations(check, rows):
+    for source in sources:
         file, _, line = source.rpartition(":")
         lines.setdefault(file, []).append(line)
     return "; ".join(f"{file}:{', '.join(numbers)}" for file, numbers in lines.items())
+
+
+def rests_on(check: Check, judged: Judged, closure: int) -> list[str]:
+    """The lines of the field book that a closure rests on."""
+    closures = judged.closures
+    return [closures.sources[closure]] if closures.sources else observations(check, closures.rows[closure].tolist())
 
 
 def described(check: Check, row: int) -> str:

@@ -15,6 +15,7 @@ KILOMETRE = 1000.0
 class Quantity(Enum):
     """What a tolerance is stated for; the value says it in words."""
 
+    FACES = "pairs of faces of one setup"
     LEVEL_RUNS = "forward against backward levelling"
     LEVEL_LOOP = "level loops and lines"
     ANGLES = "angles of loops and traverses"

@@ -22,6 +22,7 @@ from adjust.network.closures.observed import Observed
 from adjust.network.closures.orientation import Orientations, control_orientation_closures
 from adjust.network.closures.polar import two_place_remarks
 from adjust.network.closures.positions import position_remarks
+from adjust.network.closures.readings import reading_closures
 from adjust.network.closures.remarks import Remark
 from adjust.network.closures.stations import Stations, station_closures
 from adjust.network.closures.suspicion import SharedLine, Suspicion, shared_lines, suspicions
@@ -74,6 +75,7 @@ def check_job(job: Job) -> Check:
     orientations = Orientations(observed, stations)
     traverses = Traversing(observed, orientations, lines)
     closures = [
+        *reading_closures(observed),
         *level_closures(observed),
         *station_closures(observed, stations),
         control_orientation_closures(observed, orientations),

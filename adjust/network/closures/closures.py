@@ -35,6 +35,8 @@ class Closures:
     """Which tolerances hold for it; None where only the sds can tell."""
     components: tuple[str, ...] = ("",)
     figures: Mapping[str, FloatArray] = field(default_factory=dict)
+    sources: tuple[str, ...] = ()
+    """Of closures of raw readings: the lines of the book that each is about."""
 
     def __len__(self) -> int:
         return len(self.misclosure)
@@ -51,6 +53,7 @@ class Closures:
             length=self.length[places],
             angles=self.angles[places],
             figures={name: values[places] for name, values in self.figures.items()},
+            sources=tuple(self.sources[place] for place in places.tolist()) if self.sources else (),
         )
 
 

@@ -110,7 +110,8 @@ class Lines:
         if self.plane:
             return level
         # verticals spread upwards: the sight runs above the marks by the mean height of instrument and target
-        return level * (1.0 - heights.mean(axis=1) / EARTH_RADIUS)
+        lowered: FloatArray = level * (1.0 - heights.mean(axis=1) / EARTH_RADIUS)
+        return lowered
 
     def _chord_zenith(self, zenith: FloatArray, level: FloatArray) -> FloatArray:
         """Zenith angles (rows,) as a chord would have them at its middle, radians, of the contract's ones over a level
@@ -118,7 +119,8 @@ class Lines:
         bending = self.refraction * self.curvature
         if self.plane:
             with np.errstate(divide="ignore"):
-                return np.arctan2(1.0, 1.0 / np.tan(zenith) + (self.curvature - bending) * level)
+                steepness: FloatArray = 1.0 / np.tan(zenith) + (self.curvature - bending) * level
+            return np.arctan2(1.0, steepness)
         chord: FloatArray = zenith + bending * level / np.sin(zenith) - self.curvature * level
         return chord
 
