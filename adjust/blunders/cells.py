@@ -20,7 +20,7 @@ TENTH_OF_A_MILLIMETRE = 4
 TENTH_OF_A_SECOND = 1
 """Decimals of a second that they show: common practice, no source."""
 CENTIMETRE_ON_EARTH = 4
-"""Decimals of a second of latitude, 3 mm on the ground, to which coordinates are published: common practice, no source."""
+"""Decimals of a second of latitude, 3 mm on the ground, the last digit of most lists: common practice, no source."""
 
 
 def cells_of(job: Job, hypotheses: Sequence[Hypothesis], folder: str | Path | None = None) -> list[tuple[Line, ...]]:

@@ -1,4 +1,4 @@
-"""A circle counted against the clock, a zenith angle counted from the horizon or from below."""
+"""A circle counted against the clock, a zenith angle counted from the horizon."""
 
 from __future__ import annotations
 
@@ -9,7 +9,7 @@ from adjust.blunders.mistakes.suspect import Suspect
 
 
 class CountedBackwards:
-    """360° − the direction; 180° − the zenith angle, or 90° − an elevation booked for it."""
+    """360° − the direction; 90° − an elevation that was booked as a zenith angle."""
 
     name = "circle counted otherwise"
 
@@ -19,7 +19,6 @@ class CountedBackwards:
             others = {"360° − the value, the circle counted backwards": (2 * np.pi, -1.0)}
         elif suspect.kind == "zenith":
             others = {
-                "180° − the value, counted from below": (np.pi, -1.0),
                 "90° − the value, an elevation booked as a zenith angle": (np.pi / 2, -1.0),
                 "90° + the value, a depression booked as a zenith angle": (np.pi / 2, 1.0),
             }

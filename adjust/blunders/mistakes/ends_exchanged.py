@@ -9,6 +9,10 @@ from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.suspect import Suspect
 
 
+REVERSED = ("height_difference", "vector")
+"""Kinds whose value changes its sign and nothing else, so that no network can tell the exchange from a lost sign."""
+
+
 @dataclass(frozen=True)
 class Exchange:
     """The columns of two marks changed over, for the kinds in which that shows."""
@@ -32,7 +36,8 @@ class Exchange:
         source = suspect.lines[0][0]
         corrections = tuple(Correction(source, role, name) for role, name in zip(roles, names, strict=True))
         detail = f"{roles[0]} {names[0]} {roles[1]} {names[1]} in place of the reverse"
-        return Candidates.listed(suspect.error_if(other), [Remedy(self.words, detail, corrections, other)])
+        errors = 2.0 * suspect.observed[None] if suspect.kind in REVERSED else suspect.error_if(other)
+        return Candidates.listed(errors, [Remedy(self.words, detail, corrections, other)])
 
 
 ENDS_EXCHANGED = Exchange(

@@ -44,7 +44,7 @@ class HeightMissing:
         def remedy(place: int, error: FloatArray) -> Remedy:
             along = further - at_mean
             height = mean + spread * float((error - at_mean) @ along / (along @ along))
-            return entry.remedy(f"{words(entry)} not entered, by the network", metric(entry, height), height)
+            return entry.remedy(f"{words(entry)} not entered, by the network", entry.notation.write(height), height)
 
         return Candidates(at_mean[None], np.ones(1), remedy, (further - at_mean)[None])
 
@@ -120,8 +120,3 @@ def heights_of(suspect: Suspect, entry: Entry) -> tuple[IntArray, FloatArray]:
 def words(entry: Entry) -> str:
     """Instrument height, target height."""
     return entry.name.replace("_", " ")
-
-
-def metric(entry: Entry, height: float) -> str:
-    """A height to the millimetre, in the unit of its column."""
-    return f"{height / entry.notation.unit:.3f}"

@@ -12,6 +12,9 @@ from adjust.units import ANGLE_ENDINGS, LENGTH_ENDINGS, format_dms, parse_angle,
 _PARTS = re.compile(r"(-?)(\d+)(\D+)(\d+)(\D+)(\d+)(?:[.,](\d*))?(\D*)")
 """Sign, degrees, separator, minutes, separator, seconds, decimals, separator."""
 
+MILLIMETRES = 3
+"""Decimals of a metre for a height that nobody wrote down."""
+
 
 @dataclass(frozen=True)
 class Notation:
@@ -50,7 +53,9 @@ class Notation:
 
     @property
     def decimals(self) -> int:
-        """Digits behind the point; of degrees, minutes and seconds those of the seconds."""
+        """Digits behind the point; of degrees, minutes and seconds those of the seconds; in a blank cell 3."""
+        if not self.text:
+            return MILLIMETRES
         _, point, behind = self.text.replace(",", ".").rpartition(".")
         return len(re.match(r"\d*", behind)[0]) if point else 0  # type: ignore[index]
 

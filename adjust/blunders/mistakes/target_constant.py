@@ -10,9 +10,9 @@ import numpy as np
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.suspect import Suspect
 
-USUAL = (0.0175, 0.030, 0.0344, 0.040)
-"""Metres by which the constants of common prisms and reflectors differ from each other, where the job file names no
-targets: from memory."""
+USUAL = (0.030, 0.0344)
+"""Metres by which the constants of common prisms differ from each other, where the job file names no targets: from
+memory."""
 
 
 class TargetConstant:
