@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
-from adjust.frames import Frame, Geometry, PlaneFrame
+from adjust.frames import EllipsoidFrame, Frame, Geometry, PlaneFrame
 from adjust.job import Control, Datum, Job, Marks
 from adjust.observations import (
     Angles,
@@ -94,6 +94,22 @@ def build_job(
     )
 
 
+PLANE = PlaneFrame()
+PLANE_ORIGIN = np.array([5000.0, 2000.0, 300.0])
+ELLIPSOID = EllipsoidFrame("EPSG:25833")
+ELLIPSOID_ORIGIN = np.array([np.radians(16.3), np.radians(47.2), 300.0])
+"""An invented place a degree off the central meridian, so that grid north and true north differ."""
+
+
+def laid_out(local: Mapping[str, Sequence[float]], frame: Frame) -> dict[str, FloatArray]:
+    """True coordinates in a frame of marks at `local` metres east, north and up of an origin; up may be left out."""
+    offsets = np.array([[*place, 0.0][:3] for place in local.values()], dtype=float)
+    origin = ELLIPSOID_ORIGIN if isinstance(frame, EllipsoidFrame) else PLANE_ORIGIN
+    coordinates = frame.moved(np.tile(origin, (len(offsets), 1)), offsets * (1.0, 1.0, 0.0))
+    coordinates[:, 2] = origin[2] + offsets[:, 2]
+    return dict(zip(local, coordinates, strict=True))
+
+
 def truth_of(job: Job, coordinates: Mapping[str, Sequence[float]]) -> FloatArray:
     """True coordinates (n, 3) in the order of the job's marks."""
     return np.array([coordinates[name] for name in job.marks.names], dtype=float).reshape(-1, 3)
@@ -161,7 +177,7 @@ def _marks(
 
 
 def _numbers(value: Sequence[float | None] | None) -> list[float]:
-    values = [np.nan if number is None else float(number) for number in value or ()]
+    values = [np.nan if number is None else float(number) for number in (() if value is None else value)]
     return values + [np.nan] * (3 - len(values))
 
 

@@ -65,19 +65,19 @@ class _Finder:
     def estimate(self) -> Estimate:
         """Plan and heights by turns, until what the plan was built from stays as it is."""
         given = self._with_height_origin(given_estimate(self.job, self.plane))
-        estimate, relations, assembly = self._raised(given), None, None
+        estimate = self._raised(given)
         if not np.isnan(given.points[self.in_plan]).any():
             return estimate
+        relations = plan_relations(self.job, self.plane, estimate, self.sights)
         for _ in range(MOST_PASSES):
-            former, relations = relations, plan_relations(self.job, self.plane, estimate, self.sights)
-            if former is not None and not relations.differs(former):
-                break
             assembly = self._assembled(Survey(relations, len(self.job.marks)), given.points)
             points = given.points.copy()
             points[list(assembly.world.points)] = list(assembly.world.points.values())
             estimate = self._raised(given.moved(self.job, self.plane, points))
-        if assembly is not None:
-            self._note_assembly(assembly)
+            former, relations = relations, plan_relations(self.job, self.plane, estimate, self.sights)
+            if not relations.differs(former):
+                break
+        self._note_assembly(assembly)
         return estimate
 
     def _assembled(self, survey: Survey, given: ComplexArray) -> Assembly:

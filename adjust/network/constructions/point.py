@@ -18,6 +18,9 @@ PASSABLE = 0.1
 """A point that misses one of its own two loci by more (six degrees, or a tenth of a distance) lies on the wrong end of
 a ray or on the other arc."""
 
+OUTVOTING = 5
+"""Loci among which one gross error is outvoted: two fix a point, two of the other three contradict a wrong one."""
+
 DECISIVE = 5.0
 """How many times worse the rejected one of two intersections must fit the remaining observations. Raw slope distances
 and rough given coordinates spoil both fits alike; they hardly change their order five times over."""
@@ -70,8 +73,9 @@ def find_point(loci: Sequence[Locus], pencils: Sequence[Pencil]) -> Finding:
 
 
 def misfit(point: complex, loci: Sequence[Locus]) -> float:
-    """Sum of the misfits of a point, none counting more than a gross error does."""
-    return sum(min(locus.misfit(point), 1.0) for locus in loci)
+    """Sum of the misfits of a point; where there are enough loci to outvote one, without the worst."""
+    misfits = [min(locus.misfit(point), 1.0) for locus in loci]
+    return sum(misfits) - (max(misfits) if len(misfits) >= OUTVOTING else 0.0)
 
 
 def refutes(worse: float, better: float) -> bool:

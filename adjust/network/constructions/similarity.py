@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import cmath
 from collections.abc import Sequence
 from dataclasses import dataclass
 
@@ -51,8 +52,6 @@ def free_station(readings: Sequence[tuple[float, float]], targets: Sequence[comp
     Its polar points, in the circle's own axes, are laid over the targets; the station is the image of the origin.
     None where the targets lie too close together to turn the figure. Common practice, no source.
     """
-    import cmath
-
     points = [cmath.rect(distance, direction) for direction, distance in readings]
     middle = sum(points) / len(points)
     if max(abs(point - middle) for point in points) < SHORTEST_BASE * max(abs(point) for point in points):
