@@ -10,6 +10,7 @@ import click
 
 from cli.adjust import adjust_command
 from cli.check import check_command
+from cli.export import export_command
 from cli.grid_sheet import grid_sheet_command
 from cli.reduce import reduce_command
 
@@ -31,6 +32,7 @@ hubtack.add_command(adjust_command)
 hubtack.add_command(check_command)
 hubtack.add_command(reduce_command)
 hubtack.add_command(grid_sheet_command)
+hubtack.add_command(export_command)
 
 
 def run(arguments: Sequence[str]) -> int:

@@ -28,7 +28,7 @@ MARK = [
     *("mark", "plan_status", "height_status"),
     *("easting_m", "northing_m", "height_m", "latitude_deg", "longitude_deg", "ellipsoidal_height_m"),
     *("sd_easting_mm", "sd_northing_mm", "sd_height_mm", "covariance_mm2"),
-    *("ellipse", "ellipse_confidence", "horizontal_95_mm", "height_95_mm"),
+    *("ellipse", "ellipse_confidence", "horizontal_95_mm", "height_95_mm", "description"),
 ]
 OBSERVATION = [
     *("source", "kind", "component", "at", "from", "to", "setup", "unit"),

@@ -37,10 +37,13 @@ class MapProjection:
 
     def forward(self, longitude_latitude: FloatArray) -> FloatArray:
         """Easting and northing (n, 2), metres, of longitude and latitude (n, 2), radians; NaN where there is none."""
+        return self.plane(longitude_latitude)[:, self.order] * (self.metre * np.array(self.sign))
+
+    def plane(self, longitude_latitude: FloatArray) -> FloatArray:
+        """The same as x and y (n, 2) in the CRS's own unit and sense, as files in this CRS hold them."""
         longitude, latitude = longitude_latitude.T
         angles = ((longitude - self.prime_meridian) / self.degree, latitude / self.degree)
-        plane = transformed(self.transformer, angles)
-        return plane[:, self.order] * (self.metre * np.array(self.sign))
+        return transformed(self.transformer, angles)
 
     def inverse(self, grid: FloatArray) -> FloatArray:
         """Longitude and latitude (n, 2), radians, of easting and northing (n, 2), metres; NaN where there is none.
@@ -101,11 +104,16 @@ def read_crs(name: str) -> tuple[ReferenceEllipsoid, MapProjection | None]:
 
     Raises ValueError, in words for a surveyor, where PROJ does not know the CRS or it lies on no ellipsoid.
     """
-    crs = _horizontal(_parse(name), name)
+    crs = horizontal_crs(name)
     ellipsoid = crs.ellipsoid
     inverse = ellipsoid.inverse_flattening
     reference = ReferenceEllipsoid(ellipsoid.semi_major_metre, 1.0 / inverse if inverse else 0.0)
     return reference, _projection(crs, name) if crs.is_projected else None
+
+
+def horizontal_crs(name: str) -> Any:
+    """PROJ's two-dimensional CRS of that name, without its vertical part. Raises ValueError as `read_crs` does."""
+    return _horizontal(_parse(name), name)
 
 
 def _parse(name: str) -> Any:

@@ -82,6 +82,7 @@ def _marks(adjustment: Adjustment, coordinates: FloatArray, rows: IntArray) -> F
         "ellipse_confidence": _ellipses(adjustment.ellipses.scaled(adjustment.ellipse_factor), rows),
         "horizontal_95_mm": plain(adjustment.horizontal_95[rows] * MILLIMETRES),
         "height_95_mm": plain(adjustment.height_95[rows] * MILLIMETRES),
+        "description": [adjustment.job.marks.descriptions[row] for row in rows.tolist()],
     }
 
 

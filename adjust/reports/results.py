@@ -82,7 +82,15 @@ def job_record(adjustment: Adjustment) -> Record:
         "crs": job.frame.crs if isinstance(job.frame, EllipsoidFrame) else None,
         "input_sha256": job.input_sha256,
         "date": job.date,
+        "heights": _heights(adjustment),
     }
+
+
+def _heights(adjustment: Adjustment) -> str | None:
+    """What heights mean; None in a plane frame, where the field book does not say."""
+    if adjustment.job.frame.kind == "plane":
+        return None
+    return "orthometric" if adjustment.job.orthometric else "ellipsoidal"
 
 
 def solution_record(adjustment: Adjustment) -> Record:

@@ -1,0 +1,199 @@
+"""`results.json` read back, checked as it is read. The published schema of the file is made of these records."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import Any, Literal
+
+from pydantic import BaseModel, ConfigDict, Field, ValidationError
+from pydantic.json_schema import GenerateJsonSchema, JsonSchemaMode
+from pydantic_core import CoreSchema
+
+from adjust.errors import FieldDataError, Mistake
+from adjust.reports.results import SCHEMA
+
+RESULTS = "results.json"
+SHOWN = 5
+"""Faults of a file that are named: it is written by program, so that one fault explains the rest."""
+
+Status = Literal["fixed", "weighted", "adjusted", "none"]
+Height = Literal["orthometric", "ellipsoidal"]
+Figure = float | None
+Row = tuple[Figure, Figure, Figure]
+
+
+class Saved(BaseModel):
+    """A record of the file. Keys that a later version adds are passed over."""
+
+    model_config = ConfigDict(frozen=True, strict=True, allow_inf_nan=False, populate_by_name=True)
+
+
+class JobRecord(Saved):
+    """What was adjusted."""
+
+    title: str
+    frame: Literal["plane", "ellipsoid"]
+    crs: str | None = Field(description="As the job file names it; null in a plane frame")
+    input_sha256: str = Field(description="Of all files read")
+    date: str | None = None
+    heights: Height | None = Field(None, description="What height_m means; null in a plane frame")
+
+
+class GlobalTestRecord(Saved):
+    """Test of the sum of squares on its two-sided bounds; null without degrees of freedom."""
+
+    statistic: Figure = Field(description="Weighted sum of squared residuals")
+    lower: Figure
+    upper: Figure
+    confidence: float = Field(gt=0, lt=1, description="Of this test and of the confidence ellipses")
+    passed: bool | None
+
+
+class SolutionRecord(Saved):
+    """The scalars of the adjustment."""
+
+    observations: int = Field(ge=0, description="Scalars: a vector counts three")
+    unknowns: int = Field(ge=0)
+    datum_defect: int = Field(ge=0)
+    degrees_of_freedom: int = Field(ge=0)
+    iterations: int = Field(ge=0)
+    converged: bool
+    variance_factor: Figure
+    global_test: GlobalTestRecord
+    condition_number: Figure
+    sd_basis: Literal["prior", "posterior"]
+    second_opinion_gap: Figure = Field(None, description="Metres or radians")
+
+
+class EllipseRecord(Saved):
+    """An ellipse of a position or of a coordinate difference; null where there is none."""
+
+    semi_major_mm: Figure
+    semi_minor_mm: Figure
+    azimuth_deg: float | None = Field(ge=0, lt=180, description="Of the major axis, clockwise from north")
+
+
+class MarkRecord(Saved):
+    """A mark."""
+
+    mark: str
+    plan_status: Status
+    height_status: Status
+    easting_m: Figure
+    northing_m: Figure
+    height_m: Figure
+    latitude_deg: float | None = Field(ge=-90, le=90)
+    longitude_deg: float | None = Field(ge=-360, le=360, description="East of Greenwich")
+    ellipsoidal_height_m: Figure
+    sd_easting_mm: Figure
+    sd_northing_mm: Figure
+    sd_height_mm: Figure
+    covariance_mm2: tuple[Row, Row, Row] = Field(description="Of easting, northing and height")
+    ellipse: EllipseRecord
+    ellipse_confidence: EllipseRecord
+    horizontal_95_mm: Figure
+    height_95_mm: Figure
+    description: str = ""
+
+
+class ObservationRecord(Saved):
+    """One component of one observation."""
+
+    source: str = Field(description="File and line")
+    kind: Literal[
+        "direction",
+        "angle",
+        "azimuth",
+        "slope_distance",
+        "horizontal_distance",
+        "zenith",
+        "height_difference",
+        "vector",
+        "control",
+    ]
+    component: Literal["x", "y", "z", "easting", "northing", "height"] | None
+    at: str | None
+    start: str | None = Field(alias="from")
+    to: str | None
+    setup: str | None
+    unit: Literal["m", "deg"] = Field(description="Of the next five")
+    observed: Figure
+    adjusted: Figure
+    residual: Figure = Field(description="Adjusted minus observed")
+    sd: Figure
+    minimal_detectable_bias: Figure
+    redundancy: Figure
+    w: Figure
+    tau: Figure
+    suspect: bool
+
+
+class LineRecord(Saved):
+    """Relative accuracy of two marks that an observation joins."""
+
+    start: str = Field(alias="from")
+    to: str
+    distance_m: Figure
+    ellipse: EllipseRecord
+    ellipse_confidence: EllipseRecord
+    sd_height_difference_mm: Figure
+
+
+class SavedResults(Saved):
+    """The results of one adjustment. Numbers are SI unless the key names a unit; null where there is no such figure."""
+
+    layout: Literal["hubtack-results/1"] = Field(alias="schema")
+    job: JobRecord
+    solution: SolutionRecord
+    marks: list[MarkRecord]
+    observations: list[ObservationRecord]
+    relative: list[LineRecord]
+    suspects: list[str] = Field(description="Sources of suspect observations, worst first")
+    cautions: list[str]
+    notes: list[str] = []
+
+
+def read_results(path: Path) -> SavedResults:
+    """The results in the file `path`, or in the `results.json` of the folder `path`.
+
+    Raises FieldDataError where there is none, or it does not hold what `hubtack adjust` writes.
+    """
+    file = path / RESULTS if path.is_dir() else path
+    try:
+        return SavedResults.model_validate_json(file.read_bytes())
+    except OSError as error:
+        message = f"cannot be read ({error.strerror}); give a {RESULTS} that hubtack adjust wrote, or its folder"
+        raise FieldDataError([Mistake(str(file), None, None, message)]) from error
+    except ValidationError as error:
+        raise FieldDataError(_mistakes(file, error)) from error
+
+
+def _mistakes(file: Path, error: ValidationError) -> list[Mistake]:
+    faults = error.errors(include_url=False, include_context=False)
+    return [
+        Mistake(
+            str(file),
+            None,
+            ".".join(map(str, fault["loc"])) or None,
+            f"{fault['msg']}; expected what hubtack adjust writes ({SCHEMA}): adjust the job again",
+        )
+        for fault in faults[:SHOWN]
+    ]
+
+
+class _Published(GenerateJsonSchema):
+    """Keys stand for themselves; repeated as titles they would only fill the page."""
+
+    def field_title_should_be_set(self, schema: Any) -> bool:
+        return False
+
+    def generate(self, schema: CoreSchema, mode: JsonSchemaMode = "validation") -> dict[str, Any]:
+        records = super().generate(schema, mode)
+        return {"$schema": self.schema_dialect} | records | {"title": f"Hubtack results, {SCHEMA}"}
+
+
+def published_schema() -> str:
+    """The text of the JSON Schema (2020-12) of `results.json`."""
+    schema = SavedResults.model_json_schema(schema_generator=_Published)
+    return json.dumps(schema, indent=2, ensure_ascii=False) + "\n"
