@@ -1,0 +1,72 @@
+"""Blocks worked side by side: the same bytes whatever the number of threads, and the BLAS left as it was."""
+
+import numpy as np
+import pytest
+
+from adjust.solver import analyse, workers
+from tests.benchmarks.grid import grid_problem
+
+
+def solve(problem):
+    factor = analyse(problem.matrix, problem.groups, problem.positions).factorise(problem.matrix, problem.right_side)
+    columns = np.arange(problem.matrix.shape[1])
+    selected = factor.selected_covariance(columns, columns)
+    return factor.solution.tobytes() + selected.entries.tobytes() + selected.row_variances.tobytes()
+
+
+@pytest.fixture(name="threads")
+def _threads(monkeypatch):
+    """A BLAS of a given number of threads, as the solver sees it."""
+
+    def pretend(count):
+        state = [count]
+        functions = None if count is None else (lambda: state[0], lambda new: state.__setitem__(0, new))
+        monkeypatch.setattr(workers, "blas_threads", lambda: functions)
+        return state
+
+    return pretend
+
+
+def test_results_do_not_depend_on_the_threads(threads):
+    problem = grid_problem(400)
+    found = []
+    for count in (1, 2, 5):
+        threads(count)
+        with workers.one_blas_thread() as allowed:
+            assert allowed == count
+        found.append(solve(problem))
+    assert found[0] == found[1] == found[2]
+
+
+def test_an_unknown_blas_gets_no_company(threads):
+    threads(None)
+    with workers.one_blas_thread() as allowed:
+        assert allowed == 1
+
+
+def test_the_blas_gets_its_threads_back_even_after_an_error(threads):
+    state = threads(4)
+
+    def fail():
+        with workers.one_blas_thread():
+            assert state == [1]
+            raise ValueError("in the middle")
+
+    with pytest.raises(ValueError, match="in the middle"):
+        fail()
+    assert state == [4]
+
+
+def test_numpys_own_blas_is_restored():
+    functions = workers.blas_threads()
+    if functions is None:
+        pytest.skip("NumPy has another BLAS than the OpenBLAS of its wheels here")
+    read, _ = functions
+    before = read()
+    with workers.one_blas_thread():
+        assert read() == 1
+    assert read() == before
+
+
+def test_results_come_in_the_order_of_the_items():
+    assert workers.side_by_side(lambda item: item * item, range(50), 4) == [item * item for item in range(50)]
