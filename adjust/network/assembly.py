@@ -202,7 +202,7 @@ class Assembly:
         arbitrary = [] if placed else ["origin"]
         arbitrary += [] if figure.northed else ["north"]
         if arbitrary:
-            self.notes.append(f"free network: its {' and '.join(arbitrary)} are those of the first sight drawn")
+            self.notes.append(f"free network: {' and '.join(arbitrary)} of the first sight drawn")
         if not figure.scaled:
             self.notes.append(f"free network without distances: its first side is drawn {DRAWN_SIDE:g} m long")
         if not figure.handed:

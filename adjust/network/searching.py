@@ -22,6 +22,9 @@ MOST_MARKS = 8
 BEGINNINGS = 60
 """Scattered beginnings, of which most end nowhere."""
 
+DESCENT = 30
+"""Steps of one descent, each with a difference quotient for every unknown; a descent that converges needs about ten."""
+
 CONFIRMED = 3
 """Beginnings that have to end at the same place."""
 
@@ -146,7 +149,8 @@ def _fit(known: ComplexArray, sights: _Sights, beginning: ComplexArray, extent: 
     def misfits(unknown: FloatArray) -> FloatArray:
         return sights.misfits(np.concatenate([unknown.view(complex) * extent, known]))
 
-    return least_squares(misfits, (beginning / extent).view(float), method="lm")
+    start = (beginning / extent).view(float)
+    return least_squares(misfits, start, method="lm", max_nfev=DESCENT * (len(start) + 1))
 
 
 def _checked(sights: _Sights, jacobian: FloatArray) -> bool:
