@@ -11,10 +11,14 @@ Technical Report NOS 65 NGS 1: T/Ω is a beta variable). So at the least cost ev
 test given the others, and nobody else does: the set that iterated data snooping looks for, found also where the
 errors mask each other. As a penalised likelihood: Hannan & Quinn (1979, *J. Royal Statistical Society* B 41)
 and Schwarz (1978, *Annals of Statistics* 6) with prices of their own; here the price is set by the level of the test.
+
+What a group shares is tested at a hundredth of α: an error of a small group can be mistaken for one of a single row of
+it and the reverse, and single errors are the commoner ones.
 """
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cache
@@ -23,6 +27,10 @@ import numpy as np
 from scipy.special import betaincinv, gammainccinv
 
 from adjust.arrays import FloatArray
+from adjust.blunders.evidence import Allowed, Sort
+
+RARER = 0.01
+"""How much rarer the errors of groups are taken to be than those of single rows: common practice, no source."""
 
 
 @cache
@@ -49,13 +57,17 @@ class Criterion:
     square_sum: float
     freedom: int
 
-    def price(self, sizes: Iterable[int]) -> float:
-        """What hypotheses of so many columns each cost together."""
+    def level(self, shared: bool) -> float:
+        """Significance of the test of one hypothesis."""
+        return self.significance * (RARER if shared else 1.0)
+
+    def price(self, sorts: Iterable[Sort]) -> float:
+        """What hypotheses of these sorts cost together."""
         if not self.estimated:
-            return sum(chi_square_price(self.significance, size) for size in sizes)
+            return sum(chi_square_price(self.level(shared), size) for size, shared in sorts)
         total, freedom = 0.0, self.freedom
-        for size in sorted(sizes, reverse=True):
-            total += beta_price(self.significance, size, freedom)
+        for size, shared in sorted(sorts, reverse=True):
+            total += beta_price(self.level(shared), size, freedom)
             freedom -= size
         return total
 
@@ -66,9 +78,18 @@ class Criterion:
         left = np.maximum(1.0 - np.asarray(statistic) / self.square_sum, np.finfo(float).tiny)
         return np.asarray(np.log(left), dtype=np.float64)
 
-    def critical(self, size: int, freedom: int) -> float:
-        """Bound on the test of one hypothesis of so many columns with `freedom` before it: √χ² or τ-like √(f B)."""
+    def cost(self, allowed: Allowed) -> float:
+        """Equation (1) or (2) of the set that is allowed for."""
+        return float(self.worth(allowed.statistic)) + self.price(map(allowed.evidence.sort, allowed.chosen))
+
+    def variance(self, statistic: float, columns: int) -> float:
+        """σ₀² once errors in so many columns with this T are allowed for: 1 where it is known."""
+        rest = self.freedom - columns
+        return (self.square_sum - statistic) / rest if self.estimated and rest > 0 else 1.0
+
+    def critical(self, sort: Sort, freedom: int) -> float:
+        """Bound on √T of one hypothesis, over σ̂₀ where that is estimated from `freedom` degrees with it left in."""
+        size, shared = sort
         if not self.estimated:
-            return chi_square_price(self.significance, size) ** 0.5
-        share = -np.expm1(-beta_price(self.significance, size, freedom))
-        return float(np.sqrt(freedom * share))
+            return math.sqrt(chi_square_price(self.level(shared), size))
+        return math.sqrt(-freedom * math.expm1(-beta_price(self.level(shared), size, freedom)))

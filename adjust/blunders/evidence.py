@@ -30,13 +30,17 @@ LEAST_INFORMATION = 1e-6
 unknowns or from other errors: it would show by less than a thousandth of itself."""
 
 
+Sort = tuple[int, bool]
+"""Number of columns of a hypothesis, and whether it is of a group."""
+
+
 @dataclass(frozen=True)
 class Evidence:
     """Scores g and information G of all supposed errors.
 
     `members` lists for each number q of columns the hypotheses that have so many, (m, q) indices of columns, and
-    `numbers` their numbers (m,) among all hypotheses. `weight` (columns,) is hᵀh. `square_sum` is eᵀe = vᵀPv, of
-    `freedom` degrees.
+    `numbers` their numbers (m,) among all hypotheses; `shared` (hypotheses,) are those of groups. `weight` (columns,)
+    is hᵀh. `square_sum` is eᵀe = vᵀPv, of `freedom` degrees.
     """
 
     score: FloatArray
@@ -44,6 +48,7 @@ class Evidence:
     weight: FloatArray
     members: dict[int, IntArray]
     numbers: dict[int, IntArray]
+    shared: BoolArray
     square_sum: float
     freedom: int
 
@@ -61,12 +66,33 @@ class Evidence:
         return size
 
     @cached_property
+    def sorts(self) -> dict[Sort, IntArray]:
+        """Numbers of the hypotheses of each sort."""
+        return {
+            (width, shared): numbers[self.shared[numbers] == shared]
+            for width, numbers in self.numbers.items()
+            for shared in (False, True)
+        }
+
+    def sort(self, hypothesis: int) -> Sort:
+        """Number of columns, and whether it is of a group."""
+        return int(self.size[hypothesis]), bool(self.shared[hypothesis])
+
+    @cached_property
     def place(self) -> IntArray:
         """Row (hypotheses,) of each hypothesis among those of its size."""
         place = np.zeros(self.count, dtype=np.int64)
         for numbers in self.numbers.values():
             place[numbers] = np.arange(len(numbers))
         return place
+
+    @cached_property
+    def owner(self) -> IntArray:
+        """The hypothesis (columns,) of that column alone, −1 where there is none."""
+        owner = np.full(len(self.score), -1, dtype=np.int64)
+        if 1 in self.members:
+            owner[self.members[1][:, 0]] = self.numbers[1]
+        return owner
 
     @cached_property
     def by_itself(self) -> Allowed:
@@ -94,7 +120,9 @@ class Allowed:
     basis: FloatArray = field(init=False)
     """U (columns, s) with U Uᵀ = G_·S G_SS⁻¹ G_S·."""
     coordinates: FloatArray = field(init=False)
-    """L⁻¹ g_S (s,), G_SS = L Lᵀ: T is their square sum."""
+    """L⁻¹ g_S (s,): T is their square sum."""
+    lower: FloatArray = field(init=False)
+    """L (s, s), G_SS = L Lᵀ."""
 
     def __post_init__(self) -> None:
         evidence = self.evidence
@@ -105,7 +133,7 @@ class Allowed:
         object.__setattr__(self, "columns", columns)
         object.__setattr__(self, "basis", np.linalg.solve(lower, strips.T).T)
         object.__setattr__(self, "coordinates", np.linalg.solve(lower, evidence.score[columns]))
-        object.__setattr__(self, "_lower", lower)
+        object.__setattr__(self, "lower", lower)
 
     @property
     def statistic(self) -> float:
@@ -115,8 +143,7 @@ class Allowed:
     @cached_property
     def score(self) -> FloatArray:
         """g|S (columns,)."""
-        score: FloatArray = self.evidence.score - self.basis @ self.coordinates
-        return score
+        return np.asarray(self.evidence.score - self.basis @ self.coordinates, dtype=np.float64)
 
     @cached_property
     def diagonal(self) -> FloatArray:
@@ -164,15 +191,13 @@ class Allowed:
     @cached_property
     def covariance(self) -> FloatArray:
         """Q_∇ = G_SS⁻¹ (s, s)."""
-        inverse = np.linalg.inv(self._lower)
-        covariance: FloatArray = inverse.T @ inverse
-        return covariance
+        inverse = np.linalg.inv(self.lower)
+        return np.asarray(inverse.T @ inverse, dtype=np.float64)
 
     @cached_property
     def errors(self) -> FloatArray:
         """∇ (s,) of the chosen, column by column."""
-        errors: FloatArray = np.linalg.solve(self._lower.T, self.coordinates)
-        return errors
+        return np.asarray(np.linalg.solve(self.lower.T, self.coordinates), dtype=np.float64)
 
     def own(self, hypothesis: int) -> slice:
         """Where one of the chosen stands among their columns."""
@@ -187,3 +212,16 @@ class Allowed:
         return np.array(
             [self.errors[own] @ np.linalg.solve(self.covariance[own, own], self.errors[own]) for own in parts]
         )
+
+
+def joint_gain(allowed: Allowed, hypotheses: Sequence[int]) -> float:
+    """T of further hypotheses together on top; directions in which nothing more can be told count nothing."""
+    evidence = allowed.evidence
+    columns = np.concatenate([evidence.columns_of(hypothesis) for hypothesis in hypotheses])
+    along = allowed.basis[columns]
+    block = evidence.information.columns(columns)[columns] - along @ along.T
+    scale = np.sqrt(evidence.information.diagonal[columns])
+    values, vectors = np.linalg.eigh(block / np.outer(scale, scale))
+    turned = vectors.T @ (allowed.score[columns] / scale)
+    regular = values > LEAST_INFORMATION
+    return float(np.sum(turned[regular] ** 2 / values[regular]))

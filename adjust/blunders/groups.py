@@ -85,10 +85,11 @@ class _Finder:
         entries = []
         for place, rows in self._sighted():
             at = rows.marks[:, 0]
-            key = np.where(several[at], count + rows.setup, at) if rows.setup is not None else at
-            entries.append(Entries(place, np.arange(len(rows)), key, self.derivatives[place][:, :, 0, :2]))
+            stood = np.where(several[at], count + rows.setup, at) if rows.setup is not None else at
+            entries.append(Entries(place, np.arange(len(rows)), stood, self.derivatives[place][:, :, 0, :2]))
+        stations: list[int] = self._station_of_setup().tolist()
         for key, parts in self._gathered(entries):
-            mark = key if key < count else int(self._station_of_setup()[key - count])
+            mark = key if key < count else stations[key - count]
             of = f", setup {self.job.setups[key - count]}" if key >= count else ""
             yield self._group("station", f"position of the instrument at {self.names[mark]}{of}", parts, PLAN, mark)
 
@@ -200,11 +201,15 @@ class _Finder:
                     )
 
     def _concerned(self, place: int, rows: IntArray) -> bool:
-        if self.interesting is None:
-            return True
+        return bool(self._mask(place)[rows].any())
+
+    def _mask(self, place: int) -> BoolArray:
+        """Which rows (rows,) of a kind are interesting."""
         block = self.system.model.blocks[place]
-        mask = self.interesting[block.system_rows].reshape(-1, block.components)
-        return bool(mask[rows].any())
+        if self.interesting is None:
+            return np.ones(len(block.observations), dtype=bool)
+        mask: BoolArray = self.interesting[block.system_rows].reshape(-1, block.components).any(axis=1)
+        return mask
 
     def _gathered(self, entries: Sequence[Entries]) -> Iterator[tuple[int, list[Entries]]]:
         """The entries of each key that has enough rows and concerns an interesting one, keys ascending."""
@@ -214,12 +219,8 @@ class _Finder:
         counts = np.bincount(keys, minlength=int(keys.max(initial=-1)) + 1)
         wanted = counts >= FEWEST_ROWS
         if self.interesting is not None:
-            touched = np.zeros(len(wanted), dtype=bool)
-            for part in entries:
-                block = self.system.model.blocks[part.table]
-                mask = self.interesting[block.system_rows].reshape(-1, block.components).any(axis=1)
-                touched[part.key[mask[part.rows]]] = True
-            wanted &= touched
+            touched = [part.key[self._mask(part.table)[part.rows]] for part in entries]
+            wanted &= np.isin(np.arange(len(wanted)), np.concatenate(touched))
         sorted_parts = [(part, *_sorted_by_key(part.key)) for part in entries]
         for key in np.flatnonzero(wanted).tolist():
             chosen = []

@@ -108,6 +108,7 @@ class Hypotheses:
             weight=np.asarray(columns.multiply(columns).sum(axis=0)).ravel(),
             members=members,
             numbers=numbers,
+            shared=np.arange(self._first_group + len(self.groups)) >= self._first_group,
             square_sum=float(residual @ residual),
             freedom=self.system.freedom,
         )

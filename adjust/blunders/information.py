@@ -16,8 +16,10 @@ from adjust.solver import Factor
 class InformationMatrix(Protocol):
     """G of all columns, whole or in parts."""
 
-    affordable: int
-    """Columns that may be asked for at once without a second thought."""
+    @property
+    def affordable(self) -> int:
+        """Columns that may be asked for at once without a second thought."""
+        ...
 
     @property
     def diagonal(self) -> FloatArray:
@@ -38,7 +40,7 @@ class DenseInformation:
     """G in memory: for up to a few thousand columns."""
 
     matrix: FloatArray
-    affordable: int = 400
+    affordable = 400
 
     @cached_property
     def diagonal(self) -> FloatArray:
@@ -66,7 +68,7 @@ class SparseInformation:
     through: csr_array
     factor: Factor
     singles: tuple[tuple[int, FloatArray], ...]
-    affordable: int = 30
+    affordable = 30
     _kept: dict[int, FloatArray] = field(default_factory=dict, repr=False)
 
     @cached_property

@@ -65,10 +65,12 @@ class _Search:
         return self._as_it_is(self.evidence.allowing(ordered))
 
     def _as_it_is(self, allowed: Allowed) -> Choice:
-        return Choice(float(self.criterion.worth(allowed.statistic)) + self._price(allowed.chosen), allowed.chosen)
+        return Choice(self.criterion.cost(allowed), allowed.chosen)
 
-    def _price(self, chosen: Sequence[int], *joining: int) -> float:
-        return self.criterion.price([*self.evidence.size[list(chosen)].tolist(), *joining])
+    def _with(self, allowed: Allowed, gain: float, joining: Sequence[int]) -> Choice:
+        chosen = tuple(sorted((*allowed.chosen, *joining)))
+        price = self.criterion.price(map(self.evidence.sort, chosen))
+        return Choice(float(self.criterion.worth(allowed.statistic + gain)) + price, chosen)
 
     def _joined(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
         """One more, or two."""
@@ -92,44 +94,33 @@ class _Search:
             yield from self._with_two(allowed)
 
     def _with_one(self, allowed: Allowed) -> Iterator[Choice]:
-        """The best hypothesis of each size on top."""
-        for width, numbers in self.evidence.numbers.items():
+        """The best hypothesis of each sort on top."""
+        for numbers in self.evidence.sorts.values():
             gains = allowed.gains[numbers]
-            if not len(gains) or gains.max() <= 0.0:
-                continue
-            best = int(np.argmax(gains))
-            cost = float(self.criterion.worth(allowed.statistic + gains[best])) + self._price(allowed.chosen, width)
-            yield Choice(cost, tuple(sorted((*allowed.chosen, int(numbers[best])))))
+            if gains.max(initial=0.0) > 0.0:
+                best = int(np.argmax(gains))
+                yield self._with(allowed, float(gains[best]), [int(numbers[best])])
 
     def _with_two(self, allowed: Allowed) -> Iterator[Choice]:
-        """The best pair of single-column hypotheses on top."""
-        columns = self._paired(allowed)
-        if len(columns) < 2:
-            return
+        """The best pair of single-column hypotheses of each two sorts on top."""
+        columns = pair_columns(allowed)
+        owners = self.evidence.owner[columns]
+        shared = self.evidence.shared[owners]
         joint = pair_gains(allowed, columns)
-        best = int(np.argmax(joint))
-        first, second = divmod(best, len(columns))
-        if joint[first, second] <= 0.0:
-            return
-        cost = float(self.criterion.worth(allowed.statistic + joint[first, second])) + self._price(allowed.chosen, 1, 1)
-        owners = self._owner[columns[[first, second]]]
-        yield Choice(cost, tuple(sorted((*allowed.chosen, *owners.tolist()))))
+        for first, second in ((~shared, ~shared), (~shared, shared), (shared, shared)):
+            among = np.where(first[:, None] & second[None, :], joint, 0.0)
+            if among.max(initial=0.0) > 0.0:
+                i, k = divmod(int(np.argmax(among)), len(columns))
+                yield self._with(allowed, float(among[i, k]), [int(owners[i]), int(owners[k])])
 
-    @property
-    def _owner(self) -> IntArray:
-        """Single-column hypothesis (columns,) of each column, −1 for columns that have none."""
-        owner = np.full(len(self.evidence.score), -1)
-        owner[self.evidence.members[1][:, 0]] = self.evidence.numbers[1]
-        return owner
 
-    def _paired(self, allowed: Allowed) -> IntArray:
-        """The columns (k,) that pairs are made of: those that fit worst, as many as can be afforded."""
-        columns = self.evidence.members[1][:, 0]
-        columns = columns[allowed.testable[columns]]
-        most = self.evidence.information.affordable
-        if len(columns) <= most:
-            return columns
-        return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:most]])
+def pair_columns(allowed: Allowed) -> IntArray:
+    """The columns (k,) that pairs are made of: those that fit worst, as many as can be afforded."""
+    columns = np.flatnonzero(allowed.testable & (allowed.evidence.owner >= 0))
+    most = allowed.evidence.information.affordable
+    if len(columns) <= most:
+        return columns
+    return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:most]])
 
 
 def coupled_pairs(evidence: Evidence, chosen: tuple[int, ...]) -> Iterator[tuple[int, int]]:

@@ -1,0 +1,55 @@
+"""From scores and information to a verdict: the errors that are named, and what could stand in their place."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+from adjust.blunders.criterion import Criterion
+from adjust.blunders.evidence import Allowed, Evidence
+from adjust.blunders.information import DenseInformation
+from adjust.blunders.proposals import proposal
+from adjust.blunders.search import find_errors
+from adjust.blunders.separability import Replacement, settled, standing
+
+
+@dataclass(frozen=True)
+class Diagnosis:
+    """The errors that are named, `chosen` (ascending), and the tests once they are allowed for."""
+
+    evidence: Evidence
+    criterion: Criterion
+    chosen: tuple[int, ...]
+
+    @cached_property
+    def allowed(self) -> Allowed:
+        """The tests of everything once the chosen errors are allowed for."""
+        return self.evidence.allowing(self.chosen)
+
+    @cached_property
+    def replacements(self) -> tuple[Replacement, ...]:
+        """Other sets that the data leave standing."""
+        return tuple(standing(self.evidence, self.criterion, self.chosen))
+
+    def alternatives(self, hypothesis: int) -> tuple[int, ...]:
+        """What may stand in the place of one of the chosen, ascending: "one of these"."""
+        found = {
+            other
+            for replacement in self.replacements
+            if hypothesis in replacement.removed
+            for other in replacement.joined
+        }
+        return tuple(sorted(found))
+
+
+def diagnose(evidence: Evidence, criterion: Criterion, rows: int, start: tuple[int, ...] = ()) -> Diagnosis:
+    """The set of least cost from several beginnings; `rows` single components come first among the columns.
+
+    It begins with nothing, with `start`, and, where all of G is at hand, with what a robust estimate proposes.
+    """
+    beginnings = [(), start]
+    if isinstance(evidence.information, DenseInformation):
+        beginnings.append(proposal(evidence, criterion, rows))
+    choices = [find_errors(evidence, criterion, beginning) for beginning in dict.fromkeys(beginnings)]
+    best = min(choices, key=lambda choice: (choice.cost, choice.chosen))
+    return Diagnosis(evidence, criterion, settled(evidence, criterion, best.chosen))
