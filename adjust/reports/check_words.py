@@ -45,6 +45,8 @@ NAMES = {
 
 WALKED = 7
 """Marks of a walk that are named; of a longer one the first ones and the last."""
+NAMED = 3
+"""Observations named in one sentence of those that nothing tells apart; check.json names all."""
 MILLIMETRES = 1000.0
 
 
@@ -99,11 +101,12 @@ def described(check: Check, row: int) -> str:
     return f"{SHORT_NAMES.get(kind, kind)} {between} ({observed.source(row)})"
 
 
-def suspected(check: Check, suspicion: Suspicion) -> str:
-    """What a suspicion names, `or` between what nothing tells apart."""
-    names = [check.job.marks.names[mark] for mark in suspicion.marks]
-    control = [f"the given coordinates of {name}" for name in names]
-    return " or ".join([*(described(check, row) for row in suspicion.rows), *control])
+def suspected(check: Check, suspicion: Suspicion, most: int = NAMED) -> str:
+    """What a suspicion names, at most so many of what nothing tells apart."""
+    control = [f"the given coordinates of {check.job.marks.names[mark]}" for mark in suspicion.marks]
+    every = [*(described(check, row) for row in suspicion.rows[:most]), *control]
+    left = len(suspicion.rows) + len(control) - most
+    return " or ".join(every[:most]) + (f" or {left} more" if left > 0 else "")
 
 
 def check_verdict(check: Check) -> str:

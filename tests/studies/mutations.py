@@ -3,9 +3,11 @@
     python -m tests.studies.mutations    # rewrites the tables of docs/validation-closures.md
 
 A job is observed with the noise that it claims, so that its closures are those of careful work; then one figure of one
-row is made wrong and the job is checked. `found`: something exceeds its tolerance. `loop`: a closure that exceeds rests
-on the wrong row, or a remark names it or its mark. `line or setup`: what the check names to look at first has the wrong
-row's two marks, or its station. `row`: the wrong row itself is among what is named first.
+row is made wrong and the job is checked. `found`: something exceeds its tolerance. `loop`: a closure that exceeds
+rests on the wrong row, or a remark names it or its mark. `line or setup`: what the check names to look at first has
+the wrong row's two marks, or its station. `row`: the wrong row itself is among what is named first; `named`: how many
+rows (or marks of control) that are, on average. Rows that no closure rests on are counted as `unchecked` and left out
+of the shares.
 """
 
 from __future__ import annotations
@@ -34,7 +36,7 @@ from adjust.simulate import NETWORKS, observe
 JOBS = 200
 SEED = 20260204
 PAGE = Path(__file__).parents[2] / "docs" / "validation-closures.md"
-HEAD = ("mistake", "network", "jobs", "unchecked", "found", "loop", "line or setup", "row")
+HEAD = ("mistake", "network", "jobs", "unchecked", "found", "loop", "line or setup", "row", "named")
 GRADES = (1.0, 2.0, 5.0, 10.0)
 """Sizes of graded errors, in tolerances of the tightest closure that rests on the row."""
 
@@ -62,13 +64,15 @@ class Mistake:
 
 @dataclass(frozen=True)
 class Outcome:
-    """What the check of one job with a mistake said; `checked` where some closure rests on the row at all."""
+    """What the check of one job with a mistake said; `checked` where some closure rests on the row at all; `named`
+    counts the rows and marks of control that it tells to look at first."""
 
     checked: bool
     found: bool
     loop: bool
     line: bool
     row: bool
+    named: int
 
 
 def rows_of(job: Job, kind: type[Observations]) -> tuple[int, Observations]:
@@ -283,7 +287,19 @@ def judge(check: Check, planted: Planted) -> Outcome:
         loop=any(rests_on(check, planted, failing=True)) or remarked(check, planted),
         line=any(beside(check, row, planted) for row in named_first(check)) or exactly_named(check, planted),
         row=exactly_named(check, planted),
+        named=sum(len(first.rows) + len(first.marks) for first in check.suspicions[:1]),
     )
+
+
+def lines_in(label: str) -> set[str]:
+    """The sources that a label names: `pointings.csv:3+7` is `pointings.csv:3` and `pointings.csv:7`."""
+    file, _, lines = label.rpartition(":")
+    return {f"{file}:{line}" for line in lines.split("+")}
+
+
+def is_wrong(check: Check, row: int, planted: Planted) -> bool:
+    """Whether an observation is the wrong row, or made of it."""
+    return planted.source in lines_in(check.observed.source(row))
 
 
 def rests_on(check: Check, planted: Planted, *, failing: bool) -> Iterator[bool]:
@@ -291,8 +307,10 @@ def rests_on(check: Check, planted: Planted, *, failing: bool) -> Iterator[bool]
     for judged in check.closures:
         for closure in np.flatnonzero(judged.exceeds) if failing else range(len(judged.closures)):
             if planted.source:
+                sources = judged.closures.sources
                 rows = judged.closures.rows[int(closure)].tolist()
-                yield planted.source in map(check.observed.source, rows)
+                about = bool(sources) and planted.source in lines_in(sources[int(closure)])
+                yield about or any(is_wrong(check, row, planted) for row in rows)
             else:
                 marks = judged.closures.marks[int(closure)].tolist()
                 yield bool({marks[0], marks[-1]} & set(planted.marks))
@@ -300,9 +318,10 @@ def rests_on(check: Check, planted: Planted, *, failing: bool) -> Iterator[bool]
 
 def remarked(check: Check, planted: Planted) -> bool:
     """Whether a remark that exceeds names the wrong row or the wrong mark."""
-    sources = [check.observed.source(row) for remark in check.remarks if remark.exceeds for row in remark.rows]
-    marks = [mark for remark in check.remarks if remark.exceeds for mark in remark.marks]
-    return planted.source in sources if planted.source else bool(set(marks) & set(planted.marks))
+    remarks = [remark for remark in check.remarks if remark.exceeds]
+    if planted.source:
+        return any(is_wrong(check, row, planted) for remark in remarks for row in remark.rows)
+    return bool({mark for remark in remarks for mark in remark.marks} & set(planted.marks))
 
 
 def named_first(check: Check) -> list[int]:
@@ -315,7 +334,7 @@ def named_first(check: Check) -> list[int]:
 def exactly_named(check: Check, planted: Planted) -> bool:
     """Whether the wrong row, or the wrong mark of control, is among what is named first, or in a remark."""
     if planted.source:
-        named = planted.source in map(check.observed.source, named_first(check))
+        named = any(is_wrong(check, row, planted) for row in named_first(check))
     else:
         named = any(set(suspicion.marks) & set(planted.marks) for suspicion in check.suspicions[:1])
     return named or remarked(check, planted)
@@ -329,16 +348,23 @@ def beside(check: Check, row: int, planted: Planted) -> bool:
     return set(marks) == set(planted.marks) or (len(marks) > 1 and marks[0] == planted.marks[0])
 
 
-def table(mistakes: Iterable[Mistake], jobs: int) -> list[str]:
-    """One line of the page for each mistake."""
-    lines = [f"| {' | '.join(HEAD)} |", "| --- | --- | ---: | ---: | ---: | ---: | ---: | ---: |"]
-    for mistake in mistakes:
-        outcomes = [outcome(mistake, number) for number in range(jobs)]
+def table(mistakes: Iterable[tuple[str, str, list[Outcome]]]) -> list[str]:
+    """The page's lines: one for each mistake, by its name, its network and what many jobs made of it."""
+    lines = [f"| {' | '.join(HEAD)} |", "| --- | --- | ---: | ---: | ---: | ---: | ---: | ---: | ---: |"]
+    for name, network, outcomes in mistakes:
         checked = [result for result in outcomes if result.checked]
         shares = (sum(getattr(result, key) for result in checked) for key in ("found", "loop", "line", "row"))
-        cells = [mistake.name, mistake.network, str(jobs), str(jobs - len(checked))]
-        lines.append(f"| {' | '.join(cells + [percent(share, len(checked)) for share in shares])} |")
+        cells = [name, network, str(len(outcomes)), str(len(outcomes) - len(checked))]
+        cells += [percent(share, len(checked)) for share in shares]
+        named = [result.named for result in checked if result.found]
+        lines.append(f"| {' | '.join(cells)} | {f'{np.mean(named):.1f}' if named else '–'} |")
     return lines
+
+
+def run(mistakes: Iterable[Mistake], jobs: int) -> Iterator[tuple[str, str, list[Outcome]]]:
+    """Every mistake in so many jobs."""
+    for mistake in mistakes:
+        yield mistake.name, mistake.network, [outcome(mistake, number) for number in range(jobs)]
 
 
 def percent(part: int, whole: int) -> str:
@@ -346,16 +372,16 @@ def percent(part: int, whole: int) -> str:
     return f"{100 * part / whole:.0f} %" if whole else "–"
 
 
-def write_page(jobs: int) -> None:
-    """Rewrite the tables of the page."""
+def write_table(name: str, lines: Sequence[str]) -> None:
+    """Put a table between its markers on the page."""
     text = PAGE.read_text(encoding="utf-8")
-    graded_lines = [mistake for grade in GRADES for mistake in graded_mistakes(grade)]
-    for name, mistakes in (("gross", GROSS), ("graded", graded_lines)):
-        begin, end = (f"<!-- {name} mistakes: {part} -->\n" for part in ("begin", "end"))
-        head, rest = text.split(begin)
-        text = head + begin + "\n".join(table(mistakes, jobs)) + "\n" + end + rest.split(end)[1]
+    begin, end = (f"<!-- {name} mistakes: {part} -->\n" for part in ("begin", "end"))
+    head, rest = text.split(begin)
+    text = head + begin + "\n".join(lines) + "\n" + end + rest.split(end)[1]
     PAGE.write_text(text, encoding="utf-8", newline="\n")
 
 
 if __name__ == "__main__":
-    write_page(int(sys.argv[1]) if len(sys.argv) > 1 else JOBS)
+    wanted = int(sys.argv[1]) if len(sys.argv) > 1 else JOBS
+    write_table("gross", table(run(GROSS, wanted)))
+    write_table("graded", table(run([mistake for grade in GRADES for mistake in graded_mistakes(grade)], wanted)))

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -93,16 +94,27 @@ def check_job(job: Job) -> Check:
         *two_place_remarks(observed, stations, lines),
         *entry_remarks(observed, job.tolerances),
     ]
+    clues = tuple(find_clues(observed, checks, traverses))
     return Check(
         observed,
         checks,
         tuple(remarks),
         tuple(traverse_at(traverses, number) for number in np.flatnonzero(traverses.from_control).tolist()),
         tuple(shared_lines(checks)),
-        tuple(find_clues(observed, checks, traverses)),
-        tuple(suspicions(checks, observed)),
+        clues,
+        tuple(narrowed(suspicion, clues) for suspicion in suspicions(checks, observed)),
         notes,
     )
+
+
+def narrowed(suspicion: Suspicion, clues: Sequence[Clue]) -> Suspicion:
+    """A suspicion without the rows that a clue speaks against: where one wrong angle or length of a traverse would
+    explain it, rows of its other angles and lengths do not."""
+    rows = suspicion.rows
+    for clue in clues:
+        told = tuple(row for row in rows if row in clue.rows)
+        rows = told or rows
+    return suspicion if rows == suspicion.rows else replace(suspicion, rows=rows, marks=())
 
 
 def _geometry(job: Job) -> tuple[Geometry, tuple[str, ...]]:

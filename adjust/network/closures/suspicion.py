@@ -18,8 +18,6 @@ MOST_SUSPICIONS = 10
 """Named at most: whoever has more failing closures than that mends these first and checks again."""
 SECOND_THOUGHT = 1e-3
 """What a failing closure that is explained already counts against a row: it decides between equals, nothing else."""
-MOST_ROWS = 8
-"""Rows that one suspicion names at most; more of them say no more than the closure itself does."""
 LINE_CHECKS = frozenset(
     ("level_loop", "level_line", "height_loop", "vector_loop", "vector_line", "triangle", "quadrilateral", "angle_sum")
 ) | {"traverse_loop", "traverse_link"}
@@ -75,8 +73,8 @@ def suspicions(checks: Sequence[Judged], observed: Observed) -> list[Suspicion]:
         alike = [int(other) for other in np.flatnonzero(score == score[best]) if _same(closures_of, best, int(other))]
         found.append(
             Suspicion(
-                tuple(number for number in alike if number < rows)[:MOST_ROWS],
-                tuple(number - rows for number in alike if number >= rows)[:MOST_ROWS],
+                tuple(number for number in alike if number < rows),
+                tuple(number - rows for number in alike if number >= rows),
                 int(every[best]),
                 int(passing[best]),
             )
