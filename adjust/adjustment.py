@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
@@ -17,6 +17,9 @@ from adjust.quality import Ellipse, GlobalTest, circle_radius, ellipse_factor, h
 from adjust.residuals import Residuals
 from adjust.solver import Factor
 from adjust.unknowns import Unknowns
+
+if TYPE_CHECKING:
+    import pandas
 
 Status = Literal["fixed", "weighted", "adjusted", "none"]
 
@@ -183,6 +186,16 @@ class Adjustment:
     def accepted(self) -> bool:
         """Whether the global test passed (or could not be made) and no observation is suspect."""
         return self.solution.global_test.passed is not False and not self.suspects
+
+    def to_frame(self, table: Literal["marks", "lines", "observations"] = "marks") -> pandas.DataFrame:
+        """A table of the results for pandas, with the columns of the reports: units in their names, NaN for none.
+
+        Marks and observations are indexed by name and by source, lines by both ends. `attrs` holds title, date and
+        cautions. Raises OutputError where pandas is not installed.
+        """
+        from adjust.reports.frame import frame
+
+        return frame(self, table)
 
     def __repr__(self) -> str:
         from adjust.reports.summary import text

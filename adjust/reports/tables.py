@@ -25,15 +25,16 @@ VALUES = ("observed", "adjusted", "residual", "sd", "minimal_detectable_bias")
 
 def write_coordinates(adjustment: Adjustment, cautions: Iterable[str], path: Path) -> None:
     """One row for each mark."""
-    _write(path, cautions, map(_flat_marks, mark_figures(adjustment)))
+    _write(path, cautions, map(flat_marks, mark_figures(adjustment)))
 
 
 def write_residuals(adjustment: Adjustment, cautions: Iterable[str], path: Path) -> None:
     """One row for each component of each observation."""
-    _write(path, cautions, map(_flat_observations, observation_figures(adjustment)))
+    _write(path, cautions, map(flat_observations, observation_figures(adjustment)))
 
 
-def _flat_marks(figures: Figures) -> Figures:
+def flat_marks(figures: Figures) -> Figures:
+    """Columns of marks with nothing nested: a column for each figure of an ellipse and each covariance."""
     flat: Figures = {}
     for key, column in figures.items():
         if key == "covariance_mm2":
@@ -46,7 +47,7 @@ def _flat_marks(figures: Figures) -> Figures:
     return flat
 
 
-def _flat_observations(figures: Figures) -> Figures:
+def flat_observations(figures: Figures) -> Figures:
     """Both columns of each value; all rows of a kind share a unit."""
     nothing = [None] * len(figures["unit"])
     in_metres = figures["unit"][0] == "m"

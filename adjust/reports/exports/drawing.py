@@ -14,10 +14,11 @@ from adjust.arrays import FloatArray, IntArray
 from adjust.errors import FieldDataError, Mistake
 from adjust.frames import EllipsoidFrame
 from adjust.reports.exports.layers import NOWHERE, with_ellipse
-from adjust.reports.exports.options import Options, library
+from adjust.reports.exports.options import Options
 from adjust.reports.exports.places import METRES, THINNEST, Places, places_of
 from adjust.reports.exports.rows import lines_observed
 from adjust.reports.exports.text import one_line
+from adjust.reports.libraries import library
 from adjust.reports.saved import RESULTS, MarkRecord, SavedResults
 
 VERSION = "R2010"

@@ -11,9 +11,10 @@ from numpy.typing import NDArray
 
 from adjust.frames import EllipsoidFrame
 from adjust.reports.exports.layers import Layer, layers
-from adjust.reports.exports.options import Options, library
+from adjust.reports.exports.options import Options
 from adjust.reports.exports.places import in_own_crs, map_crs, places_of
 from adjust.reports.exports.rows import Cell
+from adjust.reports.libraries import library
 from adjust.reports.saved import SavedResults
 
 CONTENTS_DATE = "1970-01-01T00:00:00.000Z"

@@ -10,10 +10,11 @@ from pathlib import Path
 from typing import Any
 
 from adjust.errors import OutputError
-from adjust.reports.exports.options import Options, Table, library
+from adjust.reports.exports.options import Options, Table
 from adjust.reports.exports.rows import Cell
 from adjust.reports.exports.tables import table_rows
 from adjust.reports.exports.text import legal
+from adjust.reports.libraries import library
 from adjust.reports.saved import SavedResults
 
 SHEETS: dict[str, Table] = {"Marks": "marks", "Lines": "lines", "Observations": "observations"}
