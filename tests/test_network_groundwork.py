@@ -5,7 +5,6 @@ from __future__ import annotations
 import networkx as nx
 import numpy as np
 import pytest
-from building import build_job, exact, truth_of
 from hypothesis import given
 from hypothesis import strategies as st
 
@@ -19,6 +18,7 @@ from adjust.network.plan_relations import PlanRelations, plan_relations
 from adjust.network.sight_lines import SightLines
 from adjust.network.spread import spread
 from adjust.network.working_plane import working_plane
+from tests.building import build_job, exact, truth_of
 
 ROUNDING = 1e-9  # rad or m: sums of a few double-precision values
 

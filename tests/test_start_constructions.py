@@ -7,7 +7,6 @@ from typing import Any
 
 import numpy as np
 import pytest
-from building import ELLIPSOID, PLANE, build_job, exact, laid_out, shuffled, truth_of
 
 from adjust.arrays import FloatArray
 from adjust.errors import NetworkError
@@ -15,6 +14,7 @@ from adjust.frames import Frame
 from adjust.job import Job
 from adjust.network import Start, check_solvable, find_start
 from adjust.unknowns import find_unknowns
+from tests.building import ELLIPSOID, PLANE, build_job, exact, laid_out, shuffled, truth_of
 
 GROUND = {
     "A": (0.0, 0.0, 0.0),

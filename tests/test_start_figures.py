@@ -7,7 +7,6 @@ from typing import Any
 
 import numpy as np
 import pytest
-from building import ELLIPSOID, PLANE, build_job, exact, laid_out, shuffled, truth_of
 from hypothesis import event, given, settings
 from hypothesis import strategies as st
 
@@ -17,6 +16,7 @@ from adjust.frames import Frame
 from adjust.job import Job
 from adjust.network import Start, check_solvable, find_start
 from adjust.unknowns import find_unknowns
+from tests.building import ELLIPSOID, PLANE, build_job, exact, laid_out, shuffled, truth_of
 
 METRES = {"plane": 1e-4, "ellipsoid": 1.0}
 """Rounding, grown over the network, in the plane; what the working plane leaves over a few kilometres."""

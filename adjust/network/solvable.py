@@ -65,8 +65,10 @@ class _Complaint:
 
 
 def _check_parts(complaint: _Complaint, structure: Structure, failing: IntArray) -> None:
-    """Complain of parts without a datum; marks that fail each by itself have their own complaint."""
-    plan = tuple(part for part in plan_parts(structure) if not np.isin(part.marks, failing).all())
+    """Complain of parts without a datum; marks that are `failing` by themselves have their own."""
+    standing = structure.unknowns.sought[:, 0].copy()
+    standing[failing] = False
+    plan = tuple(part for part in plan_parts(structure) if standing[part.marks].any())
     heights = height_parts(structure)
     if structure.job.datum.mode == "inner":
         _check_one_piece(complaint, plan, "plan")
