@@ -101,11 +101,15 @@ def test_a_slip_of_one_face_names_its_lines(unit: str, tmp_path: Path) -> None:
     assert "42" in check.observed.source(check.suspicions[0].rows[0]).split(":")[1].split("+")
 
 
-@pytest.mark.parametrize("mistake", MISTAKES, ids=lambda mistake: mistake.name)
+WITHIN_NOISE = ("a face left out", "temperature", "pressure")
+"""What leaves the observations within their noise, so that nothing can be seen: the study's page says how often it
+is."""
+SEEN = [mistake for mistake in MISTAKES if not mistake.name.startswith(WITHIN_NOISE)]
+
+
+@pytest.mark.parametrize("mistake", SEEN, ids=lambda mistake: mistake.name)
 def test_gross_errors_in_a_book_are_pointed_at(mistake: RawMistake) -> None:
-    """A small run of the study; what leaves the observations within their noise cannot be seen."""
-    if mistake.name.startswith(("a face left out", "temperature", "pressure")):
-        pytest.skip("within the noise of the readings: the study's page says how often it is seen")
+    """A small run of the study."""
     outcomes = [outcome(mistake, number) for number in range(5)]
     pointed = sum(result.loop for result in outcomes if result.checked)
     assert pointed >= 0.8 * sum(result.checked for result in outcomes)

@@ -15,7 +15,6 @@ from __future__ import annotations
 import sys
 from collections.abc import Callable, Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
-from pathlib import Path
 
 import numpy as np
 
@@ -32,10 +31,11 @@ from adjust.observations import (
 )
 from adjust.observations.sighted import HeightedSight
 from adjust.simulate import NETWORKS, observe
+from tests.studies.pages import rewrite
 
 JOBS = 200
 SEED = 20260204
-PAGE = Path(__file__).parents[2] / "docs" / "validation-closures.md"
+PAGE = "validation-closures.md"
 HEAD = ("mistake", "network", "jobs", "unchecked", "found", "loop", "line or setup", "row", "named")
 GRADES = (1.0, 2.0, 5.0, 10.0)
 """Sizes of graded errors, in tolerances of the tightest closure that rests on the row."""
@@ -348,8 +348,8 @@ def beside(check: Check, row: int, planted: Planted) -> bool:
     return set(marks) == set(planted.marks) or (len(marks) > 1 and marks[0] == planted.marks[0])
 
 
-def table(mistakes: Iterable[tuple[str, str, list[Outcome]]]) -> list[str]:
-    """The page's lines: one for each mistake, by its name, its network and what many jobs made of it."""
+def table(mistakes: Iterable[tuple[str, str, list[Outcome]]]) -> str:
+    """The page's table, a line for each mistake, by its name, its network and what many jobs made of it."""
     lines = [f"| {' | '.join(HEAD)} |", "| --- | --- | ---: | ---: | ---: | ---: | ---: | ---: | ---: |"]
     for name, network, outcomes in mistakes:
         checked = [result for result in outcomes if result.checked]
@@ -358,7 +358,7 @@ def table(mistakes: Iterable[tuple[str, str, list[Outcome]]]) -> list[str]:
         cells += [percent(share, len(checked)) for share in shares]
         named = [result.named for result in checked if result.found]
         lines.append(f"| {' | '.join(cells)} | {f'{np.mean(named):.1f}' if named else '–'} |")
-    return lines
+    return "\n".join(lines) + "\n"
 
 
 def run(mistakes: Iterable[Mistake], jobs: int) -> Iterator[tuple[str, str, list[Outcome]]]:
@@ -372,16 +372,8 @@ def percent(part: int, whole: int) -> str:
     return f"{100 * part / whole:.0f} %" if whole else "–"
 
 
-def write_table(name: str, lines: Sequence[str]) -> None:
-    """Put a table between its markers on the page."""
-    text = PAGE.read_text(encoding="utf-8")
-    begin, end = (f"<!-- {name} mistakes: {part} -->\n" for part in ("begin", "end"))
-    head, rest = text.split(begin)
-    text = head + begin + "\n".join(lines) + "\n" + end + rest.split(end)[1]
-    PAGE.write_text(text, encoding="utf-8", newline="\n")
-
-
 if __name__ == "__main__":
     wanted = int(sys.argv[1]) if len(sys.argv) > 1 else JOBS
-    write_table("gross", table(run(GROSS, wanted)))
-    write_table("graded", table(run([mistake for grade in GRADES for mistake in graded_mistakes(grade)], wanted)))
+    by_grade = [mistake for grade in GRADES for mistake in graded_mistakes(grade)]
+    rewrite(PAGE, "gross mistakes", table(run(GROSS, wanted)))
+    rewrite(PAGE, "graded mistakes", table(run(by_grade, wanted)))

@@ -22,7 +22,8 @@ from adjust.field_book.writing import JobFolder
 from adjust.network.closures import check_job
 from adjust.simulate.raw_job import read_by_a_party
 from adjust.simulate.raw_pointings import Habits
-from tests.studies.mutations import JOBS, Outcome, Planted, judge, table, write_table
+from tests.studies.mutations import JOBS, PAGE, Outcome, Planted, judge, table
+from tests.studies.pages import rewrite
 from tests.studies.raw_readings import invented_plan
 
 SEED = 20260207
@@ -165,4 +166,4 @@ def run(jobs: int) -> Iterator[tuple[str, str, list[Outcome]]]:
 
 
 if __name__ == "__main__":
-    write_table("raw", table(run(int(sys.argv[1]) if len(sys.argv) > 1 else JOBS)))
+    rewrite(PAGE, "raw mistakes", table(run(int(sys.argv[1]) if len(sys.argv) > 1 else JOBS)))
