@@ -12,6 +12,7 @@ from adjust.arrays import FloatArray, IntArray
 from adjust.frames import Frame, GeoidGrid
 from adjust.observations import Observations, Provenance
 from adjust.reductions.outcome import Reduction
+from adjust.standards import Specification
 from adjust.tolerances import Tolerances
 
 
@@ -89,6 +90,8 @@ class Job:
     statistics: Statistics = field(default_factory=Statistics)
     tolerances: Tolerances = field(default_factory=Tolerances)
     """What closures may miss by before anything is adjusted."""
+    specification: Specification = field(default_factory=Specification)
+    """What the adjusted coordinates have to be good for."""
     orthometric: bool = False
     """What heights mean in an ellipsoid frame: above the geoid, or above the ellipsoid."""
     geoid_grid: GeoidGrid | None = None

@@ -1,4 +1,4 @@
-"""`hubtack adjust`: a job folder in, four result files out."""
+"""`hubtack adjust`: a job folder in, five result files out."""
 
 from __future__ import annotations
 
@@ -35,7 +35,8 @@ READ, ADJUSTED = 0.15, 0.85
 def adjust_command(job: Path, out: Path | None, order: Literal["worst", "book"]) -> int:
     """Adjust JOB, a job folder or its job.toml.
 
-    Writes results.json, coordinates.csv, residuals.csv and listing.txt, all or none of them, and prints a verdict.
+    Writes results.json, coordinates.csv, residuals.csv, listing.txt and the page report.html, all or none of them, and
+    prints a verdict.
 
     \b
     Exit status:

@@ -20,6 +20,7 @@ from adjust.field_book.mistakes import Likeness, Mistakes
 from adjust.field_book.notes import note_control, note_frame, note_left_out, note_unread
 from adjust.field_book.raw_tables import RawTables
 from adjust.field_book.settings import SettingsReader
+from adjust.field_book.specification import read_specification
 from adjust.field_book.tolerances import read_tolerances
 from adjust.frames import Frame
 from adjust.job import Datum, Job, Marks, Statistics
@@ -68,6 +69,7 @@ class JobReader:
             raise AssertionError("a frame or marks that cannot be made leave a mistake behind")
         self._check_frame(frame, in_use + left_out)
         datum = self._datum(marks)
+        specification = read_specification(self.job_file.specification, marks.index, self.reader)
         orthometric = frame.kind == "ellipsoid" and self.job_file.frame.heights != "ellipsoidal"
         if not self.mistakes:
             needed = marks_that_need_geoid(frame, orthometric, marks, in_use)
@@ -86,6 +88,7 @@ class JobReader:
             datum=datum,
             statistics=Statistics(**self.job_file.statistics.model_dump()),
             tolerances=tolerances,
+            specification=specification,
             orthometric=orthometric,
             geoid_grid=grid,
             refraction_coefficient=self.job_file.frame.refraction_coefficient,

@@ -1,4 +1,4 @@
-"""The four files of an adjustment."""
+"""The five files of an adjustment."""
 
 from __future__ import annotations
 
@@ -6,14 +6,16 @@ from pathlib import Path
 
 from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
+from adjust.reports.check_records import check_record
 from adjust.reports.listing import write_listing
+from adjust.reports.page import write_page
 from adjust.reports.publish import Writer, publish
 from adjust.reports.results import write_results
 from adjust.reports.selection import Order
 from adjust.reports.tables import write_coordinates, write_residuals
 from adjust.reports.verdict import cautions
 
-REPORTS = ("results.json", "coordinates.csv", "residuals.csv", "listing.txt")
+REPORTS = ("results.json", "coordinates.csv", "residuals.csv", "listing.txt", "report.html")
 
 
 def write_reports(adjustment: Adjustment, folder: Path, order: Order = "worst", check: Check | None = None) -> None:
@@ -23,10 +25,12 @@ def write_reports(adjustment: Adjustment, folder: Path, order: Order = "worst", 
     OutputError where the folder cannot be written.
     """
     warned = cautions(adjustment)
+    closures = [] if check is None else [check_record(judged) for judged in check.closures]
     writers: dict[str, Writer] = {
-        "results.json": lambda path: write_results(adjustment, warned, path),
+        "results.json": lambda path: write_results(adjustment, warned, path, closures),
         "coordinates.csv": lambda path: write_coordinates(adjustment, warned, path),
         "residuals.csv": lambda path: write_residuals(adjustment, warned, path),
         "listing.txt": lambda path: write_listing(adjustment, order, path, check),
+        "report.html": lambda path: write_page(adjustment, path, check),
     }
     publish(folder, writers)

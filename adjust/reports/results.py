@@ -10,6 +10,8 @@ from typing import Any, TextIO
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame
 from adjust.reports.records import Figures, Record, line_figures, mark_figures, number, observation_figures
+from adjust.reports.specification import specification_record, specified
+from adjust.reports.weights import weight_records
 
 SCHEMA = "hubtack-results/1"
 
@@ -17,10 +19,11 @@ _ENCODER = json.JSONEncoder(ensure_ascii=False, allow_nan=False)
 """Floats in the shortest digits that read back as the same number; NaN is refused rather than written."""
 
 
-def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path) -> None:
+def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path, closures: Iterable[Record] = ()) -> None:
     """One key a line, and one line for each mark, observation and pair, so that results compare line by line.
 
-    Text is made column by column and some rows at a time: a million observations never stand in memory as objects.
+    `closures` are the records of the checks before the adjustment, as `check.json` has them. Text is made column by
+    column and some rows at a time: a million observations never stand in memory as objects.
     """
     with path.open("w", encoding="utf-8", newline="\n") as file:
         file.write(f'{{\n"schema": {_ENCODER.encode(SCHEMA)},\n')
@@ -31,7 +34,10 @@ def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path) -
         _write_records(file, "relative", line_figures(adjustment))
         write_list(file, "suspects", iter(adjustment.suspects))
         write_list(file, "cautions", iter(cautions))
-        write_list(file, "notes", iter(adjustment.notes), last=True)
+        write_list(file, "notes", iter(adjustment.notes))
+        file.write(f'"specification": {_ENCODER.encode(specification_record(specified(adjustment)))},\n')
+        write_list(file, "weights", weight_records(adjustment))
+        write_list(file, "closures", iter(closures), last=True)
         file.write("}\n")
 
 
