@@ -14,14 +14,22 @@ from functools import cached_property
 import numpy as np
 from scipy.sparse import csr_array
 
-from adjust.arrays import FloatArray, IntArray
+from adjust.arrays import BoolArray, FloatArray, IntArray
+from adjust.errors import NetworkError
 from adjust.frames import EllipsoidFrame, Frame, Geometry
 from adjust.frames.reference_ellipsoid import local_axes
+from adjust.job import Job
 from adjust.network import Part
+from adjust.network.wording import listed
 from adjust.unknowns import EAST, NORTH, UP, Unknowns
 
 HELD = 1000.0
 """Weight of a datum row, 1/m: of the order of millimetre observations, so that the system stays well scaled."""
+
+
+LEAST_HOLD = 1e-9
+"""A motion that the carriers feel by less than this share of what the whole network does is not held: two marks a metre
+apart in a hundred kilometres of network still feel its rotation a thousand times more."""
 
 
 @dataclass(frozen=True)
@@ -42,6 +50,46 @@ class InnerDatum:
     def correction(self, displacement: FloatArray) -> FloatArray:
         """What to add (unknowns,) so that `displacement` (unknowns,) from the given coordinates meets Gₛᵀx = 0."""
         return -self.motions @ (self.inverse @ (self.carried.T @ displacement))
+
+
+def inner_datum(job: Job, part: Part, geometry: Geometry, unknowns: Unknowns) -> InnerDatum:
+    """The inner constraints of a job's one part, carried by the coordinates that it gives.
+
+    Raises NetworkError where the marks that carry the datum leave a motion open, as one mark does a rotation.
+    """
+    motions = motions_of(part, geometry, unknowns, range(len(job.setups)))
+    carried = np.where(carriers(job, unknowns)[:, None], motions, 0.0)
+    singular_values = np.linalg.svd(carried, compute_uv=False)
+    if singular_values[-1] <= LEAST_HOLD * np.linalg.norm(motions, axis=0).max():
+        raise _not_carried(job, part)
+    return InnerDatum(motions, carried)
+
+
+def _not_carried(job: Job, part: Part) -> NetworkError:
+    missing = " and ".join(name for name, elements in _ELEMENTS.items() if elements & part.missing)
+    given = ~np.isnan(job.marks.given).all(axis=1)
+    names = [job.marks.names[mark] for mark in job.datum.marks or np.flatnonzero(given)]
+    return NetworkError(
+        f"the inner constraints have to hold {missing}, and the coordinates that marks.csv gives for "
+        f"{listed(names)} cannot; give the coordinates of more marks, or none, and let [datum] marks name enough of "
+        "those that have some",
+        names,
+    )
+
+
+def carriers(job: Job, unknowns: Unknowns) -> BoolArray:
+    """Which unknowns (unknowns,) carry the datum: coordinates given at the marks named.
+
+    Where no plan is given at all, the plan of the start coordinates carries it, and likewise for heights.
+    """
+    marks = np.zeros(len(job.marks), dtype=bool)
+    marks[list(job.datum.marks) or slice(None)] = True
+    given = ~np.isnan(job.marks.given) & unknowns.sought
+    for coordinates in (slice(EAST, UP), slice(UP, None)):
+        given[:, coordinates] |= not given[:, coordinates].any()
+    result = np.zeros(unknowns.count, dtype=bool)
+    result[: unknowns.coordinates] = (given & marks[:, None])[unknowns.sought]
+    return result
 
 
 def motions_of(part: Part, geometry: Geometry, unknowns: Unknowns, setups: Sequence[int]) -> FloatArray:
@@ -67,6 +115,14 @@ def motions_of(part: Part, geometry: Geometry, unknowns: Unknowns, setups: Seque
 
 
 _ORDER = ("east", "north", "height", "rotation", "scale")
+
+_ELEMENTS: dict[str, set[str]] = {
+    "position": {"east", "north"},
+    "height": {"height"},
+    "rotation": {"rotation"},
+    "scale": {"scale"},
+}
+"""Datum elements by the words for them."""
 
 Fields = tuple[dict[str, FloatArray], float]
 

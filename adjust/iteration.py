@@ -7,8 +7,8 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from adjust.arrays import BoolArray, FloatArray, IntArray
-from adjust.datum import InnerDatum, displacement_of_unknowns, minimal_datum, motions_of
+from adjust.arrays import FloatArray, IntArray
+from adjust.datum import InnerDatum, displacement_of_unknowns, inner_datum, minimal_datum
 from adjust.errors import ConvergenceError, NetworkError
 from adjust.frames import Geometry
 from adjust.job import Job
@@ -130,20 +130,10 @@ class _GaussNewton:
         if not self.parts:
             return None
         geometry, unknowns = self.state.geometry, self.unknowns
-        motions = motions_of(self.parts[0], geometry, unknowns, range(len(self.job.setups)))
-        inner = InnerDatum(motions, np.where(self._carriers()[:, None], motions, 0.0))
+        inner = inner_datum(self.job, self.parts[0], geometry, unknowns)
         away = displacement_of_unknowns(geometry.frame, self.given, geometry.coordinates, unknowns)
         self.state = self._after(inner.correction(away))
         return inner
-
-    def _carriers(self) -> BoolArray:
-        """Which unknowns (unknowns,) carry the datum: coordinates given at the marks named; all, if none are given."""
-        marks = np.zeros(len(self.job.marks), dtype=bool)
-        marks[list(self.job.datum.marks) or slice(None)] = True
-        known = ~np.isnan(self.job.marks.given[self.unknowns.sought])
-        carriers = np.zeros(self.unknowns.count, dtype=bool)
-        carriers[: self.unknowns.coordinates] = marks[self.unknowns.mark_of_column()] & (known if known.any() else True)
-        return carriers
 
     def _moved(self, before: Geometry) -> float:
         moved = before.frame.displacement(before.coordinates, self.state.geometry.coordinates)

@@ -110,6 +110,17 @@ def test_inner_constraints_over_chosen_marks() -> None:
         assert_allclose(one.w, other.w, rtol=0, atol=1e-5)
 
 
+def test_inner_constraints_with_one_given_height_and_no_plan() -> None:
+    job = total_station_job(inner=True)
+    given = np.full_like(job.marks.given, np.nan)
+    given[2, 2] = 12.0
+    result = adjust(replace(job, marks=replace(job.marks, given=given)))
+    assert_allclose(result.coordinates[2, 2], 12.0, rtol=0, atol=1e-9)  # m: it alone carries the height
+    assert_allclose(result.standard_deviations[2, 2], 0, rtol=0, atol=1e-6)  # m
+    plan, fitted = (np.hypot(*one.standard_deviations[:, :2].T) for one in (result, adjust(job)))
+    assert_allclose(plan, fitted, rtol=0, atol=1e-8)  # m: the plan lies turned as it was drawn, no less certain
+
+
 def test_inner_constraints_on_the_ellipsoid() -> None:
     frame = EllipsoidFrame("EPSG:25832")
     grid = np.array([[500000.0, 5500000.0], [503000.0, 5501000.0], [501000.0, 5504000.0], [504500.0, 5504000.0]])

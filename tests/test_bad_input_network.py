@@ -88,6 +88,10 @@ CASES: dict[str, tuple[Files, tuple[str, ...]]] = {
         ),
         ("P", "Q"),
     ),
+    "inner constraints carried by one mark": (
+        {**PLANE, "azimuths.csv": None, "job.toml": PLANE["job.toml"] + '[datum]\nmode = "inner"\nmarks = ["002"]\n'},
+        ("position", "mark 002", "more marks"),
+    ),
     "a zenith angle to a mark without plan": (
         plane(CONTROL + "P,,,,,\n", zeniths="at,to,zenith_deg\nA,P,89\n"),
         ("P",),

@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from adjust import adjust
 from adjust.reports.results import write_results
 from adjust.reports.verdict import cautions
 from tests.adjusted_networks import JOBS, adjusted
@@ -214,6 +215,23 @@ def test_free_network_reports_its_defect_and_says_what_the_sds_refer_to(tmp_path
     assert results["solution"]["datum_defect"] == 4  # a shift in three axes and a turn about the vertical
     assert any("Free network" in caution for caution in results["cautions"])
     assert all(mark["plan_status"] == "adjusted" for mark in results["marks"])
+
+
+@pytest.mark.parametrize(
+    ("missing", "words", "others"),
+    [
+        ([0, 1], "no plan coordinates were given", "no heights were given"),
+        ([2], "no heights were given", "no plan coordinates were given"),
+    ],
+)
+def test_free_network_says_which_coordinates_are_arbitrary(missing, words, others):
+    job = adjusted("free").job
+    given = job.marks.given.copy()
+    given[:, missing] = np.nan
+    said = " ".join(cautions(adjust(replace(job, marks=replace(job.marks, given=given)))))
+    assert words in said
+    assert others not in said
+    assert "the fit on the given coordinates" in said  # those of the other kind
 
 
 def test_confidence_ellipse_is_the_standard_one_scaled(tmp_path):

@@ -11,6 +11,7 @@ from adjust.adjustment import Adjustment
 from adjust.quality import LEAST_REDUNDANCY
 from adjust.reports.selection import listed_observations
 from adjust.reports.wording import between, what
+from adjust.unknowns import UP
 
 NAMED = 5
 """Names in one sentence: enough to find the place, few enough to read."""
@@ -104,7 +105,7 @@ def _basis(adjustment: Adjustment) -> Iterator[str]:
     """What the sds rest on."""
     solution = adjustment.solution
     if solution.datum_defect:
-        yield "Free network: coordinates and sds refer to the fit on the given coordinates, not to outside control."
+        yield from _free_network(adjustment)
     if solution.sd_basis == "posterior":
         if solution.degrees_of_freedom == 0:
             yield "The sds were to be scaled with the estimated σ₀, which does not exist without degrees of freedom."
@@ -114,3 +115,18 @@ def _basis(adjustment: Adjustment) -> Iterator[str]:
                 f"The sds are scaled with a σ₀ estimated from {solution.degrees_of_freedom} degrees of freedom, "
                 f"itself uncertain by about {spread:.0f} %."
             )
+
+
+def _free_network(adjustment: Adjustment) -> Iterator[str]:
+    """What the coordinates of a free network refer to, where any were given and where none were."""
+    sought = adjustment.unknowns.sought
+    given = ~np.isnan(adjustment.job.marks.given) & sought
+    if given.any():
+        yield "Free network: coordinates and sds refer to the fit on the given coordinates, not to outside control."
+    if sought[:, :UP].any() and not given[:, :UP].any():
+        yield (
+            "Free network, and no plan coordinates were given: its position, its north unless an azimuth holds it, "
+            "and its scale unless distances hold it are arbitrary."
+        )
+    if sought[:, UP].any() and not given[:, UP].any():
+        yield "Free network, and no heights were given: they count from an arbitrary level."
