@@ -214,5 +214,11 @@ def test_figures_that_do_not_exist_are_nan():
     np.testing.assert_array_equal(circle_radius(np.array([0.0, np.nan]), np.array([0.0, np.nan])), [0, np.nan])
 
 
+def test_what_is_held_stays_exact_where_the_scale_is_unknown():
+    ellipse = standard_ellipse(np.array([np.zeros((2, 2)), np.diag([4.0, 1.0])])).scaled(math.nan)
+    np.testing.assert_array_equal(ellipse, [[0, np.nan], [0, np.nan], [0, np.nan]])
+    np.testing.assert_array_equal(half_interval(np.array([0.0, 1.0]), 0.95, 0), [0, np.nan])
+
+
 def test_half_interval_is_the_normal_quantile():
     np.testing.assert_allclose(half_interval(np.array([2.0]), 0.9), 2 * ndtri(0.95), rtol=1e-15)

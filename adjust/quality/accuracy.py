@@ -35,9 +35,10 @@ def interval_factor(confidence: float, degrees_of_freedom: int | None) -> float:
 def half_interval(sd: FloatArray, confidence: float = 0.95, degrees_of_freedom: int | None = None) -> FloatArray:
     """Half the interval about a height that holds the true one with probability `confidence`, in the unit of `sd`.
 
-    1.9600 sd at 95 % on known sds: FGDC-STD-007.3-1998, Geospatial Positioning Accuracy Standards, part 3.
+    0 for an sd of 0, whatever is known of σ₀. 1.9600 sd at 95 % on known sds: FGDC-STD-007.3-1998, Geospatial
+    Positioning Accuracy Standards, part 3.
     """
-    return sd * interval_factor(confidence, degrees_of_freedom)
+    return np.where(sd == 0.0, 0.0, sd * interval_factor(confidence, degrees_of_freedom))
 
 
 def ellipse_factor(confidence: float, degrees_of_freedom: int | None = None) -> float:

@@ -20,8 +20,12 @@ class Ellipse(NamedTuple):
     azimuth: FloatArray
 
     def scaled(self, factor: float) -> Ellipse:
-        """The same ellipse with semi-axes `factor` times as long."""
-        return Ellipse(self.semi_major * factor, self.semi_minor * factor, self.azimuth)
+        """The same ellipse with semi-axes `factor` times as long.
+
+        With an unknown factor (NaN) nothing of it exists, but a point stays a point.
+        """
+        major, minor = (np.where(axis == 0.0, 0.0, axis * factor) for axis in self[:2])
+        return Ellipse(major, minor, np.where(np.isnan(major), np.nan, self.azimuth))
 
 
 def standard_ellipse(covariance: FloatArray) -> Ellipse:
