@@ -94,4 +94,5 @@ class Context:
     def misfit(self, errors: FloatArray) -> FloatArray:
         """√((∇ − e)ᵀ Q⁻¹ (∇ − e)) (k,) for supposed errors e (k, q): ∇ the estimated error, Q its covariance."""
         away = np.atleast_2d(errors) - self.estimated_error
-        return np.sqrt(np.einsum("ki,ki->k", away, np.linalg.solve(self.error_covariance, away.T).T))
+        squares = np.einsum("ki,ki->k", away, np.linalg.solve(self.error_covariance, away.T).T)
+        return np.asarray(np.sqrt(squares), dtype=np.float64)

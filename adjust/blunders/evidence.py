@@ -176,13 +176,13 @@ class Allowed:
 
     def _joint(self, members: IntArray) -> FloatArray:
         """T (m,) of hypotheses of several columns (m, q)."""
-        along = self.basis[members]
-        blocks = self.evidence.information.blocks(members) - along @ along.transpose(0, 2, 1)
-        scale = np.sqrt(self.evidence.information.diagonal[members])
         sound = self.testable[members].all(axis=1)
-        scaled = blocks[sound] / (scale[sound, :, None] * scale[sound, None, :])
-        values, vectors = np.linalg.eigh(scaled)
-        turned = np.einsum("mij,mi->mj", vectors, self.score[members[sound]] / scale[sound])
+        tested = members[sound]
+        along = self.basis[tested]
+        blocks = self.evidence.information.blocks(tested) - along @ along.transpose(0, 2, 1)
+        scale = np.sqrt(self.evidence.information.diagonal[tested])
+        values, vectors = np.linalg.eigh(blocks / (scale[:, :, None] * scale[:, None, :]))
+        turned = np.einsum("mij,mi->mj", vectors, self.score[tested] / scale)
         regular = values[:, 0] > LEAST_INFORMATION
         joint = np.zeros(len(members))
         joint[np.flatnonzero(sound)[regular]] = np.sum(turned[regular] ** 2 / values[regular], axis=1)

@@ -208,8 +208,8 @@ class _Finder:
         block = self.system.model.blocks[place]
         if self.interesting is None:
             return np.ones(len(block.observations), dtype=bool)
-        mask: BoolArray = self.interesting[block.system_rows].reshape(-1, block.components).any(axis=1)
-        return mask
+        mask = self.interesting[block.system_rows].reshape(-1, block.components)
+        return np.asarray(mask.any(axis=1), dtype=np.bool_)
 
     def _gathered(self, entries: Sequence[Entries]) -> Iterator[tuple[int, list[Entries]]]:
         """The entries of each key that has enough rows and concerns an interesting one, keys ascending."""
@@ -220,7 +220,7 @@ class _Finder:
         wanted = counts >= FEWEST_ROWS
         if self.interesting is not None:
             touched = [part.key[self._mask(part.table)[part.rows]] for part in entries]
-            wanted &= np.isin(np.arange(len(wanted)), np.concatenate(touched))
+            wanted = wanted & np.isin(np.arange(len(wanted)), np.concatenate(touched))
         sorted_parts = [(part, *_sorted_by_key(part.key)) for part in entries]
         for key in np.flatnonzero(wanted).tolist():
             chosen = []

@@ -47,13 +47,14 @@ class Hypotheses:
         return [block for block in self.system.model.blocks if block.components > 1]
 
     @cached_property
-    def _first_group(self) -> int:
+    def first_group(self) -> int:
+        """Number of the first group."""
         return self.rows + sum(len(block.observations) for block in self._correlated)
 
     def hypothesis(self, number: int) -> Hypothesis:
         """One of them, with its words."""
-        if number >= self._first_group:
-            return self.groups[number - self._first_group].hypothesis
+        if number >= self.first_group:
+            return self.groups[number - self.first_group].hypothesis
         if number >= self.rows:
             return self._whole(number - self.rows)
         place = max(i for i, block in enumerate(self.system.model.blocks) if block.offset <= number)
@@ -108,7 +109,7 @@ class Hypotheses:
             weight=np.asarray(columns.multiply(columns).sum(axis=0)).ravel(),
             members=members,
             numbers=numbers,
-            shared=np.arange(self._first_group + len(self.groups)) >= self._first_group,
+            shared=np.arange(self.first_group + len(self.groups)) >= self.first_group,
             square_sum=float(residual @ residual),
             freedom=self.system.freedom,
         )

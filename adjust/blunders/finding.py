@@ -1,0 +1,78 @@
+"""From an adjustment to its blunders: supposed errors, search, and the words for what was found."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import numpy as np
+
+from adjust.adjustment import Adjustment
+from adjust.blunders.criterion import Criterion
+from adjust.blunders.diagnosis import diagnose
+from adjust.blunders.findings import Findings
+from adjust.blunders.hypotheses import MOST_DENSE, Hypotheses
+from adjust.blunders.round import Round
+from adjust.blunders.system import System, model_of
+from adjust.blunders.telling import tell
+from adjust.job import Job
+from adjust.model import State
+from adjust.solver import Analysis
+from adjust.unknowns import Unknowns
+
+NEAR = 0.01
+"""Metres: a network that moves by less than this when its blunders are allowed for is linear enough. Across a sight of
+50 m the neglected second order is s²/2D, a thousandth of a millimetre."""
+
+MOST_ROUNDS = 6
+"""Linearisations at most: each follows the network to where it stands without the blunders of the round before."""
+
+
+def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> Findings:
+    """Every observation, and everything observations share, that is wrong at the job's significance.
+
+    `folder` is where the job was read from: entries are then quoted as they stand in the book.
+    """
+    state = State(adjustment.geometry, adjustment.orientations)
+    return search(adjustment.job, adjustment.unknowns, state, folder)
+
+
+def search(job: Job, unknowns: Unknowns, state: State, folder: str | Path | None = None) -> Findings:
+    """As `find_blunders`, from any state near the truth, converged or not."""
+    return tell(_Rounds(job, unknowns, state).last(), folder)
+
+
+class _Rounds:
+    """Linearise, diagnose, go where the network stands without the errors, until that is where it was."""
+
+    def __init__(self, job: Job, unknowns: Unknowns, state: State) -> None:
+        self.job, self.state = job, state
+        self.model = model_of(job, unknowns, state)
+        self.analysis: Analysis | None = None
+
+    def last(self) -> Round:
+        """The round that settles it."""
+        start: tuple[int, ...] = ()
+        for _ in range(MOST_ROUNDS):
+            found = self._round(start)
+            if found.moved <= NEAR:
+                break
+            self.state = found.state
+            start = tuple(number for number in found.diagnosis.chosen if number < found.hypotheses.first_group)
+        return found
+
+    def _round(self, start: tuple[int, ...]) -> Round:
+        system = System.at(self.job, self.model, self.state, self.analysis)
+        self.analysis = system.analysis
+        if self.model.observation_rows <= MOST_DENSE // 2:
+            return self._diagnosed(Hypotheses.of(system), start)
+        first = self._diagnosed(Hypotheses(system, ()), start)
+        rows = np.flatnonzero(np.abs(first.hypotheses.columns[:, first.diagnosis.allowed.columns]).sum(axis=1) > 0.0)
+        return self._diagnosed(Hypotheses.of(system, rows), first.diagnosis.chosen) if len(rows) else first
+
+    def _diagnosed(self, hypotheses: Hypotheses, start: tuple[int, ...]) -> Round:
+        statistics = self.job.statistics
+        evidence = hypotheses.evidence
+        criterion = Criterion(
+            statistics.significance, statistics.sd_basis == "posterior", evidence.square_sum, evidence.freedom
+        )
+        return Round(hypotheses, diagnose(evidence, criterion, hypotheses.rows, start))

@@ -1,0 +1,45 @@
+"""One linearisation of a job with its diagnosis, and the network without the errors found there."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+
+import numpy as np
+from scipy.sparse import csr_array
+
+from adjust.blunders.diagnosis import Diagnosis
+from adjust.blunders.evidence import Allowed
+from adjust.blunders.hypotheses import Hypotheses
+from adjust.blunders.system import System
+from adjust.model import State
+
+
+@dataclass(frozen=True)
+class Round:
+    """Supposed errors of a system, and which of them are believed."""
+
+    hypotheses: Hypotheses
+    diagnosis: Diagnosis
+
+    @property
+    def system(self) -> System:
+        """The system the diagnosis is made of."""
+        return self.hypotheses.system
+
+    def columns_of(self, allowed: Allowed) -> csr_array:
+        """H (rows, s), whitened, of the errors that are allowed for."""
+        return csr_array(self.hypotheses.columns[:, allowed.columns])
+
+    @cached_property
+    def state(self) -> State:
+        """Where the network stands without the errors found."""
+        allowed = self.diagnosis.allowed
+        return self.system.without(self.columns_of(allowed), allowed.errors)
+
+    @cached_property
+    def moved(self) -> float:
+        """How far, metres, that is from where it was linearised."""
+        geometry = self.system.state.geometry
+        moved = geometry.frame.displacement(geometry.coordinates, self.state.geometry.coordinates)
+        return float(np.abs(moved[self.system.model.unknowns.sought]).max(initial=0.0))
