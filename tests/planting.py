@@ -288,17 +288,14 @@ def slope_of_line(row: Any, geometry: Any) -> float:
     return float(slope.predict(geometry)[0, 0])
 
 
-CONSTANTS = {"round prism": -0.0344, "small prism": -0.0175, "foil": 0.002}
-"""Metres, invented, for jobs whose job file names its targets."""
+CONSTANTS = {"round prism": -0.0344, "small prism": -0.0175}
+"""Metres, for jobs whose job file names its targets."""
 
 
 def target_constant(booked: Booked, generator: np.random.Generator) -> Cells | None:
-    """Left out, applied twice, or that of another target; in a job that names none, one of the usual ones."""
-    if booked.job.target_constants:
-        used, other = generator.permutation(list(booked.job.target_constants.values()))[:2]
-        change = float(generator.choice([used, -used, other - used]))
-    else:
-        change = float(generator.choice([0.0344, 0.030]) * generator.choice([-1, 1]))
+    """Left out, that of another target, or applied twice, the first five times and the second thrice as often."""
+    used, right = generator.permutation(list(booked.job.target_constants.values()))
+    change = float(generator.choice([-right, used - right, right], p=np.array([5.0, 3.0, 1.0]) / 9.0))
     return revalued(booked.cells, VALUE[booked.kind], lambda value: value + change)
 
 
@@ -351,3 +348,22 @@ def antenna_height(booked: Booked, generator: np.random.Generator) -> Cells | No
     for name, part in zip(("dx", "dy", "dz"), (size * up).tolist(), strict=True):
         cells = revalued(cells, name, lambda value, part=part: value + part)  # type: ignore[misc]
     return cells
+
+
+def spoil_group(booked: Booked, role: int, text: str) -> tuple[Job, Cells]:
+    """A job in which every sight that shares the booked row's height has another one, and the first line's cells."""
+    name = HEIGHTS[role]
+    cells = {key: cell for key, cell in booked.cells.items() if key != name}
+    if text:
+        cells[name] = Cell(booked.cells[name].title, text)
+    height = Notation.of(cells[name]).number if text else 0.0
+    mark, written = booked.itself.marks[0, role], booked.itself.heights[0, role]
+    changed = []
+    for rows in booked.job.observations:
+        if isinstance(rows, SlopeDistances | ZenithAngles):
+            heights = rows.heights.copy()
+            shared = (rows.marks[:, role] == mark) & (np.abs(heights[:, role] - written) < 1e-9)
+            heights[shared, role] = height
+            rows = replace(rows, heights=heights)
+        changed.append(rows)
+    return replace(booked.job, observations=tuple(changed)), cells

@@ -10,11 +10,12 @@ import numpy as np
 from adjust import Adjustment, Job, NetworkError, adjust
 from adjust.arrays import FloatArray
 from adjust.blunders import Cell, Context, Hypothesis
+from adjust.blunders.hypotheses import Hypotheses
+from adjust.blunders.system import System, model_of
 from adjust.job import Control
 from adjust.model import Block, State
 from adjust.observations import Observations
 from adjust.quality import critical_w
-from adjust.unknowns import find_unknowns
 
 
 @dataclass(frozen=True)
@@ -65,9 +66,7 @@ def suspect_row(
         return None
     away, covariance = expectation.away(rows.take(np.array([row])))
     nature = "vector" if len(rows.components) > 1 else "observation"
-    hypothesis = Hypothesis(
-        nature, rows.provenance.label(row), ((place, np.array([row])),), rows.components, rows.unit
-    )
+    hypothesis = Hypothesis(nature, rows.provenance.label(row), ((place, np.array([row])),), rows.components, rows.unit)
     return _context(job, hypothesis, expectation, away[0], covariance[0], cells, further)
 
 
@@ -89,7 +88,8 @@ def suspect_control(job: Job, mark: int, start: FloatArray, cells: Mapping[str, 
         result = adjust(replace(job, marks=replace(marks, control=control, given=given)))
     except NetworkError:
         return None
-    away = -job.frame.displacement(marks.given[[mark]], result.coordinates[[mark]]) @ result._grid[mark].T
+    displacement = np.nan_to_num(job.frame.displacement(marks.given[[mark]], result.coordinates[[mark]]))
+    away = -displacement @ result._grid[mark].T
     rows = tuple(
         (place, here)
         for place, of_kind in enumerate(job.observations)
@@ -99,6 +99,33 @@ def suspect_control(job: Job, mark: int, start: FloatArray, cells: Mapping[str, 
     hypothesis = Hypothesis("control", name, rows, ("east", "north"), "m", mark)
     covariance = result.mark_covariances[mark, :2, :2]
     return _context(job, hypothesis, Expectation(result), away[0, :2], covariance, cells)
+
+
+def suspect_group(job: Job, nature: str, place: int, row: int, cells: Mapping[str, Cell]) -> Context | None:
+    """The group of a nature that a row belongs to, its error estimated together with the unknowns."""
+    try:
+        result = adjust(job)
+    except NetworkError:
+        return None
+    state = State(result.geometry, result.orientations)
+    hypotheses = Hypotheses.of(System.at(job, model_of(job, result.unknowns, state), state))
+    number = _number_of(hypotheses, nature, place, row)
+    if number is None:
+        return None
+    allowed = hypotheses.evidence.allowing((number,))
+    without = hypotheses.system.without(hypotheses.columns[:, allowed.columns], allowed.errors)
+    freed = replace(result, geometry=without.geometry, orientations=without.orientations)
+    hypothesis = hypotheses.hypothesis(number)
+    return _context(job, hypothesis, Expectation(freed), allowed.errors, allowed.covariance, cells)
+
+
+def _number_of(hypotheses: Hypotheses, nature: str, place: int, row: int) -> int | None:
+    first = hypotheses.evidence.count - len(hypotheses.groups)
+    for number, group in enumerate(hypotheses.groups, first):
+        rows = dict(group.hypothesis.rows)
+        if group.hypothesis.nature == nature and row in rows.get(place, ()):
+            return number
+    return None
 
 
 def _context(
@@ -124,6 +151,3 @@ def _context(
         fit,
         further,
     )
-
-
-__all__ = ["Expectation", "find_unknowns", "suspect_control", "suspect_row"]

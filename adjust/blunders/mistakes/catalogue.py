@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from adjust.blunders.mistakes.another_mark import AnotherMark
 from adjust.blunders.mistakes.antenna_height import AntennaHeight
-from adjust.blunders.mistakes.control_exchanged import AxesExchanged, CoordinatesOfAnotherMark
+from adjust.blunders.mistakes.axes_exchanged import AxesExchanged
 from adjust.blunders.mistakes.counted_backwards import CountedBackwards
 from adjust.blunders.mistakes.degrees_and_gon import DegreesAndGon
 from adjust.blunders.mistakes.digit_misread import DigitMisread
@@ -44,5 +44,4 @@ MISTAKES: tuple[Mistake, ...] = (
     AnotherMark(),
     AntennaHeight(),
     AxesExchanged(),
-    CoordinatesOfAnotherMark(),
 )

@@ -8,7 +8,6 @@ from adjust.blunders.context import Correction
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.suspect import Suspect
 
-
 REVERSED = ("height_difference", "vector")
 """Kinds whose value changes its sign and nothing else, so that no network can tell the exchange from a lost sign."""
 

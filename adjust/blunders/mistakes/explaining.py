@@ -13,7 +13,7 @@ from adjust.blunders.context import Context, Explanation
 from adjust.blunders.mistakes.catalogue import MISTAKES
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.priors import PRIORS
-from adjust.blunders.mistakes.suspect import Suspect
+from adjust.blunders.mistakes.suspect import HEIGHTS, Suspect
 from adjust.blunders.mistakes.weighing import Weighing
 
 MOST_CHANCE = 0.05
@@ -155,7 +155,8 @@ class _Ranking:
             corrected[suspect.components] -= error
             return suspect.in_range(corrected)
         if suspect.nature in ("instrument height", "target height"):
-            return np.array([suspect.values[0].value]) - error
+            written = suspect.row_itself.heights[0, HEIGHTS.index(suspect.values[0].name)]
+            return np.array([written]) - error
         return None
 
 

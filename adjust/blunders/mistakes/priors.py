@@ -24,7 +24,6 @@ PRIORS: dict[str, float] = {
     "other face": 4.0,
     "slope as horizontal": 4.0,
     "axes exchanged": 4.0,
-    "coordinates of another mark": 4.0,
     "metres and feet": 3.0,
     "weather correction": 3.0,
     "heights exchanged": 3.0,

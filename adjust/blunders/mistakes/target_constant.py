@@ -13,6 +13,8 @@ from adjust.blunders.mistakes.suspect import Suspect
 USUAL = (0.030, 0.0344)
 """Metres by which the constants of common prisms differ from each other, where the job file names no targets: from
 memory."""
+LEFT_OUT, ANOTHER, TWICE = 5.0, 3.0, 1.0
+"""How often each slip happens, as multiples: a guess, no source."""
 
 
 class TargetConstant:
@@ -24,32 +26,29 @@ class TargetConstant:
         """The constants that the job file names, and their differences; else the usual ones."""
         if suspect.kind not in ("slope_distance", "horizontal_distance") and suspect.nature != "distance constant":
             return None
-        errors = errors_of(suspect.job.target_constants)
-        values = suspect.values
-        if values and len(values) == 1:
-            whats = list(errors)
-            return values[0].valued(values[0].value - np.array([*errors.values()]), whats.__getitem__)
-        return Candidates.listed([np.array([error]) for error in errors.values()], [Remedy(what) for what in errors])
+        whats, errors, shares = zip(*slips(suspect.job.target_constants), strict=True)
+        if len(suspect.values) == 1:
+            entry = suspect.values[0]
+            return entry.valued(entry.value - np.array(errors), whats.__getitem__, np.array(shares))
+        return Candidates.listed(np.array(errors)[:, None], [Remedy(what) for what in whats], shares)
 
 
-def errors_of(constants: Mapping[str, float]) -> dict[str, float]:
-    """Distances wrong by so much, metres, by what was done."""
-    named = {name: constant for name, constant in constants.items() if constant}
-    errors: dict[str, float] = {}
-    for name, constant in named.items():
-        errors[f"constant of {name} left out ({millimetres(constant)})"] = -constant
-        errors[f"constant of {name} applied twice ({millimetres(constant)})"] = constant
-    for used, right in permutations(constants, 2):
+def slips(constants: Mapping[str, float]) -> list[tuple[str, float, float]]:
+    """What was done, by how much distances are wrong then, metres, and how often."""
+    found = []
+    for name, constant in constants.items():
+        if constant:
+            found.append((f"constant of {name} left out ({millimetres(constant)})", -constant, LEFT_OUT))
+            found.append((f"constant of {name} applied twice ({millimetres(constant)})", constant, TWICE))
+    for used, right in permutations([name for name, constant in constants.items() if constant], 2):
         difference = constants[used] - constants[right]
-        if difference and constants[used] and constants[right]:
-            errors[f"constant of {used} in place of that of {right}"] = difference
-    if errors:
-        return errors
-    return {
-        f"target constant wrong by {millimetres(sign * constant)}": sign * constant
+        if difference:
+            found.append((f"constant of {used} in place of that of {right}", difference, ANOTHER))
+    return found or [
+        (f"target constant wrong by {millimetres(error)}", error, ANOTHER)
         for constant in USUAL
-        for sign in (1, -1)
-    }
+        for error in (constant, -constant)
+    ]
 
 
 def millimetres(constant: float) -> str:
