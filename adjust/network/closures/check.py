@@ -11,7 +11,7 @@ from adjust.errors import NetworkError
 from adjust.frames import Geometry
 from adjust.job import Job
 from adjust.network.closures.angle_sums import angle_closures
-from adjust.network.closures.closures import Judged, judged
+from adjust.network.closures.closures import Closures, Judged, judged
 from adjust.network.closures.clues import Clue, find_clues
 from adjust.network.closures.coordinates import control_distance_closures
 from adjust.network.closures.entries import entry_remarks
@@ -75,7 +75,28 @@ def check_job(job: Job) -> Check:
     lines, stations = Lines(observed), Stations(observed)
     orientations = Orientations(observed, stations)
     traverses = Traversing(observed, orientations, lines)
-    closures = [
+    checks = judged(_closures(orientations, lines, traverses), job.tolerances)
+    clues = tuple(find_clues(observed, checks, traverses))
+    return Check(
+        observed,
+        checks,
+        (
+            *position_remarks(observed, lines, job.tolerances),
+            *two_place_remarks(observed, stations, lines),
+            *entry_remarks(observed, job.tolerances),
+        ),
+        tuple(traverse_at(traverses, number) for number in np.flatnonzero(traverses.from_control).tolist()),
+        tuple(shared_lines(checks)),
+        clues,
+        tuple(narrowed(suspicion, clues) for suspicion in suspicions(checks, observed)),
+        notes,
+    )
+
+
+def _closures(orientations: Orientations, lines: Lines, traverses: Traversing) -> list[Closures]:
+    """Every check that found something to close, in the order of the reports."""
+    observed, stations = orientations.observed, orientations.stations
+    every = [
         *reading_closures(observed),
         *level_closures(observed),
         *station_closures(observed, stations),
@@ -88,23 +109,7 @@ def check_job(job: Job) -> Check:
         height_closures(observed, lines),
         *vector_closures(observed),
     ]
-    checks = judged([check for check in closures if len(check)], job.tolerances)
-    remarks = [
-        *position_remarks(observed, lines, job.tolerances),
-        *two_place_remarks(observed, stations, lines),
-        *entry_remarks(observed, job.tolerances),
-    ]
-    clues = tuple(find_clues(observed, checks, traverses))
-    return Check(
-        observed,
-        checks,
-        tuple(remarks),
-        tuple(traverse_at(traverses, number) for number in np.flatnonzero(traverses.from_control).tolist()),
-        tuple(shared_lines(checks)),
-        clues,
-        tuple(narrowed(suspicion, clues) for suspicion in suspicions(checks, observed)),
-        notes,
-    )
+    return [closures for closures in every if len(closures)]
 
 
 def narrowed(suspicion: Suspicion, clues: Sequence[Clue]) -> Suspicion:

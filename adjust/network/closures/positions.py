@@ -13,11 +13,11 @@ from adjust.network.closures.observed import Observed
 from adjust.network.closures.remarks import Remark
 from adjust.tolerances import Tolerances
 
-OFF_EXTENT = 20.0
-"""Times the radius that nine in ten marks lie within: a mark further out is another job's, or mistyped. Common
-practice, no source; a distant reference station is one too, so that it is a remark and no more."""
-BACK_WITHIN = 3.0
-"""Times that radius within which exchanged coordinates have to fall to be believed."""
+OFF_EXTENT = 50.0
+"""Times the distance from the middle that half of the marks keep within: a mark further out is another job's, or
+mistyped. Common practice, no source; a distant reference station is one too, so that it is a remark and no more."""
+BACK_WITHIN = 10.0
+"""Times that distance within which exchanged coordinates have to fall to be believed."""
 MOST_HEIGHT = 1000.0
 """Metres from the median height that no remark is made of, whatever the relief: survey jobs cross mountains."""
 FEWEST = 4
@@ -93,16 +93,15 @@ def _outliers(observed: Observed) -> Iterator[Remark]:
     centre = np.median(given[known], axis=0)
     away = np.hypot(*(given[known] - centre).T)
     back = np.hypot(*(given[known][:, ::-1] - centre).T)
-    radius = float(np.quantile(away, 0.9, method="lower")) if len(known) < 2 * FEWEST else float(np.quantile(away, 0.9))
-    radius = min(radius, float(np.sort(away)[len(away) // 2]) * BACK_WITHIN)
-    for place in np.flatnonzero(away > OFF_EXTENT * radius).tolist():
+    usual = float(np.median(away))
+    for place in np.flatnonzero(away > OFF_EXTENT * usual).tolist():
         mark = int(known[place])
         name, source = job.marks.names[mark], job.marks.provenance.label(mark)
-        if back[place] < BACK_WITHIN * radius:
+        if back[place] < BACK_WITHIN * usual:
             text = f"{source}: {name} lies among the others if its {first} and {second} are exchanged"
             yield Remark("exchanged", text, (mark,), exceeds=True)
         else:
-            text = f"{source}: {name} lies {away[place] / radius:.0f} times as far out as most marks"
+            text = f"{source}: {name} lies {away[place] / usual:.0f} times as far out as half of the marks"
             yield Remark("off_extent", text, (mark,))
 
 
