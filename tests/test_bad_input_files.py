@@ -47,6 +47,11 @@ def test_a_table_that_is_none(name: str, tmp_path: Path) -> None:
     assert len(str(first)) < 500
 
 
+@pytest.mark.parametrize("name", ["no bytes", "a byte-order mark alone", "blank lines alone"])
+def test_an_empty_table_is_one_mistake(name: str, tmp_path: Path) -> None:
+    assert len(mistakes_of(tmp_path, PLANE, {"levels.csv": CONTENTS[name][0]})) == 1
+
+
 def test_a_job_file_in_the_wrong_encoding(tmp_path: Path) -> None:
     found = mistakes_of(tmp_path, PLANE, {"job.toml": 'title = "Höhen"\n'.encode("latin-1")})
     assert [(mistake.file, mistake.line) for mistake in found] == [("job.toml", 1)]

@@ -126,6 +126,9 @@ def test_verdicts() -> None:
     sound = CASES["levelling"]()
     count = sum(len(judged.closures) for judged in sound.closures)
     assert check_verdict(sound) == f"All {count} closures keep within what is allowed."
+    levels = [("A", "B", 1.0), ("B", "C", 1.0), ("C", "A", -2.0)]
+    loop = build_job(dict.fromkeys("ABC", (None, None, 1.0)), fixed_height="A", levels=levels)
+    assert check_verdict(check_job(loop)) == "The one closure keeps within what is allowed."
     job = replace(odd_heights(), tolerances=Tolerances(target_heights=(0.0, 2.0)))
     assert check_verdict(check_job(job)).startswith("1 other finding exceeds what is allowed.")
 

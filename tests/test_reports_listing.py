@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from adjust.job import Statistics
 from adjust.reports import layout
 from adjust.reports.layout import Column, shortened, table
-from adjust.reports.listing import STANDING_CAUTION, listing
+from adjust.reports.listing import STANDING_CAUTION, datum_words, listing
 from adjust.reports.records import mark_figures, observation_figures, records
 from adjust.reports.selection import worst_first
 from adjust.reports.verdict import cautions, digits_left, verdict
@@ -181,6 +181,22 @@ def test_verdict_tells_on_which_side_the_global_test_failed(statistic, words):
     failed = replace(adjustment, solution=replace(adjustment.solution, global_test=test))
     assert words in verdict(failed)
     assert verdict(failed) in cautions(failed)
+
+
+def test_verdict_never_prints_different_figures_alike():
+    """One degree of freedom at 95 %: the lower bound is 0.00098."""
+    adjustment = adjusted("levelling")
+    test = replace(adjustment.solution.global_test, statistic=4e-5, lower=9.8e-4, upper=5.02, passed=False)
+    failed = replace(adjustment, solution=replace(adjustment.solution, global_test=test))
+    assert "vᵀPv is 4.0e-05, expected between 9.8e-04 and 5.02." in verdict(failed)
+
+
+def test_datum_of_a_free_network_in_words():
+    free = adjusted("free")
+    count = len(free.job.marks)
+    assert f"fitted to the given coordinates of {count} marks" in datum_words(free)
+    nothing = replace(free.job.marks, given=np.full_like(free.job.marks.given, np.nan))
+    assert "no coordinates given" in datum_words(replace(free, job=replace(free.job, marks=nothing)))
 
 
 def test_nothing_to_warn_of_means_no_caution():

@@ -44,7 +44,7 @@ class Sheet:
         self._text = plain.rstrip("\n")
         self.header_line, self._start, header = self._find_header()
         self.separator = ";" if header.count(";") > header.count(",") else ","
-        self.titles = self._cells(self.header_line, header) or []
+        self.titles = (self._cells(self.header_line, header) or []) if header else []
         if not header:
             mistakes.add(file, None, None, "is empty, expected a header row and rows below it")
         elif "\t" in header and len(self.titles) == 1:

@@ -116,7 +116,8 @@ def check_verdict(check: Check) -> str:
     if not closures and not odd:
         return "Nothing closes in this job, so that no mistake would show before it is adjusted."
     if check.passed:
-        return f"All {counted(closures, 'closure', 'closures')} keep within what is allowed."
+        every = f"All {closures} closures keep" if closures > 1 else "The one closure keeps"
+        return f"{every} within what is allowed."
     failing = sum(int(judged.exceeds.sum()) for judged in check.closures)
     parts = [f"{failing} of {counted(closures, 'closure', 'closures')}"] if failing else []
     parts += [counted(odd, "other finding", "other findings")] if odd else []

@@ -102,8 +102,11 @@ def datum_words(adjustment: Adjustment) -> str:
     """What carries the datum."""
     job = adjustment.job
     if job.datum.mode == "inner":
-        carriers = counted(len(job.datum.marks) or len(job.marks), "mark", "marks")
-        return f"free network, fitted to the given coordinates of {carriers}; defect {adjustment.solution.datum_defect}"
+        named = list(job.datum.marks) or slice(None)
+        given = ~np.isnan(job.marks.given[named]) & adjustment.unknowns.sought[named]
+        carriers = counted(int(np.count_nonzero(given.any(axis=1))), "mark", "marks")
+        fit = f"fitted to the given coordinates of {carriers}" if given.any() else "no coordinates given"
+        return f"free network, {fit}; defect {adjustment.solution.datum_defect}"
     statuses = np.array(adjustment.statuses, dtype=str).reshape(-1, 2)
     words = [
         f"{np.count_nonzero(statuses[:, part] == status)} {status} in {name}"

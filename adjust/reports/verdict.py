@@ -19,6 +19,9 @@ NAMED = 5
 FEWEST_DIGITS = 6
 """Significant digits of the solution below which a caution is due: a tenth of a millimetre in a hundred metres."""
 
+LEAST_PLAIN = 0.095
+"""Below this two decimals would leave one figure or none of vᵀPv and its bounds, which may lie close together."""
+
 LARGEST_GAP = 1e-5
 """Metres (or radians of an orientation): the iteration's own standstill. Two solutions of a system agree better."""
 
@@ -34,7 +37,8 @@ def verdict(adjustment: Adjustment) -> str:
             "Nothing checks these coordinates: there are only as many observations as unknowns, "
             "so any blunder goes straight into them."
         )
-    expected = f"vᵀPv is {test.statistic:.2f}, expected between {test.lower:.2f} and {test.upper:.2f}"
+    statistic, lower, upper = map(_two_decimals_or_more, (test.statistic, test.lower, test.upper))
+    expected = f"vᵀPv is {statistic}, expected between {lower} and {upper}"
     if test.passed:
         fit = "The observations agree as well as their sds promise"
     elif test.statistic > test.upper:
@@ -42,6 +46,11 @@ def verdict(adjustment: Adjustment) -> str:
     else:
         fit = "The observations agree better than their sds promise; the sds are probably too large"
     return f"{fit}: {expected}. {_suspicion(adjustment)}"
+
+
+def _two_decimals_or_more(value: float) -> str:
+    """Two decimals; of what they would print as nothing, or nearly, two figures."""
+    return f"{value:.2f}" if value >= LEAST_PLAIN else f"{value:.1e}" if value else "0"
 
 
 def _suspicion(adjustment: Adjustment) -> str:
