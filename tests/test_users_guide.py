@@ -51,6 +51,9 @@ def test_the_demo_names_the_planted_blunder(tmp_path: Path) -> None:
     result = CliRunner().invoke(hubtack, ["adjust", str(folder)], standalone_mode=False)
     assert result.return_value == 1
     assert printed(2) in result.stdout
+    check = CliRunner().invoke(hubtack, ["check", str(folder)], standalone_mode=False)
+    assert check.return_value == 1
+    assert printed(3) in check.stdout
 
 
 def test_a_letter_in_a_number_is_named_as_the_guide_says(ridge: Path) -> None:
@@ -58,7 +61,7 @@ def test_a_letter_in_a_number_is_named_as_the_guide_says(ridge: Path) -> None:
     table.write_text(table.read_text("utf-8").replace("377.623", "37a.623"), "utf-8")
     result = CliRunner().invoke(hubtack, ["adjust", str(ridge)], standalone_mode=False)
     assert result.return_value == 2
-    assert printed(3) in result.stderr
+    assert printed(4) in result.stderr
 
 
 def test_the_notebook_lines_answer(ridge: Path) -> None:
