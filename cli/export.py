@@ -16,7 +16,7 @@ NAMES = ("geojson", "gpkg", "dxf", "landxml", "csv", "xlsx")
 """Those of `adjust.reports.exports.FORMATS`, which is not imported for a page of help."""
 
 
-@click.command("export", epilog="Example: hubtack export field_data/dam_control/out --to geojson --out dam.geojson")
+@click.command("export", epilog="Example: hubtack export field_data/fen_levels/out --to csv")
 @click.argument("results", type=click.Path(path_type=Path))
 @click.option("--to", "form", type=click.Choice(NAMES), required=True, help="The format.")
 @click.option(

@@ -13,7 +13,7 @@ import pytest
 
 from adjust import FieldDataError
 from adjust.reports.saved import published_schema, read_results
-from tests.exported import ALL, plain_of, text_of
+from tests.exported import ALL, SPECIFIED, plain_of, text_of
 
 PUBLISHED = Path(__file__).parents[1] / "docs" / "results.schema.json"
 SCHEMA: dict[str, Any] = json.loads(PUBLISHED.read_text("utf-8"))
@@ -65,7 +65,7 @@ def places(record: Any, path: tuple[Any, ...] = ()) -> list[tuple[Any, ...]]:
 @pytest.mark.parametrize("wrong", ["x", -1.5, [], {}])
 def test_schema_and_reader_refuse_the_same_wrong_values(wrong: Any, tmp_path: Path) -> None:
     """Each entry in turn is replaced by something else."""
-    plain = plain_of("dam_control")
+    plain = plain_of(SPECIFIED)
     refused = 0
     for path in places(plain):
         changed = copy.deepcopy(plain)

@@ -19,6 +19,17 @@ SHOWN = 5
 
 Status = Literal["fixed", "weighted", "adjusted", "none"]
 Height = Literal["orthometric", "ellipsoidal"]
+Kind = Literal[
+    "direction",
+    "angle",
+    "azimuth",
+    "slope_distance",
+    "horizontal_distance",
+    "zenith",
+    "height_difference",
+    "vector",
+    "control",
+]
 Figure = float | None
 Row = tuple[Figure, Figure, Figure]
 
@@ -101,17 +112,7 @@ class ObservationRecord(Saved):
     """One component of one observation."""
 
     source: str = Field(description="File and line")
-    kind: Literal[
-        "direction",
-        "angle",
-        "azimuth",
-        "slope_distance",
-        "horizontal_distance",
-        "zenith",
-        "height_difference",
-        "vector",
-        "control",
-    ]
+    kind: Kind
     component: Literal["x", "y", "z", "easting", "northing", "height"] | None
     at: str | None
     start: str | None = Field(alias="from")
@@ -140,6 +141,75 @@ class LineRecord(Saved):
     sd_height_difference_mm: Figure
 
 
+class StandardRecord(Saved):
+    """A published standard that the job is held against."""
+
+    name: str
+    source: str
+    year: int | None = Field(description="Of the edition, where its source states it")
+    recalled: bool = Field(description="Whether a figure is from memory")
+
+
+class WorstRecord(Saved):
+    """A mark or a pair that uses most of what is allowed."""
+
+    marks: list[str]
+    distance_m: Figure
+    figure_mm: Figure
+    allowed_mm: Figure
+    share: Figure = Field(description="Figure over what is allowed")
+    passed: bool
+
+
+class RequirementRecord(Saved):
+    """One requirement of the specification: how many marks or pairs it was asked of, and how many fail."""
+
+    measure: Literal["mark_plan", "mark_height", "pair_plan", "pair_height"]
+    words: str
+    rule: str
+    standard: str | None
+    recalled: bool
+    assessed: int = Field(ge=0)
+    failing: int = Field(ge=0)
+    passed: bool | None
+    worst: list[WorstRecord] = Field(description="All that fail, at least the worst, worst first")
+
+
+class SpecificationRecord(Saved):
+    """What the job was to keep, and whether it does."""
+
+    passed: bool | None = Field(description="Null without a specification")
+    pairs: Literal["observed", "all"]
+    marks: list[str] = Field(description="Those that it applies to; none: all")
+    standards: list[StandardRecord]
+    checks: list[RequirementRecord]
+    note: str
+
+
+class WeightRecord(Saved):
+    """How much a kind of observation weighs, and whether its sds were claimed rightly."""
+
+    kind: Kind
+    observations: int = Field(ge=0)
+    unchecked: int = Field(ge=0)
+    unit: Literal["m", "deg"] = Field(description="Of the sds")
+    sd_smallest: Figure
+    sd_median: Figure
+    sd_largest: Figure
+    weighted_square_sum: Figure
+    redundancy: Figure
+    sd_factor: Figure = Field(description="By which the sds would agree with the residuals")
+
+
+class ClosureRecord(Saved):
+    """How one check before the adjustment went; check.json has every closure."""
+
+    check: str
+    closures: int = Field(ge=0)
+    exceeding: int = Field(ge=0)
+    largest_share: Figure = Field(description="Of what is allowed")
+
+
 class SavedResults(Saved):
     """The results of one adjustment. Numbers are SI unless the key names a unit; null where there is no such figure."""
 
@@ -152,6 +222,9 @@ class SavedResults(Saved):
     suspects: list[str] = Field(description="Sources of suspect observations, worst first")
     cautions: list[str]
     notes: list[str] = []
+    specification: SpecificationRecord | None = None
+    weights: list[WeightRecord] = []
+    closures: list[ClosureRecord] = []
 
 
 def read_results(path: Path) -> SavedResults:
