@@ -49,8 +49,10 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
             )
 
     with one_blas_thread() as workers:
-        for level in reversed(layout.shapes.levels):
+        for level, served in zip(reversed(layout.shapes.levels), reversed(layout.served), strict=True):
             side_by_side(work, level, workers)
+            for number in served:
+                del held[number]
         doubtful = np.flatnonzero(rounding > LOSS)
         variances[doubtful] = careful_row_variances(factor, doubtful)
     return SelectedCovariance(entries * factor.scale[first] * factor.scale[second], variances)
@@ -96,9 +98,9 @@ def front_covariance(factor: Factor, number: int, held: dict[int, FloatArray]) -
     outer = covariance[:, own:, own:]
     for hand in factor.layout.to_parents[number]:
         parents = held[hand.target]
-        size = parents.shape[1]
-        at = np.minimum(hand.columns[:, :-1], size - 1)
-        outer[hand.members] = parents.ravel()[((hand.into * size)[:, None] + at)[:, :, None] * size + at[:, None, :]]
+        at = np.minimum(hand.columns[:, :-1], parents.shape[1] - 1)
+        rows = parents[hand.into[:, None], at].transpose(0, 2, 1)  # C is symmetric: whole rows first, then columns
+        outer[hand.members] = rows[np.arange(len(at))[:, None], at]
     reach = inverse @ factor.blocks[number][:, :, own:-1]
     cross = reach @ outer
     covariance[:, :own, :own] = inside + cross @ reach.transpose(0, 2, 1)

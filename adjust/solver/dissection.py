@@ -30,15 +30,6 @@ class Level:
     weight: IntArray
 
 
-@dataclass(frozen=True)
-class Cuts:
-    """The best cut of each part along one ordering: who is above it, who is on its separator, and its price."""
-
-    above: BoolArray
-    separator: BoolArray
-    price: FloatArray
-
-
 def dissect(pairs: IntArray, sizes: IntArray, positions: FloatArray | None, tied: BoolArray) -> IntArray:
     """Node of the dissection tree of each group: 1 is the root, node i is cut into 2 i and 2 i + 1; 0 for empty groups.
 
@@ -46,24 +37,15 @@ def dissect(pairs: IntArray, sizes: IntArray, positions: FloatArray | None, tied
     `tied` groups are put into the root. No pair ever joins two nodes of which neither is an ancestor of the other.
     """
     node = np.where(sizes > 0, 1, 0)
-    places = ranks(positions, len(sizes))
+    if positions is None:
+        positions = np.full((len(sizes), 2), np.nan)
     moving = np.flatnonzero((sizes > 0) & ~tied)
     while True:
         level = open_level(node, moving, pairs, sizes)
         if not len(level.members):
             return node
         pairs = level.members[level.ends]
-        moving = cut_level(node, level, places[:, level.members])
-
-
-def ranks(positions: FloatArray | None, count: int) -> IntArray:
-    """Order (2, count) of the groups from west to east and from south to north, −1 where the position is unknown."""
-    places = np.full((2, count), -1)
-    if positions is not None:
-        known = np.flatnonzero(~np.isnan(positions).any(axis=1))
-        for axis in range(2):
-            places[axis, known[np.argsort(positions[known, axis], kind="stable")]] = np.arange(len(known))
-    return places
+        moving = cut_level(node, level, positions[level.members])
 
 
 def open_level(node: IntArray, moving: IntArray, pairs: IntArray, sizes: IntArray) -> Level:
@@ -81,55 +63,54 @@ def open_level(node: IntArray, moving: IntArray, pairs: IntArray, sizes: IntArra
     return Level(members, part, int(np.count_nonzero(large)), ends[inside], sizes[members])
 
 
-def cut_level(node: IntArray, level: Level, places: IntArray) -> IntArray:
+def cut_level(node: IntArray, level: Level, positions: FloatArray) -> IntArray:
     """Cut every part once. Separators and parts not worth cutting stay; returns the groups moved on to child nodes."""
-    cuts = [best_cuts(level, places) for places in orderings(level, places)]
-    best = np.argmin([cut.price for cut in cuts], axis=0)[level.part]
-    above = np.choose(best, [cut.above for cut in cuts])
-    separator = np.choose(best, [cut.separator for cut in cuts])
-    price = np.min([cut.price for cut in cuts], axis=0)
-    total = np.bincount(level.part, level.weight)
-    worth = (np.bincount(level.part, level.weight * separator) <= SEPARATOR_SHARE * total) & np.isfinite(price)
+    above, separator, worth = best_cuts(level, line_up(level, positions))
     moves = ~separator & worth[level.part]
     moved = level.members[moves]
     node[moved] = 2 * node[moved] + above[moves]
     return np.asarray(moved)
 
 
-def orderings(level: Level, places: IntArray) -> list[IntArray]:
-    """Ways (members,) to line up each part for cutting: east, north, or breadth first where a place is unknown."""
-    unknown = places[0] < 0
-    if not unknown.any():
-        return [places[0], places[1]]
-    drawn = (np.bincount(level.part, unknown) == 0)[level.part]
-    walked = breadth_first_places(level)
-    return [np.where(drawn, places[axis], walked) for axis in range(2)] if drawn.any() else [walked]
+def line_up(level: Level, positions: FloatArray) -> IntArray:
+    """Order in which to cut each part: along its longer extent, or breadth first where a position is unknown."""
+    first = np.searchsorted(level.part, np.arange(level.parts))
+    extent = np.maximum.reduceat(positions, first) - np.minimum.reduceat(positions, first)
+    along = np.where(extent[:, 0] >= extent[:, 1], 0, 1)[level.part]
+    key = positions[np.arange(len(positions)), along]
+    unknown = np.isnan(extent).any(axis=1)
+    if unknown.any():
+        key = np.where(unknown[level.part], breadth_first_places(level), key)
+    order = np.argsort(key, kind="stable")
+    return order[np.argsort(level.part[order], kind="stable")]
 
 
-def best_cuts(level: Level, places: IntArray) -> Cuts:
-    """The cheapest cut of every part along one ordering, from the separator sizes of all cuts at once.
+def best_cuts(level: Level, order: IntArray) -> tuple[BoolArray, BoolArray, BoolArray]:
+    """Cut every part where it is cheapest along `order`, from the separator sizes of all cuts at once.
 
-    A group below a cut is on its lower separator when a neighbour lies at or above the cut, so it counts for the cuts
+    Returns who is above the cut and who is on the separator (members,), and which parts are worth the cut (parts,). A
+    member below a cut is on its lower separator when a neighbour lies at or above the cut, so it counts for the cuts
     from its own place to its farthest neighbour's: a running sum over those intervals gives the size for every cut.
     """
     count, part = len(level.members), level.part
-    order = np.argsort(part * (places.max() + 1) + places)
     place = np.empty(count, dtype=np.int64)
     place[order] = np.arange(count)
     ahead, back = farthest_neighbours(place, level.ends)
     low, high = running_weight(place, ahead, level.weight), running_weight(back, place, level.weight)
     first = np.searchsorted(part, np.arange(level.parts))
     below = np.concatenate([[0], np.cumsum(level.weight[order])])
-    total = np.diff(below[np.append(first, count)])[part]
-    lopsided = np.abs(2.0 * (below[:-1] - below[first][part]) / total - 1.0)
-    price = np.minimum(low, high) + IMBALANCE_PRICE * np.sqrt(total) * lopsided**2
+    total = np.diff(below[np.append(first, count)])
+    lopsided = np.abs(2.0 * (below[:-1] - below[first][part]) / total[part] - 1.0)
+    price = np.minimum(low, high) + (IMBALANCE_PRICE * np.sqrt(total))[part] * lopsided**2
     price[lopsided > MOST_LOPSIDED] = np.inf
     least = np.minimum.reduceat(price, first)
     hits = np.flatnonzero(price == least[part])
     cut = hits[np.searchsorted(part[hits], np.arange(level.parts))]
     above = place >= cut[part]
     crossing = np.where(above, back < cut[part], ahead >= cut[part])
-    return Cuts(above, crossing & (above != (low <= high)[cut][part]), least)
+    size = np.minimum(low, high)[cut]
+    worth = (size <= SEPARATOR_SHARE * total) & np.isfinite(least)
+    return above, crossing & (above != (low <= high)[cut][part]), worth
 
 
 def farthest_neighbours(place: IntArray, ends: IntArray) -> tuple[IntArray, IntArray]:
@@ -162,9 +143,7 @@ def breadth_first_places(level: Level) -> IntArray:
         start[piece[order]] = order
     place = np.empty(count, dtype=np.int64)
     place[order] = np.arange(count)
-    rank = np.empty(count, dtype=np.int64)
-    rank[np.argsort(piece * np.int64(count) + place)] = np.arange(count)
-    return rank
+    return np.asarray(piece * np.int64(count) + place)
 
 
 def joined(ends: IntArray, count: int) -> scipy.sparse.csr_array:

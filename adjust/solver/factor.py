@@ -103,13 +103,15 @@ def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatA
         return triangle[:, :own].copy(), triangle[:, own : own + border, own:].copy()
 
     with one_blas_thread() as workers:
-        for level in layout.shapes.levels:
+        for level, consumed in zip(layout.shapes.levels, layout.consumed, strict=True):
             for number, (block, rest) in zip(level, side_by_side(work, level, workers), strict=True):
                 blocks.append(block)
                 left[number] = rest
                 place = vanishing(block, tolerance)
                 if place is not None:
                     raise rank_defect(layout, blocks, number, place, scale)
+            for number in consumed:
+                del left[number]
     return Factor(layout, matrix, right_side, scale, elements, tuple(blocks))
 
 

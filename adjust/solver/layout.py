@@ -2,14 +2,17 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
+from itertools import pairwise
 
 import numpy as np
 import scipy.sparse
 
 from adjust.arrays import IntArray
 from adjust.solver.shapes import Shapes, gather_alike
+from adjust.solver.sorting import counted, offsets_of, rising
 from adjust.solver.staircases import Staircases, build_staircases
 from adjust.solver.tree import Tree
 
@@ -96,6 +99,20 @@ class Layout:
         """The handovers out of each batch."""
         return self.by_batch([hand.source for hand in self.handovers])
 
+    @cached_property
+    def consumed(self) -> tuple[tuple[int, ...], ...]:
+        """By level: the batches whose handed rows no later level needs."""
+        return self.by_level({hand.source: hand.target for hand in sorted(self.handovers, key=lambda h: h.target)})
+
+    @cached_property
+    def served(self) -> tuple[tuple[int, ...], ...]:
+        """By level: the batches whose covariance no lower level needs."""
+        return self.by_level({hand.target: hand.source for hand in sorted(self.handovers, key=lambda h: -h.source)})
+
+    def by_level(self, last: dict[int, int]) -> tuple[tuple[int, ...], ...]:
+        """Batches by the level of the last batch that needs them."""
+        return tuple(tuple(number for number, user in last.items() if user in level) for level in self.shapes.levels)
+
     def by_batch(self, numbers: list[int]) -> tuple[tuple[Handover, ...], ...]:
         """The handovers sorted into batches of the given numbers."""
         found: list[list[Handover]] = [[] for _ in self.batches]
@@ -109,106 +126,125 @@ def lay_out(tree: Tree, matrix: scipy.sparse.csr_array) -> Layout:
     shapes = gather_alike(tree)
     width = np.diff(matrix.indptr).astype(np.int64)
     used = np.flatnonzero(width)
-    order = np.argsort(shapes.home[tree.front_of_row[used]] * (width.max(initial=0) + 1) + width[used], kind="stable")
-    rows = used[order]
+    rows = used[rising(shapes.home[tree.front_of_row[used]] * (width.max(initial=0) + 1) + width[used])]
     front, width = tree.front_of_row[rows], width[rows]
-    offsets = np.concatenate([[0], np.cumsum(width)])
+    offsets = offsets_of(width)
     elements = np.repeat(matrix.indptr[rows] - offsets[:-1], width) + np.arange(offsets[-1])
     column = tree.position(np.repeat(front, width), tree.place[matrix.indices[elements]], shapes.own)
     stairs = build_staircases(tree, shapes, rows, np.minimum.reduceat(column, offsets[:-1]) if len(rows) else rows)
     height = np.zeros(len(shapes.members), dtype=np.int64)
     np.maximum.at(height, shapes.home, np.maximum(stairs.rows, shapes.own))
-    base = shapes.slot * height[shapes.home]
-    targets = base[front] + stairs.row_slot
-    batches = build_batches(tree, shapes, stairs, height, Share(shapes.home[front], width, offsets, targets, column))
+    targets = shapes.slot[front] * height[shapes.home[front]] + stairs.row_slot
+    share = Share(shapes.home[front], width, offsets, targets, np.repeat(targets * shapes.width[front], width) + column)
+    batches = build_batches(tree, shapes, stairs, height, share)
     return Layout(tree, shapes, batches, build_handovers(tree, shapes, stairs, height), rows, elements)
 
 
 @dataclass(frozen=True)
 class Share:
-    """Rows of the matrix in the order of the layout: batch, width, first element, row in the stack; columns."""
+    """Rows of the matrix in the order of the layout: batch, width, first element, row in the stack; element targets."""
 
     home: IntArray
     width: IntArray
     offsets: IntArray
+    row_targets: IntArray
     targets: IntArray
-    column: IntArray
 
-    def runs(self, start: int, stop: int) -> tuple[Run, ...]:
-        """Rows `start` to `stop` in runs of equal width."""
-        starts = start + np.flatnonzero(np.diff(self.width[start:stop], prepend=0))
-        ends = np.append(starts, stop)[1:]
-        at = self.offsets
-        return tuple(
-            Run(slice(a, b), slice(int(at[a]), int(at[b])), int(self.width[a]))
-            for a, b in zip(starts.tolist(), ends.tolist(), strict=True)
-        )
+    def runs(self, batches: int) -> list[tuple[Run, ...]]:
+        """The rows of every batch in runs of equal width."""
+        found: list[list[Run]] = [[] for _ in range(batches)]
+        new = (np.diff(self.home, prepend=-1) != 0) | (np.diff(self.width, prepend=-1) != 0)
+        start = np.flatnonzero(new)
+        bounds = np.append(start, len(new))
+        for home, width, rows, elements in zip(
+            self.home[start].tolist(),
+            self.width[start].tolist(),
+            pairwise(bounds.tolist()),
+            pairwise(self.offsets[bounds].tolist()),
+            strict=True,
+        ):
+            found[home].append(Run(slice(*rows), slice(*elements), width))
+        return list(map(tuple, found))
 
 
 def build_batches(tree: Tree, shapes: Shapes, stairs: Staircases, height: IntArray, share: Share) -> tuple[Batch, ...]:
     """Cut what was laid out for all fronts into batches."""
-    numbers = np.arange(len(shapes.members) + 1)
-    cuts = np.searchsorted(share.home, numbers).tolist()
-    units, unit_cuts = place_units(shapes, stairs, height, numbers)
+    count, order, none = len(shapes.members), shapes.in_order, tree.columns
+    bounds, sizes, outside = offsets_of(shapes.fronts), shapes.own[order], shapes.border[order]
+    own = stacked(padded_runs(tree.start, np.arange(none), order, sizes, none), bounds, sizes)
+    border = stacked(padded_runs(tree.edge, tree.border, order, outside, none), bounds, outside)
+    reach = stacked(stairs.reach, bounds, shapes.width[order])
+    units = place_units(shapes, stairs, height)
+    runs = share.runs(count)
     batches = []
-    for number, fronts in enumerate(shapes.members):
-        start, stop = cuts[number], cuts[number + 1]
-        elements = slice(int(share.offsets[start]), int(share.offsets[stop]))
-        width = int(shapes.width[fronts[0]])
-        rows = share.targets[start:stop]
+    for number in range(count):
+        rows, elements = whole(run.rows for run in runs[number]), whole(run.elements for run in runs[number])
         batch = Batch(
-            own=padded_runs(tree.start, np.arange(tree.columns), fronts, tree.columns, int(shapes.own[fronts[0]])),
-            border=padded_runs(tree.edge, tree.border, fronts, tree.columns, int(shapes.border[fronts[0]])),
+            own=own[number],
+            border=border[number],
             rows=int(height[number]),
-            runs=share.runs(start, stop),
-            row_targets=rows,
-            targets=np.repeat(rows * width, share.width[start:stop]) + share.column[elements],
-            units=units[unit_cuts[number] : unit_cuts[number + 1]],
-            reach=stairs.reach[stairs.start[fronts][:, None] + np.arange(width)].max(axis=0),
+            runs=runs[number],
+            row_targets=share.row_targets[rows],
+            targets=share.targets[elements],
+            units=units[number],
+            reach=reach[number].max(axis=0),
         )
         batches.append(batch)
     return tuple(batches)
 
 
-def place_units(shapes: Shapes, stairs: Staircases, height: IntArray, numbers: IntArray) -> tuple[IntArray, IntArray]:
-    """Places in the flat stacks of the ones of padded columns, by batch, and where each batch's begin."""
+def whole(slices: Iterable[slice]) -> slice:
+    """One slice from adjoining ones."""
+    joined = list(slices)
+    return slice(joined[0].start, joined[-1].stop) if joined else slice(0, 0)
+
+
+def place_units(shapes: Shapes, stairs: Staircases, height: IntArray) -> list[IntArray]:
+    """Places in the flat stack of each batch of the ones of padded columns."""
     front = stairs.unit_front
     home = shapes.home[front]
-    order = np.argsort(home, kind="stable")
-    row = shapes.slot[front] * height[home] + stairs.unit_slot
-    return (row * shapes.width[front] + stairs.unit_column)[order], np.searchsorted(home[order], numbers)
+    place = (shapes.slot[front] * height[home] + stairs.unit_slot) * shapes.width[front] + stairs.unit_column
+    order = rising(home)
+    return np.split(place[order], np.searchsorted(home[order], np.arange(1, len(height))))
 
 
 def build_handovers(tree: Tree, shapes: Shapes, stairs: Staircases, height: IntArray) -> tuple[Handover, ...]:
     """Every pair of batches of which one has children of the other."""
     child = np.flatnonzero((tree.parent >= 0) & (tree.border_sizes > 0))
-    code = shapes.home[tree.parent[child]] * (len(height) + 1) + shapes.home[child]
-    order = np.argsort(code, kind="stable")
-    cuts = np.flatnonzero(np.diff(code[order])) + 1
-    return tuple(hand_over(tree, shapes, stairs, height, part) for part in np.split(child[order], cuts) if len(part))
-
-
-def hand_over(tree: Tree, shapes: Shapes, stairs: Staircases, height: IntArray, children: IntArray) -> Handover:
-    """What `children`, all of one batch, hand to their parents, all of another."""
-    parents = tree.parent[children]
-    target = int(shapes.home[parents[0]])
-    border, last = int(shapes.border[children[0]]), int(shapes.width[parents[0]]) - 1
-    slots = padded_runs(tree.edge, stairs.hand_slot, children, -1, border)
-    base = shapes.slot[parents][:, None] * height[target]
-    return Handover(
-        source=int(shapes.home[children[0]]),
-        target=target,
-        members=shapes.slot[children],
-        into=shapes.slot[parents],
-        rows=np.where(slots >= 0, base + slots, len(shapes.members[target]) * height[target]),
-        columns=padded_runs(tree.edge, stairs.hand_column, children, last, border + 1),
+    pair = shapes.home[tree.parent[child]] * (len(height) + 1) + shapes.home[child]
+    order = rising(pair)
+    child, pair = child[order], pair[order]
+    parent, border = tree.parent[child], shapes.border[child]
+    target = shapes.home[parent]
+    slots = padded_runs(tree.edge, stairs.hand_slot, child, border, -1)
+    base, behind = np.repeat(
+        [shapes.slot[parent] * height[target], shapes.fronts[target] * height[target]], border, axis=1
+    )
+    rows = np.where(slots >= 0, base + slots, behind)
+    columns = padded_runs(tree.edge, stairs.hand_column, child, border + 1, shapes.width[parent] - 1)
+    bounds = np.append(np.flatnonzero(np.diff(pair, prepend=-1)), len(child))
+    stacks = zip(stacked(rows, bounds, border), stacked(columns, bounds, border + 1), strict=True)
+    return tuple(
+        Handover(int(shapes.home[child[a]]), int(target[a]), shapes.slot[child[a:b]], shapes.slot[parent[a:b]], *stack)
+        for (a, b), stack in zip(pairwise(bounds.tolist()), stacks, strict=True)
     )
 
 
-def padded_runs(edge: IntArray, values: IntArray, fronts: IntArray, filler: int, width: int) -> IntArray:
-    """The fronts' runs of `values` as rows (fronts, width), `filler` behind the shorter ones."""
-    steps = np.arange(width)
-    inside = steps < (edge[fronts + 1] - edge[fronts])[:, None]
-    result = np.full(inside.shape, filler)
-    result[inside] = values[(edge[fronts][:, None] + steps)[inside]]
+def padded_runs(
+    edge: IntArray, values: IntArray, fronts: IntArray, width: IntArray, filler: IntArray | int
+) -> IntArray:
+    """The fronts' runs of `values`, each lengthened to `width` by its `filler` (fronts,), end to end."""
+    step = counted(width)
+    inside = step < np.repeat(edge[fronts + 1] - edge[fronts], width)
+    result = np.repeat(np.broadcast_to(filler, width.shape), width)
+    result[inside] = values[(np.repeat(edge[fronts], width) + step)[inside]]
     return result
+
+
+def stacked(flat: IntArray, bounds: IntArray, width: IntArray) -> list[IntArray]:
+    """Stacks (fronts, width) of runs laid end to end: those from `bounds[i]` to `bounds[i + 1]`, of one width."""
+    at = offsets_of(width)[bounds]
+    return [
+        flat[start:end].reshape(size, -1)
+        for (start, end), size in zip(pairwise(at.tolist()), np.diff(bounds).tolist(), strict=True)
+    ]

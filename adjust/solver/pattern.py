@@ -6,15 +6,10 @@ import numpy as np
 import scipy.sparse
 
 from adjust.arrays import BoolArray, IntArray
+from adjust.solver.sorting import distinct
 
 WIDE_ROW = 32  # groups: a row over more of them would make hundreds of pairs; its groups go to the root instead
 DENSE_DEGREE = 10.0  # × √groups neighbours, and at least 16: the bound for dense rows of Amestoy, Davis & Duff (2004)
-
-
-def distinct(codes: IntArray) -> IntArray:
-    """The distinct codes, rising (a plain sort: several times quicker than numpy.unique on large arrays)."""
-    codes = np.sort(codes)
-    return codes[np.diff(codes, prepend=-1) > 0]
 
 
 def groups_of_rows(matrix: scipy.sparse.csr_array, groups: IntArray, count: int) -> tuple[IntArray, IntArray]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 from itertools import pairwise
 
 import numpy as np
@@ -29,7 +30,17 @@ class Shapes:
     own: IntArray
     border: IntArray
 
-    @property
+    @cached_property
+    def fronts(self) -> IntArray:
+        """Number of fronts in each batch."""
+        return np.array([len(fronts) for fronts in self.members], dtype=np.int64)
+
+    @cached_property
+    def in_order(self) -> IntArray:
+        """All fronts in working order."""
+        return np.concatenate([np.empty(0, dtype=np.int64), *self.members])
+
+    @cached_property
     def width(self) -> IntArray:
         """Columns of each front's block, the right-hand side included."""
         return self.own + self.border + 1

@@ -8,6 +8,7 @@ import numpy as np
 
 from adjust.arrays import IntArray
 from adjust.solver.shapes import Shapes
+from adjust.solver.sorting import counted, offsets_of, rising
 from adjust.solver.tree import Tree
 
 
@@ -17,8 +18,8 @@ class Staircases:
 
     `row_slot` is that of the matrix rows; `hand_slot` and `hand_column` (border elements,) say where row i and column i
     that a front hands up go in its parent, −1 for rows it does not hand up. `unit_*` list the padding: a padded own
-    column holds a single one in a row of its own. `rows` is the number of rows of each front, `reach` (fronts' columns
-    end to end, front f from `start[f]`) how many of them begin at or before each column.
+    column holds a single one in a row of its own. `rows` is the number of rows of each front, `reach` (columns of the
+    fronts, in working order end to end) how many of them begin at or before each column.
     """
 
     row_slot: IntArray
@@ -28,7 +29,6 @@ class Staircases:
     unit_column: IntArray
     unit_slot: IntArray
     rows: IntArray
-    start: IntArray
     reach: IntArray
 
 
@@ -43,22 +43,23 @@ def build_staircases(tree: Tree, shapes: Shapes, used: IntArray, lead: IntArray)
     unit_column = tree.own_sizes[unit_front] + counted(padding)
     front = np.concatenate([tree.front_of_row[used], above[exists], unit_front])
     first = np.concatenate([lead, hand_column[exists], unit_column])
-    start = np.cumsum(shapes.width) - shapes.width
-    slot, reach = sort_rows(start, shapes.width, front, first)
+    slot, reach = sort_rows(shapes, front, first)
     row_slot, existing, unit_slot = np.split(slot, np.cumsum([len(used), np.count_nonzero(exists)]))
     hand_slot = np.full(len(tree.border), -1)
     hand_slot[exists] = existing
-    return Staircases(row_slot, hand_slot, hand_column, unit_front, unit_column, unit_slot, rows, start, reach)
+    return Staircases(row_slot, hand_slot, hand_column, unit_front, unit_column, unit_slot, rows, reach)
 
 
-def sort_rows(start: IntArray, width: IntArray, front: IntArray, first: IntArray) -> tuple[IntArray, IntArray]:
+def sort_rows(shapes: Shapes, front: IntArray, first: IntArray) -> tuple[IntArray, IntArray]:
     """Slot of each row in its front by first column, and how many rows of a front begin at or before each column."""
+    width = shapes.width[shapes.in_order]
+    start = np.empty(len(width), dtype=np.int64)
+    start[shapes.in_order] = np.cumsum(width) - width
     stair = start[front] + first
-    steps = np.bincount(stair, minlength=int(width.sum()))
+    total = offsets_of(np.bincount(stair, minlength=int(width.sum())))
     slot = np.empty(len(stair), dtype=np.int64)
-    slot[np.argsort(stair, kind="stable")] = counted(np.bincount(front, minlength=len(width)))
-    total = np.concatenate([[0], np.cumsum(steps)])
-    return slot, total[1:] - np.repeat(total[start], width)
+    slot[rising(stair)] = counted(np.bincount(front, minlength=len(width))[shapes.in_order])
+    return slot, total[1:] - np.repeat(total[start[shapes.in_order]], width)
 
 
 def handed_rows(tree: Tree, used: IntArray, own: IntArray) -> tuple[IntArray, IntArray]:
@@ -71,9 +72,3 @@ def handed_rows(tree: Tree, used: IntArray, own: IntArray) -> tuple[IntArray, In
         if parent[front] >= 0:
             rows[parent[front]] += handed[front]
     return np.array(rows, dtype=np.int64), np.array(handed, dtype=np.int64)
-
-
-def counted(sizes: IntArray) -> IntArray:
-    """0, 1, 2, … within each of the runs of the given sizes, end to end."""
-    end = np.cumsum(sizes)
-    return np.arange(int(end[-1]) if len(end) else 0) - np.repeat(end - sizes, sizes)

@@ -8,7 +8,7 @@ from functools import cached_property
 import numpy as np
 
 from adjust.arrays import IntArray
-from adjust.solver.pattern import distinct
+from adjust.solver.sorting import distinct, offsets_of, rising
 
 
 @dataclass(frozen=True)
@@ -79,8 +79,8 @@ def grow_tree(node: IntArray, groups: IntArray, row: IntArray, group: IntArray, 
     """Fronts from the dissection node of each group, the group of each column, and the (row, group) incidence."""
     front_of_group, parent, depth = number_fronts(node)
     turn = np.empty(len(node), dtype=np.int64)
-    turn[np.argsort(front_of_group, kind="stable")] = np.arange(len(node))
-    order = np.argsort(turn[groups], kind="stable")
+    turn[rising(front_of_group + 1)] = np.arange(len(node))
+    order = rising(turn[groups])
     place = np.empty_like(order)
     place[order] = np.arange(len(order))
     front_of_turn = np.sort(front_of_group)
@@ -101,7 +101,7 @@ def number_fronts(node: IntArray) -> tuple[IntArray, IntArray, IntArray]:
     """Front of each group (−1 for empty ones), parent (−1 for roots) and depth of each front, the deepest first."""
     used = distinct(node[node > 0])
     depth = np.frexp(used.astype(float))[1]
-    order = np.argsort(-depth, kind="stable")
+    order = rising(depth.max(initial=0) - depth.astype(np.int64))
     rank = np.empty(len(used), dtype=np.int64)
     rank[order] = np.arange(len(used))
     above = used // 2
@@ -139,5 +139,5 @@ def borders(incidence: IntArray, parent: IntArray, depth: IntArray, front_of_tur
 def spread(first: IntArray, size: IntArray, runs: IntArray) -> tuple[IntArray, IntArray]:
     """The members of runs with given first members and sizes, end to end, and where each run starts among them."""
     length = size[runs]
-    offsets = np.concatenate([[0], np.cumsum(length)])
+    offsets = offsets_of(length)
     return np.repeat(first[runs] - offsets[:-1], length) + np.arange(offsets[-1]), offsets
