@@ -6,6 +6,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
+from scipy.special import gammainccinv
 
 from adjust import Adjustment, Job, NetworkError, adjust
 from adjust.arrays import FloatArray
@@ -15,7 +16,6 @@ from adjust.blunders.system import System, model_of
 from adjust.job import Control
 from adjust.model import Block, State
 from adjust.observations import Observations
-from adjust.quality import critical_w
 
 
 @dataclass(frozen=True)
@@ -147,7 +147,7 @@ def _context(
         error,
         covariance,
         cells,
-        critical_w(job.statistics.significance),
+        float(np.sqrt(2 * gammainccinv(len(error) / 2, job.statistics.significance))),
         fit,
         further,
     )

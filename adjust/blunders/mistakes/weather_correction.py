@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
+
 import numpy as np
 
-from adjust.arrays import FloatArray
+from adjust.arrays import FloatArray, IntArray
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.suspect import Suspect
+from adjust.reductions.outcome import PointingsReduced
 
 
 class WeatherCorrection:
@@ -17,45 +20,57 @@ class WeatherCorrection:
     def candidates(self, suspect: Suspect) -> Candidates | None:
         """Corrected again what the instrument had corrected; or not corrected, by the mean of the other sights."""
         pointings = suspect.job.reduction.pointings
-        if pointings is None or not len(pointings.velocity):
+        if pointings is None or (suspect.kind != "slope_distance" and suspect.nature != "distance scale"):
             return None
-        if suspect.kind != "slope_distance" and suspect.nature != "distance scale":
+        sights = Sights.of(suspect, pointings)
+        if not len(sights.rows) or not np.any(sights.rate):
             return None
-        velocity = self._velocity(suspect)
-        if velocity is None:
-            return None
-        size = suspect.observed if suspect.kind else np.ones(1)
-        known = pointings.velocity[pointings.velocity != 1.0]
-        if velocity != 1.0:
-            what = f"corrected for the air twice ({parts_per_million(velocity - 1)})"
-            return self._told(suspect, size * (velocity - 1) / velocity, what)
-        if not len(known):
-            return None
-        usual, spread = float(known.mean()) - 1, float(known.std())
-        what = f"not corrected for the air (about {parts_per_million(usual)})"
-        told = self._told(suspect, -size * usual, what)
-        return Candidates(told.errors, told.shares, told.remedy, np.array([size * spread]))
+        found = sights.twice() if np.any(sights.rate[sights.rows]) else sights.not_at_all()
+        return Candidates(
+            found.errors * sights.size, found.shares, found.remedy, found.open_part * sights.size, found.rarity
+        )
 
-    @staticmethod
-    def _told(suspect: Suspect, error: FloatArray, what: str) -> Candidates:
-        if len(suspect.values) == 1 and suspect.lines[0][0] == suspect.context.source:
-            entry = suspect.values[0]
-            return entry.valued(entry.value - error, lambda place: what)
-        return Candidates.listed([error], [Remedy(what)])
 
-    @staticmethod
-    def _velocity(suspect: Suspect) -> float | None:
-        """The factor that the suspect's distances were multiplied by; None where it is not known."""
-        pointings = suspect.job.reduction.pointings
-        assert pointings is not None
-        place = pointings.slopes.means.provenance
-        files = suspect.context.observations.provenance
+@dataclass(frozen=True)
+class Sights:
+    """The slope distances (sights,) of a book, the `rate` (sights,) at which each was corrected for the air, and the
+    `rows` of the suspect among them. `size` turns a rate into the suspect's error."""
+
+    rate: FloatArray
+    length: FloatArray
+    rows: IntArray
+    size: float
+
+    @classmethod
+    def of(cls, suspect: Suspect, pointings: PointingsReduced) -> Sights:
+        """Those of a job; no rows where the suspect is not one of them."""
+        means, context = pointings.slopes.means, suspect.context
+        place, here = means.provenance, context.observations.provenance
+        file = here.files[here.file[context.row]]
+        of_file = np.array([name == file for name in place.files])[place.file]
         if suspect.nature == "distance scale":
-            file = files.files[files.file[suspect.context.row]]
-            return float(pointings.velocity.mean()) if file in place.files else None
-        labels = (row for row in range(len(place.line)) if place.label(row) == suspect.context.source)
-        row = next(labels, None)
-        return None if row is None else float(pointings.velocity[row])
+            return cls(pointings.velocity - 1.0, means.value, np.flatnonzero(of_file), 1.0)
+        same = of_file & (place.line == here.line[context.row])
+        return cls(pointings.velocity - 1.0, means.value, np.flatnonzero(same), float(suspect.observed[0]))
+
+    def twice(self) -> Candidates:
+        """The correction that stands in the value, once too often; of several sights the mean, long ones first."""
+        rate, weight = self.rate[self.rows], self.length[self.rows] ** 2
+        mean = float(np.average(rate, weights=weight))
+        spread = np.sqrt(np.average((rate - mean) ** 2, weights=weight) / len(rate))
+        what = f"corrected for the air twice ({parts_per_million(mean)})"
+        return _rated(mean / (1.0 + mean), what, spread)
+
+    def not_at_all(self) -> Candidates:
+        """What other sights were corrected by, left out."""
+        known = self.rate[self.rate != 0.0]
+        what = f"not corrected for the air (about {parts_per_million(float(known.mean()))})"
+        found = _rated(-float(known.mean()), what, float(known.std()))
+        return Candidates(found.errors, found.shares, found.remedy, found.loose, float(np.mean(self.rate == 0.0)))
+
+
+def _rated(rate: float, what: str, spread: float) -> Candidates:
+    return Candidates(np.array([[rate]]), np.ones(1), lambda place, error: Remedy(what), np.array([[spread]]))
 
 
 def parts_per_million(ratio: float) -> str:
