@@ -214,6 +214,11 @@ def test_figures_that_do_not_exist_are_nan():
     np.testing.assert_array_equal(circle_radius(np.array([0.0, np.nan]), np.array([0.0, np.nan])), [0, np.nan])
 
 
+def test_one_ellipse_is_plain_numbers():
+    ellipse = standard_ellipse(np.diag([4.0, 1.0]))
+    assert all(type(figure) is np.float64 for figure in (*ellipse, *ellipse.scaled(2.0)))
+
+
 def test_what_is_held_stays_exact_where_the_scale_is_unknown():
     ellipse = standard_ellipse(np.array([np.zeros((2, 2)), np.diag([4.0, 1.0])])).scaled(math.nan)
     np.testing.assert_array_equal(ellipse, [[0, np.nan], [0, np.nan], [0, np.nan]])

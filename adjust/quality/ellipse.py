@@ -24,8 +24,8 @@ class Ellipse(NamedTuple):
 
         With an unknown factor (NaN) nothing of it exists, but a point stays a point.
         """
-        major, minor = (np.where(axis == 0.0, 0.0, axis * factor) for axis in self[:2])
-        return Ellipse(major, minor, np.where(np.isnan(major), np.nan, self.azimuth))
+        major, minor = (np.where(axis == 0.0, 0.0, axis * factor)[()] for axis in self[:2])
+        return Ellipse(major, minor, np.where(np.isnan(major), np.nan, self.azimuth)[()])
 
 
 def standard_ellipse(covariance: FloatArray) -> Ellipse:
@@ -46,4 +46,4 @@ def standard_ellipse(covariance: FloatArray) -> Ellipse:
     point = major_square == 0
     semi_minor = np.where(point, 0, np.sqrt(determinant) / np.where(point, 1, semi_major))
     azimuth = np.arctan2(2 * cross, north - east) / 2 % np.pi
-    return Ellipse(semi_major, np.minimum(semi_minor, semi_major), np.where(azimuth >= np.pi, 0, azimuth))
+    return Ellipse(semi_major, np.minimum(semi_minor, semi_major), np.where(azimuth >= np.pi, 0, azimuth)[()])
