@@ -32,7 +32,12 @@ READ, ADJUSTED = 0.15, 0.85
     show_default=True,
     help="Order of the observations in the listing: the worst fit first, or as they stand in the field book.",
 )
-def adjust_command(job: Path, out: Path | None, order: Literal["worst", "book"]) -> int:
+@click.option(
+    "--watch",
+    is_flag=True,
+    help="Adjust again whenever a file of the job is saved, show what changed, and serve a page that refreshes itself.",
+)
+def adjust_command(job: Path, out: Path | None, order: Literal["worst", "book"], watch: bool) -> int:
     """Adjust JOB, a job folder or its job.toml.
 
     Writes results.json, coordinates.csv, residuals.csv, listing.txt and the page report.html, all or none of them, and
@@ -45,19 +50,33 @@ def adjust_command(job: Path, out: Path | None, order: Literal["worst", "book"])
       2  the field data or the job file cannot be used, or the results not written
       3  the network cannot be solved as given
     """
-    from adjust.errors import HubtackError, NetworkError
+    from adjust.errors import HubtackError
 
     folder = out or (job if job.is_dir() else job.parent) / "out"
+    if watch:
+        from cli.watch import watch_job
+
+        return watch_job(job, folder, order)
     try:
-        adjustment = _adjust_and_write(job, folder, order)
+        adjustment = adjust_and_write(job, folder, order)
     except HubtackError as error:
         click.echo(str(error), err=True)
-        return UNSOLVABLE if isinstance(error, NetworkError) else UNUSABLE
-    _summarise(adjustment, folder)
-    return ACCEPTED if adjustment.accepted else DOUBTFUL
+        return status_of(error)
+    summarise(adjustment, folder)
+    return status_of(adjustment)
 
 
-def _adjust_and_write(job: Path, folder: Path, order: Literal["worst", "book"]) -> Adjustment:
+def status_of(outcome: Adjustment | Exception) -> int:
+    """The exit status of an adjustment, or of the error that prevented it."""
+    from adjust.errors import NetworkError
+
+    if isinstance(outcome, Exception):
+        return UNSOLVABLE if isinstance(outcome, NetworkError) else UNUSABLE
+    return ACCEPTED if outcome.accepted else DOUBTFUL
+
+
+def adjust_and_write(job: Path, folder: Path, order: Literal["worst", "book"]) -> Adjustment:
+    """Read, check, adjust and report, with a progress line. Raises HubtackError."""
     with ProgressLine(sys.stderr) as progress:
         progress("reading the field book", 0.0)
         from adjust import adjust, read_job
@@ -73,7 +92,7 @@ def _adjust_and_write(job: Path, folder: Path, order: Literal["worst", "book"]) 
     return adjustment
 
 
-def _summarise(adjustment: Adjustment, folder: Path) -> None:
+def summarise(adjustment: Adjustment, folder: Path) -> None:
     """The verdict and where the rest is on stdout, what else to bear in mind on stderr."""
     from adjust.reports import REPORTS, cautions, verdict
 

@@ -120,7 +120,7 @@ def test_interruption_is_quiet_and_writes_nothing(folder_of, monkeypatch, capsys
         raise KeyboardInterrupt
 
     folder = folder_of("levelling")
-    monkeypatch.setattr(cli.adjust, "_adjust_and_write", interrupted)
+    monkeypatch.setattr(cli.adjust, "adjust_and_write", interrupted)
     assert run(["adjust", str(folder)]) == 130
     assert capsys.readouterr().err.strip() == "Stopped. Earlier results are as they were."
 
@@ -132,7 +132,7 @@ def test_a_defect_of_the_program_is_not_disguised(folder_of, monkeypatch):
     def defective(*_):
         raise DefectError
 
-    monkeypatch.setattr(cli.adjust, "_adjust_and_write", defective)
+    monkeypatch.setattr(cli.adjust, "adjust_and_write", defective)
     with pytest.raises(DefectError):
         run(["adjust", str(folder_of("levelling"))])
 

@@ -125,7 +125,7 @@ def _test_cards(adjustment: Adjustment) -> Iterator[Card]:
             for value, key in ((test.lower, "lower"), (test.upper, "upper"))
         )
         statistic = Figure(decimals(test.statistic, 2), test.statistic, "solution.global_test.statistic")
-        detail = (Figure("vᵀPv"), statistic, Figure("of"), bounds[0], Figure("to"), bounds[1])
+        detail = (Figure("vᵀPv"), statistic, Figure("expected"), bounds[0], Figure("to"), bounds[1])
         yield Card(
             "Global test", Figure("passed" if test.passed else "failed"), detail, "good" if test.passed else "bad"
         )

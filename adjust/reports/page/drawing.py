@@ -15,7 +15,7 @@ from adjust.reports.page.places import WIDTH, Places, find_places
 
 LARGEST_ELLIPSE = 45.0
 """Units of the drawing that the largest semi-axis first has."""
-OF_SPACING = 0.4
+OF_SPACING = 0.6
 """Share of the usual distance between marks that the median semi-axis first has at most: ellipses stay apart."""
 NICE = (1.0, 2.0, 5.0)
 
@@ -67,6 +67,8 @@ class Drawing:
     exaggeration: float | None
     ellipse_factor: float
     bar_factor: float
+    longest_bar: tuple[str, float] | None
+    """Name of the mark with the largest 95 % height, and that height in metres."""
     missing: int
     """Marks without a place on the drawing."""
 
@@ -92,7 +94,7 @@ def draw(adjustment: Adjustment) -> Drawing:
     known = places.drawn
     return Drawing(
         places=places,
-        lines=tuple(_line_layers(adjustment, places)),
+        lines=(*_suspect_layer(adjustment, places), *_line_layers(adjustment, places)),
         marks=tuple(_mark_layers(places, statuses)),
         ellipses=tuple(_ellipse_outlines(places, ellipses, known, scale)),
         bars=tuple(_bar_outlines(places, adjustment.height_95, known, scale)),
@@ -100,6 +102,7 @@ def draw(adjustment: Adjustment) -> Drawing:
         exaggeration=None if places.metres is None else exaggeration,
         ellipse_factor=factor,
         bar_factor=_bar_factor(adjustment),
+        longest_bar=_longest_bar(adjustment),
         missing=len(statuses) - len(known),
     )
 
@@ -126,7 +129,7 @@ def _bar_factor(adjustment: Adjustment) -> float:
 
 
 def _exaggeration(places: Places, semi_major: FloatArray, heights: FloatArray) -> float:
-    """A round number that makes the shapes visible without running into each other."""
+    """A round number that makes the shapes visible without running into each other much."""
     shown = places.drawn
     sizes = semi_major[shown]
     sizes = sizes[np.isfinite(sizes) & (sizes > 0)]
@@ -135,10 +138,20 @@ def _exaggeration(places: Places, semi_major: FloatArray, heights: FloatArray) -
         sizes = sizes[np.isfinite(sizes) & (sizes > 0)]
     if len(sizes) == 0:
         return 1.0
-    spacing = WIDTH / max(len(shown), 1) ** 0.5
+    spacing = _spacing(places)
     metres = places.metres or 1.0
     wanted = min(LARGEST_ELLIPSE / float(sizes.max()), OF_SPACING * spacing / float(np.median(sizes))) * metres
     return float(nice_below(wanted))
+
+
+def _spacing(places: Places) -> float:
+    """The usual distance from a mark to its nearest neighbour, units."""
+    from scipy.spatial import cKDTree
+
+    points = np.unique(places.positions[places.drawn], axis=0)
+    if len(points) < 2:
+        return WIDTH
+    return float(np.median(cKDTree(points).query(points, k=2)[0][:, 1]))
 
 
 def nice_below(value: float) -> float:
@@ -151,20 +164,41 @@ def _number(value: float) -> str:
     return f"{round(value, 2) + 0.0:.2f}".rstrip("0").rstrip(".")
 
 
+def _longest_bar(adjustment: Adjustment) -> tuple[str, float] | None:
+    heights = adjustment.height_95
+    if not np.any(heights > 0):
+        return None
+    mark = int(np.nanargmax(heights))
+    return adjustment.job.marks.names[mark], float(heights[mark])
+
+
 def _line_layers(adjustment: Adjustment, places: Places) -> Iterator[Layer]:
+    for name, (words, kinds) in FAMILIES.items():
+        yield from _line_layer(name, words, adjustment.lines[lines_of(adjustment, kinds)], places)
+
+
+def _suspect_layer(adjustment: Adjustment, places: Places) -> Iterator[Layer]:
+    """Lines of suspect observations, drawn broad below the others."""
+    pairs = [
+        np.sort(table.observations.marks[rows][:, [0, role]], axis=1)
+        for table in adjustment.residuals
+        for rows in (np.flatnonzero(table.suspect.any(axis=1)),)
+        for role in range(1, table.observations.marks.shape[1])
+    ]
+    lines = np.unique(np.concatenate([np.zeros((0, 2), dtype=np.int64), *pairs]), axis=0)
+    yield from _line_layer("suspects", "suspect", lines, places)
+
+
+def _line_layer(name: str, words: str, lines: IntArray, places: Places) -> Iterator[Layer]:
+    """One path for all lines whose both ends are on the drawing."""
     shown = np.zeros(len(places.positions), dtype=bool)
     shown[places.drawn] = True
-    for name, (words, kinds) in FAMILIES.items():
-        member = lines_of(adjustment, kinds)
-        lines = adjustment.lines[member]
-        lines = lines[np.all(shown[lines], axis=1)]
-        if len(lines):
-            points = np.round(places.positions, 2)
-            path = "".join(
-                f"M{_number(x1)} {_number(y1)}L{_number(x2)} {_number(y2)}"
-                for (x1, y1), (x2, y2) in zip(points[lines[:, 0]].tolist(), points[lines[:, 1]].tolist(), strict=True)
-            )
-            yield Layer(name, words, len(lines), path)
+    lines = lines[np.all(shown[lines], axis=1)]
+    if len(lines):
+        points = np.round(places.positions, 2)
+        ends = zip(points[lines[:, 0]].tolist(), points[lines[:, 1]].tolist(), strict=True)
+        path = "".join(f"M{_number(x1)} {_number(y1)}L{_number(x2)} {_number(y2)}" for (x1, y1), (x2, y2) in ends)
+        yield Layer(name, words, len(lines), path)
 
 
 def lines_of(adjustment: Adjustment, kinds: tuple[str, ...]) -> BoolArray:
@@ -179,13 +213,13 @@ def lines_of(adjustment: Adjustment, kinds: tuple[str, ...]) -> BoolArray:
 
 
 def _mark_layers(places: Places, statuses: list[str]) -> Iterator[Layer]:
-    """Marks as points without length, which the style sheet gives a width and square or round ends."""
+    """Marks as strokes of next to no length, which the style sheet gives a width and square or round ends."""
     drawn = set(places.drawn.tolist())
     points = np.round(places.positions, 2).tolist()
     for name, words in STATUSES.items():
         chosen = [mark for mark, status in enumerate(statuses) if status == name and mark in drawn]
         if chosen:
-            path = "".join(f"M{_number(points[mark][0])} {_number(points[mark][1])}h0" for mark in chosen)
+            path = "".join(f"M{_number(points[mark][0])} {_number(points[mark][1])}h.01" for mark in chosen)
             yield Layer(name, words, len(chosen), path)
 
 

@@ -12,7 +12,7 @@ from adjust.reports.records import known_coordinates
 
 WIDTH = 1000.0
 """Units across the drawing; one unit is about one point of a page."""
-LOWEST, HIGHEST = 420.0, 900.0
+LOWEST, HIGHEST = 400.0, 640.0
 """Units from top to bottom: neither a ribbon nor a tower."""
 MARGIN = 60.0
 """Units left free around the marks, for labels and ellipses."""

@@ -13,6 +13,8 @@ from adjust.reports.records import Figures, Record, line_figures, mark_figures
 from adjust.reports.selection import listed_lines, listed_observations, worst_first
 from adjust.reports.wording import NAMES, between, decimals, dms, observed, small, small_unit, what
 
+SECONDS = "″"
+
 MOST_ROWS = 100_000
 """Rows of one table in the page, the worst: a network of 10,000 marks has them all, and the page stays below 15 MB. A
 longer table says how many are left out and which file has them."""
@@ -125,7 +127,10 @@ def observations_table(adjustment: Adjustment) -> PageTable:
             Heading("sd", "sd", "", "number", "standard deviation as claimed beforehand"),
             [small(record, "sd") for record in listed],
         ),
-        (Heading("unit", "of", "", "choice", "unit of residual, sd and least bias"), list(map(small_unit, listed))),
+        (
+            Heading("unit", "of", "", "choice", "unit of residual, sd and least bias"),
+            [SECONDS if small_unit(record) == '"' else small_unit(record) for record in listed],
+        ),
         (
             Heading("redundancy", "r", "", "number", REDUNDANCY),
             [decimals(record["redundancy"], 2) for record in listed],

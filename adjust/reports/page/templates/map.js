@@ -25,6 +25,12 @@ function magnification() {
   return Math.min(box.width / view.width, box.height / view.height) || 1;
 }
 
+// Width of the map over its height, as it stands on the screen.
+function proportion() {
+  const box = map.getBoundingClientRect();
+  return box.width && box.height ? box.width / box.height : drawing.width / drawing.height;
+}
+
 function toDrawing(event) {
   const box = map.getBoundingClientRect(), scale = magnification();
   const left = (box.width - view.width * scale) / 2, top = (box.height - view.height * scale) / 2;
@@ -32,8 +38,8 @@ function toDrawing(event) {
 }
 
 function look(x, y, width) {
-  view.width = Math.min(Math.max(width, drawing.width / DEEPEST), drawing.width * 1.5);
-  view.height = view.width * drawing.height / drawing.width;
+  view.width = Math.min(Math.max(width, drawing.width / DEEPEST), drawing.width * 4);
+  view.height = view.width / proportion();
   view.x = Math.min(Math.max(x, -view.width * 0.7), drawing.width - view.width * 0.3);
   view.y = Math.min(Math.max(y, -view.height * 0.7), drawing.height - view.height * 0.3);
   map.setAttribute("viewBox", `${view.x} ${view.y} ${view.width} ${view.height}`);
@@ -46,15 +52,23 @@ function zoom(factor, x = view.x + view.width / 2, y = view.y + view.height / 2)
 }
 
 function whole() {
-  look(0, 0, drawing.width);
+  const width = Math.max(drawing.width, drawing.height * proportion()), height = width / proportion();
+  look((drawing.width - width) / 2, (drawing.height - height) / 2, width);
+}
+
+// Whether the reader has come nearer than the whole, which then has to stay.
+function near() {
+  return view.width < drawing.width * 0.999;
 }
 
 let waiting = 0;
+let letters = 1;
 function redraw() {
   cancelAnimationFrame(waiting);
   waiting = requestAnimationFrame(() => {
     const scale = magnification();
-    map.style.fontSize = `${12 / scale}px`;
+    letters = parseFloat(getComputedStyle(document.documentElement).fontSize) * 0.78 / 12;
+    map.style.fontSize = `${12 * letters / scale}px`;
     const inView = drawn.filter((mark) => inside(xs[mark], ys[mark]));
     map.classList.toggle("crowded", inView.length > 1500);
     drawLabels(scale, inView);
@@ -90,10 +104,10 @@ function drawLabels(scale, inView) {
   const candidates = [...choice.marks.filter((mark) => inside(xs[mark], ys[mark])), ...importance(inView)];
   for (const mark of new Set(candidates)) {
     const text = names[mark].length > 18 ? `${names[mark].slice(0, 17)}…` : names[mark];
-    const width = LETTER * text.length, [x, y] = on(mark);
+    const width = LETTER * letters * text.length, [x, y] = on(mark);
     for (const [across, down, anchor] of [[8, -6, "start"], [-8, -6, "end"], [8, 14, "start"], [-8, 14, "end"]]) {
       const start = anchor === "start" ? x + across : x + across - width;
-      const box = [start, y + down - LINE + 2, start + width, y + down + 2];
+      const box = [start, y + down - LINE * letters + 2, start + width, y + down + 2];
       if (start >= 0 && start + width <= right && free(box)) {
         take(box);
         labels.push(shape("text", { x: xs[mark] + across / scale, y: ys[mark] + down / scale, "text-anchor": anchor }, text));
@@ -132,7 +146,7 @@ function drawFurniture(scale) {
   const furniture = [], ticks = [], px = (pixels) => pixels / scale;
   if (drawing.metres) {
     const left = view.x + px(14), bottom = view.y + view.height - px(26);
-    const metres = niceBelow(px(150) * drawing.metres), across = metres / drawing.metres;
+    const metres = niceBelow(Math.min(px(150), view.width / 3) * drawing.metres), across = metres / drawing.metres;
     furniture.push(shape("rect", { class: "plate", x: left - px(6), y: bottom - px(24), width: across + px(12), height: px(32) }));
     furniture.push(shape("path", { d: `M${left} ${bottom - px(5)}V${bottom}H${left + across}V${bottom - px(5)}` }));
     furniture.push(shape("text", { x: left, y: bottom - px(9) }, length(metres)));
@@ -147,7 +161,7 @@ function drawFurniture(scale) {
 
 function drawTicks(ticks, px) {
   const [east, north] = drawing.origin, metres = drawing.metres;
-  const step = niceBelow(view.width * metres / 3.5);
+  const step = niceBelow(Math.max(view.width / 3.5, px(240)) * metres);
   const right = view.x + view.width, bottom = view.y + view.height;
   for (let at = Math.ceil((east + view.x * metres) / step) * step; at < east + right * metres; at += step) {
     const x = (at - east) / metres;
@@ -196,7 +210,7 @@ function drawHalo() {
     const [first, ...others] = seen;
     for (const other of others) shapes.push(shape("path", { class: "way", d: `M${xs[first]} ${ys[first]}L${xs[other]} ${ys[other]}` }));
   }
-  for (const mark of seen) shapes.push(shape("path", { class: "ring", d: `M${xs[mark]} ${ys[mark]}h0` }));
+  for (const mark of seen) shapes.push(shape("path", { class: "ring", d: `M${xs[mark]} ${ys[mark]}h.01` }));
   select("[data-halo]", map).replaceChildren(...shapes);
 }
 
@@ -417,7 +431,7 @@ search.addEventListener("change", () => {
   chooseOn({ table: tables.get("marks"), row: rowOfMark(mark) });
   if (!Number.isNaN(xs[mark])) look(xs[mark] - view.width / 2, ys[mark] - view.height / 2, Math.min(view.width, drawing.width / 3));
 });
-addEventListener("resize", redraw);
+addEventListener("resize", () => (near() ? redraw() : whole()));
 addEventListener("beforeprint", () => {
   whole();
   for (const table of tables.values()) table.print(true);
@@ -426,4 +440,4 @@ addEventListener("afterprint", () => {
   for (const table of tables.values()) table.print(false);
 });
 resize();
-redraw();
+whole();
