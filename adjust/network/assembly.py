@@ -23,8 +23,7 @@ class Assembly:
 
     `known` marks have points on the working plane; `wanted` marks need one. In a `free` network, without control, the
     largest figure may lie and turn as it was drawn. `world` holds what was found, `figures` what could not be laid
-    over it, `notes` what was decided for the surveyor,
-    `found_by_search` the marks that no construction reached.
+    over it, `notes` what was decided for the surveyor, `found_by_search` the marks that no construction reached.
     """
 
     def __init__(self, survey: Survey, known: dict[int, complex], wanted: set[int], *, free: bool) -> None:

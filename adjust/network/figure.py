@@ -256,7 +256,7 @@ class Figure:
             return 0.0, 0.0
         upright = mirrored = 0.0
         for (first, back), (second, fore) in pairwise(placed):
-            seen = cmath.phase((second - station) / (first - station))
+            seen = cmath.phase((second - station) * (first - station).conjugate())
             upright += abs(cmath.rect(1.0, seen) - cmath.rect(1.0, fore - back))
             mirrored += abs(cmath.rect(1.0, -seen) - cmath.rect(1.0, fore - back))
         return upright, mirrored

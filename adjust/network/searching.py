@@ -41,7 +41,7 @@ has a second solution as a rule: Hendrickson (1992), *SIAM Journal on Computing*
 
 @dataclass(frozen=True)
 class _Sights:
-    """Rays and distances about the marks searched for; indices count known points first, then the marks sought.
+    """Rays and distances about the marks searched for; indices count the marks sought first, then the known ones.
 
     `orientation` (rays,) is NaN where the ray's round is to be oriented as it fits best.
     """
@@ -81,21 +81,26 @@ def search(figure: Figure, marks: list[int]) -> dict[int, complex] | None:
     if sights.freedom(len(marks)) < 1 or extent == 0.0:
         return None
     scatter = np.random.default_rng(len(marks)).uniform(-1.0, 1.0, (BEGINNINGS, len(marks), 2))
-    solution: ComplexArray | None = None
-    confirmations = 0
-    for beginning in centre + extent * (scatter[..., 0] + 1j * scatter[..., 1]):
-        fit = _fit(known, sights, beginning, extent)
+    beginnings = list(centre + extent * (scatter[..., 0] + 1j * scatter[..., 1]))
+    found: list[ComplexArray] = []
+    while beginnings:
+        fit = _fit(known, sights, beginnings.pop(), extent)
         if np.abs(fit.fun).max() > FITTING:
             continue
-        found = fit.x.view(complex) * extent
-        if not _checked(sights, fit.jac) or (
-            solution is not None and np.abs(found - solution).max() > SAME_PLACE * extent
-        ):
+        found.append(fit.x.view(complex) * extent)
+        if not _checked(sights, fit.jac) or np.abs(found[-1] - found[0]).max() > SAME_PLACE * extent:
             return None
-        solution, confirmations = found, confirmations + 1
-    if solution is None or confirmations < CONFIRMED:
-        return None
-    return dict(zip(marks, solution.tolist(), strict=True))
+        if len(found) == 1:
+            beginnings.append(_mirrored(found[0], known))
+    return dict(zip(marks, found[0].tolist(), strict=True)) if len(found) >= CONFIRMED else None
+
+
+def _mirrored(points: ComplexArray, known: ComplexArray) -> ComplexArray:
+    """Points mirrored about the line that the known points lie along, where distances from them would not notice."""
+    centre = known.mean()
+    twice_azimuth = np.angle(np.sum((known - centre) ** 2))
+    mirrored: ComplexArray = centre + np.exp(1j * twice_azimuth) * (points - centre).conj()
+    return mirrored
 
 
 def _sights_about(figure: Figure, marks: list[int]) -> tuple[ComplexArray, _Sights]:

@@ -18,6 +18,7 @@ from adjust.network.plan_relations import plan_relations
 from adjust.network.searching import BEGINNINGS
 from adjust.network.sight_lines import SightLines
 from adjust.network.survey import Survey
+from adjust.network.vector_chains import along_vectors
 from adjust.network.wording import listed, names_of
 from adjust.network.working_plane import ComplexArray, GridPlane, WorkingPlane, working_plane
 from adjust.observations import Directions
@@ -65,6 +66,7 @@ class _Finder:
     def estimate(self) -> Estimate:
         """Plan and heights by turns, until what the plan was built from stays as it is."""
         given = self._with_height_origin(given_estimate(self.job, self.plane))
+        given = along_vectors(self.job, self.plane, given)
         estimate = self._raised(given)
         if not np.isnan(given.points[self.in_plan]).any():
             return estimate
