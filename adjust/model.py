@@ -14,18 +14,12 @@ from functools import cached_property
 import numpy as np
 from scipy.sparse import csr_array
 
+from adjust.angles import wrapped
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.frames import Geometry
 from adjust.job import Job
 from adjust.observations import Observations
 from adjust.unknowns import Unknowns
-
-TURN = 2 * np.pi
-
-
-def wrapped(angle: FloatArray) -> FloatArray:
-    """Angles brought to −π … π, radians."""
-    return angle - TURN * np.round(angle / TURN)
 
 
 @dataclass(frozen=True)

@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from adjust.angles import FULL_TURN
 from adjust.arrays import BoolArray, FloatArray
-from adjust.model import TURN, Block, State, whitened
+from adjust.model import Block, State, whitened
 from adjust.observations import Observations
 from adjust.quality import checked_information, minimal_detectable_bias, normalised_residual, studentised_residual
 
@@ -75,4 +76,4 @@ def residuals_of(block: Block, state: State, factor: FloatArray, leverage: Float
 
 def _adjusted(observations: Observations, residual: FloatArray) -> FloatArray:
     adjusted = observations.observed + residual
-    return adjusted % TURN if observations.full_circle else adjusted
+    return adjusted % FULL_TURN if observations.full_circle else adjusted

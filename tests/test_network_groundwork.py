@@ -8,11 +8,12 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from adjust.angles import wrapped
 from adjust.errors import NetworkError
 from adjust.frames import EllipsoidFrame
 from adjust.job import Job
 from adjust.network.blocks import find_blocks
-from adjust.network.consensus import group_circular_medians, group_medians, wrapped
+from adjust.network.consensus import group_circular_medians, group_medians
 from adjust.network.estimate import Estimate, given_estimate
 from adjust.network.plan_relations import PlanRelations, plan_relations
 from adjust.network.sight_lines import SightLines

@@ -5,8 +5,9 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
+from adjust.angles import FULL_TURN, wrapped
 from adjust.reductions import faces
-from adjust.reductions.circle import FULL_TURN, number_groups, wrapped
+from adjust.reductions.circle import number_groups
 from adjust.reductions.faces import LEFT, RIGHT
 from adjust.reductions.horizon import horizon_closures
 from adjust.units import ARCSEC, parse_dms

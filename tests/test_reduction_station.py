@@ -5,7 +5,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from adjust.reductions.circle import FULL_TURN, wrapped
+from adjust.angles import FULL_TURN, wrapped
 from adjust.reductions.spread import mean_of_repeats, spread_from
 from adjust.reductions.station import adjust_station
 from adjust.units import ARCSEC

@@ -7,6 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
+from adjust.angles import FULL_TURN
 from adjust.arrays import FloatArray
 from adjust.blunders.cells import cells_of
 from adjust.blunders.context import Context
@@ -20,7 +21,6 @@ from adjust.blunders.round import Round
 from adjust.blunders.system import System
 from adjust.field_book.written import Line
 from adjust.job import Job
-from adjust.model import TURN
 from adjust.observations import ControlCoordinates
 from adjust.observations.sighted import HeightedSight
 
@@ -128,7 +128,7 @@ def expected_value(job: Job, hypothesis: Hypothesis, error: FloatArray) -> Float
     if hypothesis.single:
         components = [observations.components.index(name) for name in hypothesis.components]
         written: FloatArray = observations.observed[row, components]
-        return (written - error) % TURN if observations.full_circle else written - error
+        return (written - error) % FULL_TURN if observations.full_circle else written - error
     if isinstance(observations, HeightedSight) and hypothesis.nature in ("instrument height", "target height"):
         return np.asarray(observations.heights[row, int(hypothesis.nature == "target height")] - error)
     return None

@@ -4,14 +4,8 @@ from __future__ import annotations
 
 import numpy as np
 
+from adjust.angles import wrapped
 from adjust.arrays import FloatArray, IntArray
-
-FULL_TURN = 2.0 * np.pi
-
-
-def wrapped(angle: FloatArray) -> FloatArray:
-    """The same angles, radians, between −π and π."""
-    return (angle + np.pi) % FULL_TURN - np.pi
 
 
 def group_medians(keys: IntArray, values: FloatArray) -> tuple[IntArray, FloatArray]:

@@ -13,9 +13,10 @@ import numpy as np
 from scipy.sparse import csr_array
 from scipy.sparse.csgraph import connected_components
 
+from adjust.angles import wrapped
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.job import Job
-from adjust.network.consensus import group_circular_medians, group_medians, wrapped
+from adjust.network.consensus import group_circular_medians, group_medians
 from adjust.network.estimate import Estimate
 from adjust.network.sight_lines import HorizontalLines, SightLines
 from adjust.network.spread import spread

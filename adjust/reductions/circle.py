@@ -6,14 +6,6 @@ import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
 
-FULL_TURN = 2.0 * np.pi
-HALF_TURN = np.pi
-
-
-def wrapped(angle: FloatArray) -> FloatArray:
-    """The same angles within half a turn of zero, radians, −π < angle ≤ π."""
-    return HALF_TURN - np.remainder(HALF_TURN - angle, FULL_TURN)
-
 
 def first_of_groups(group: IntArray, groups: int) -> IntArray:
     """The first row (groups,) of each group; `group` (rows,) numbers the groups, and none may be empty."""

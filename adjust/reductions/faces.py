@@ -11,8 +11,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from adjust.angles import FULL_TURN, HALF_TURN, wrapped
 from adjust.arrays import BoolArray, FloatArray, IntArray
-from adjust.reductions.circle import FULL_TURN, HALF_TURN, first_of_groups, group_sums, wrapped
+from adjust.reductions.circle import first_of_groups, group_sums
 
 LEFT, RIGHT = 0, 1
 

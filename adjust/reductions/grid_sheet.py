@@ -7,10 +7,10 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from adjust.angles import FULL_TURN, wrapped
 from adjust.arrays import FloatArray, IntArray
 from adjust.frames.ellipsoid import EllipsoidFrame
 from adjust.observations.base import Columns
-from adjust.reductions.circle import FULL_TURN, wrapped
 from adjust.reductions.ellipsoid_distance import ellipsoid_distance, radius_in_azimuth
 
 if TYPE_CHECKING:

@@ -6,8 +6,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from adjust.angles import wrapped
 from adjust.arrays import FloatArray, IntArray
-from adjust.reductions.circle import first_of_groups, wrapped
+from adjust.reductions.circle import first_of_groups
 
 
 @dataclass(frozen=True)

@@ -6,9 +6,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from adjust.angles import HALF_TURN
 from adjust.arrays import FloatArray, IntArray
 from adjust.observations.base import Columns, Provenance
-from adjust.reductions.circle import HALF_TURN, number_groups
+from adjust.reductions.circle import number_groups
 from adjust.reductions.faces import LEFT, RIGHT
 
 NOT_SAID = -1

@@ -6,8 +6,8 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from adjust.angles import FULL_TURN, wrapped
 from adjust.arrays import FloatArray, IntArray
-from adjust.reductions.circle import FULL_TURN, wrapped
 
 WEIGHTS_SETTLED = 1e-13
 """Relative change of an equivalent weight below which they are final: directions of the same standing then have the

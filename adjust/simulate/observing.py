@@ -7,13 +7,12 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from adjust.angles import FULL_TURN
 from adjust.arrays import FloatArray
 from adjust.frames import Geometry
 from adjust.job import Control, Job, Marks
 from adjust.observations import ControlCoordinates, Observations
 from adjust.unknowns import find_unknowns
-
-FULL_TURN = 2 * np.pi
 
 
 @dataclass(frozen=True)

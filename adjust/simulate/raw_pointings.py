@@ -6,12 +6,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from adjust.angles import FULL_TURN, HALF_TURN
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.field_book.cells import EXACT, Style, Table
 from adjust.job import Job
 from adjust.observations import Directions, Observations, SlopeDistances, ZenithAngles
 from adjust.reductions.atmosphere import Air
-from adjust.reductions.circle import FULL_TURN, HALF_TURN
 from adjust.reductions.distance import velocity_factor
 from adjust.reductions.faces import LEFT, RIGHT, effect_of_collimation
 from adjust.reductions.refractivity import group_refractivity

@@ -31,7 +31,7 @@ from tests.suspects import suspect_control, suspect_group, suspect_row
 START_SD = 0.3
 """Metres: start coordinates are so far off."""
 DETECTABLE = 4.13
-"""Sds of the estimated error that are found with a power of 0.80 at 0.001: the minimal detectable bias (Baarda 1968)."""
+"""Sds of the estimated error that are found with a power of 0.80 at 0.001: Baarda's minimal detectable bias (1968)."""
 LEAST = 1.5 * DETECTABLE
 """Sds of its estimated error that a planted mistake makes at least: 1.5 × the minimal detectable bias."""
 WITHIN = 4.0

@@ -17,10 +17,10 @@ from pathlib import Path
 import numpy as np
 
 from adjust import Job, read_job
+from adjust.angles import wrapped
 from adjust.arrays import FloatArray, IntArray
 from adjust.observations import Directions, Observations, SlopeDistances
 from adjust.quality import chi_square_quantile
-from adjust.reductions.circle import wrapped
 from adjust.simulate import Equipment, assemble, total_station_net, true_geometry
 from adjust.simulate.raw_job import read_by_a_party
 from adjust.simulate.raw_pointings import Habits

@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from adjust.angles import wrapped
 from adjust.arrays import FloatArray, IntArray
 from adjust.blunders.context import Context, Correction
 from adjust.blunders.mistakes.control import alternative_coordinates
@@ -18,7 +19,6 @@ from adjust.field_book.schema import AXES
 from adjust.field_book.writing import VALUE_COLUMNS
 from adjust.field_book.written import Cell, Line
 from adjust.job import Job
-from adjust.model import wrapped
 from adjust.observations import Observations
 from adjust.observations.sighted import HeightedSight
 

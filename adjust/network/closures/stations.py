@@ -13,13 +13,13 @@ from functools import cached_property
 
 import numpy as np
 
+from adjust.angles import wrapped
 from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.frames import Geometry, PlaneFrame
 from adjust.network.closures.closures import Closures
 from adjust.network.closures.observed import Observed
 from adjust.network.closures.ragged import Ragged
 from adjust.network.closures.short_cycles import short_cycles
-from adjust.network.consensus import wrapped
 from adjust.observations import Angles, Azimuths, Directions
 from adjust.observations.direction import azimuth_of
 from adjust.tolerances import Quantity
