@@ -61,6 +61,10 @@ function near() {
   return view.width < drawing.width * 0.999;
 }
 
+function centre(mark, width) {
+  if (!Number.isNaN(xs[mark])) look(xs[mark] - width / 2, ys[mark] - width / proportion() / 2, width);
+}
+
 let waiting = 0;
 let letters = 1;
 function redraw() {
@@ -308,7 +312,7 @@ function walk(step) {
   const now = ordered.indexOf(choice.marks[0]);
   const next = ordered[(now < 0 ? (step > 0 ? 0 : ordered.length - 1) : now + step + ordered.length) % ordered.length];
   chooseOn({ table: tables.get("marks"), row: rowOfMark(next) });
-  if (!inside(xs[next], ys[next])) look(xs[next] - view.width / 2, ys[next] - view.height / 2, view.width);
+  if (!inside(xs[next], ys[next])) centre(next, view.width);
 }
 
 const KEYS = {
@@ -376,7 +380,7 @@ map.addEventListener("wheel", (event) => {
 map.addEventListener("focus", () => map.classList.add("active"));
 map.addEventListener("blur", () => map.classList.remove("active"));
 
-const chip = element("div", { class: "chip", hidden: true });
+const chip = element("aside", { class: "chip", hidden: true, "aria-label": "Chosen" });
 document.body.append(chip);
 function showChip() {
   chip.hidden = choice.marks.length === 0;
@@ -429,7 +433,7 @@ search.addEventListener("change", () => {
     return;
   }
   chooseOn({ table: tables.get("marks"), row: rowOfMark(mark) });
-  if (!Number.isNaN(xs[mark])) look(xs[mark] - view.width / 2, ys[mark] - view.height / 2, Math.min(view.width, drawing.width / 3));
+  centre(mark, Math.min(view.width, drawing.width / 3));
 });
 addEventListener("resize", () => (near() ? redraw() : whole()));
 addEventListener("beforeprint", () => {
