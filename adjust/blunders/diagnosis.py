@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 from adjust.blunders.criterion import Criterion
 from adjust.blunders.evidence import Allowed, Evidence
 from adjust.blunders.information import DenseInformation
-from adjust.blunders.proposals import proposal
+from adjust.blunders.proposals import proposal, snooped
 from adjust.blunders.search import find_errors
 from adjust.blunders.separability import Replacement, settled, standing
 
@@ -31,6 +31,10 @@ class Diagnosis:
         """Other sets that the data leave standing."""
         return tuple(standing(self.evidence, self.criterion, self.chosen))
 
+    def settled(self) -> Diagnosis:
+        """The set of the smallest errors among those that fit as well."""
+        return replace(self, chosen=settled(self.evidence, self.criterion, self.chosen))
+
     def alternatives(self, hypothesis: int) -> tuple[int, ...]:
         """What may stand in the place of one of the chosen, ascending: "one of these"."""
         found = {
@@ -45,11 +49,13 @@ class Diagnosis:
 def diagnose(evidence: Evidence, criterion: Criterion, rows: int, start: tuple[int, ...] = ()) -> Diagnosis:
     """The set of least cost from several beginnings; `rows` single components come first among the columns.
 
-    It begins with nothing, with `start`, and, where all of G is at hand, with what a robust estimate proposes.
+    It begins with nothing, with `start`, and with what a robust estimate proposes; where not all of G is at hand, with
+    `start`, or else with what snooping in strides finds.
     """
-    beginnings = [(), start]
     if isinstance(evidence.information, DenseInformation):
-        beginnings.append(proposal(evidence, criterion, rows))
+        beginnings = [(), start, proposal(evidence, criterion, rows)]
+    else:
+        beginnings = [start or snooped(evidence, criterion)]
     choices = [find_errors(evidence, criterion, beginning) for beginning in dict.fromkeys(beginnings)]
     best = min(choices, key=lambda choice: (choice.cost, choice.chosen))
-    return Diagnosis(evidence, criterion, settled(evidence, criterion, best.chosen))
+    return Diagnosis(evidence, criterion, best.chosen)

@@ -11,13 +11,13 @@ NOAA Technical Report NOS NGS 30). Allowing for some errors S changes the rest t
 
     g|S = g − G_·S G_SS⁻¹ g_S,   G|S = G − G_·S G_SS⁻¹ G_S·                                          (2)
 
-without another adjustment: one step of a Cholesky decomposition of G for each column of S.
+without another adjustment.
 """
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
@@ -97,7 +97,7 @@ class Evidence:
     @cached_property
     def by_itself(self) -> Allowed:
         """The tests of each hypothesis with nothing else allowed for."""
-        return Allowed(self, ())
+        return self.allowing(())
 
     def columns_of(self, hypothesis: int) -> IntArray:
         """Columns (q,) of one hypothesis."""
@@ -105,51 +105,58 @@ class Evidence:
         return columns
 
     def allowing(self, chosen: Sequence[int]) -> Allowed:
-        """The tests of all others once the errors of `chosen` hypotheses are allowed for."""
-        return Allowed(self, tuple(chosen))
+        """The tests of all others once the errors of `chosen` hypotheses, ascending, are allowed for.
+
+        Raises numpy.linalg.LinAlgError where these can not be told apart.
+        """
+        owned = [self.columns_of(hypothesis) for hypothesis in chosen]
+        columns = np.concatenate([np.empty(0, dtype=np.int64), *owned])
+        scale = np.sqrt(self.information.diagonal[columns])
+        own = self.information.block(columns, columns) / np.outer(scale, scale)
+        lower = np.linalg.inv(np.linalg.cholesky(own)) / scale
+        return Allowed(self, tuple(chosen), columns, lower.T @ lower)
 
 
 @dataclass(frozen=True)
 class Allowed:
-    """Equation (2) for one set of hypotheses S, `chosen`."""
+    """Equation (2) for one set of hypotheses S, `chosen`, of `columns` (s,), with `covariance` Q_∇ = G_SS⁻¹ (s, s)."""
 
     evidence: Evidence
     chosen: tuple[int, ...]
-    columns: IntArray = field(init=False)
-    """Columns (s,) of the chosen."""
-    basis: FloatArray = field(init=False)
-    """U (columns, s) with U Uᵀ = G_·S G_SS⁻¹ G_S·."""
-    coordinates: FloatArray = field(init=False)
-    """L⁻¹ g_S (s,): T is their square sum."""
-    lower: FloatArray = field(init=False)
-    """L (s, s), G_SS = L Lᵀ."""
+    columns: IntArray
+    covariance: FloatArray
 
-    def __post_init__(self) -> None:
-        evidence = self.evidence
-        owned = [evidence.columns_of(hypothesis) for hypothesis in self.chosen]
-        columns = np.concatenate([np.empty(0, dtype=np.int64), *owned])
-        strips = evidence.information.columns(columns)
-        lower = np.linalg.cholesky(strips[columns])
-        object.__setattr__(self, "columns", columns)
-        object.__setattr__(self, "basis", np.linalg.solve(lower, strips.T).T)
-        object.__setattr__(self, "coordinates", np.linalg.solve(lower, evidence.score[columns]))
-        object.__setattr__(self, "lower", lower)
+    @cached_property
+    def errors(self) -> FloatArray:
+        """∇ (s,) of the chosen, column by column."""
+        return np.asarray(self.covariance @ self.evidence.score[self.columns], dtype=np.float64)
 
     @property
     def statistic(self) -> float:
         """T of the whole set."""
-        return float(self.coordinates @ self.coordinates)
+        return float(self.evidence.score[self.columns] @ self.errors)
+
+    @cached_property
+    def influence(self) -> FloatArray:
+        """G_·S Q_∇ (columns, s): what each error takes from the score of every column."""
+        return np.asarray(self.evidence.information.columns(self.columns) @ self.covariance, dtype=np.float64)
 
     @cached_property
     def score(self) -> FloatArray:
         """g|S (columns,)."""
-        return np.asarray(self.evidence.score - self.basis @ self.coordinates, dtype=np.float64)
+        return np.asarray(self.evidence.score - self.influence @ self.evidence.score[self.columns], dtype=np.float64)
 
     @cached_property
     def diagonal(self) -> FloatArray:
         """Diagonal (columns,) of G|S."""
-        diagonal: FloatArray = self.evidence.information.diagonal - np.einsum("ps,ps->p", self.basis, self.basis)
-        return diagonal
+        taken = np.einsum("ps,ps->p", self.influence, self.evidence.information.columns(self.columns))
+        return np.asarray(self.evidence.information.diagonal - taken, dtype=np.float64)
+
+    def block(self, columns: IntArray) -> FloatArray:
+        """G|S (k, k) among some columns (k,)."""
+        information = self.evidence.information
+        across = information.block(columns, self.columns)
+        return np.asarray(information.block(columns, columns) - across @ self.covariance @ across.T, dtype=np.float64)
 
     @cached_property
     def testable(self) -> BoolArray:
@@ -178,8 +185,8 @@ class Allowed:
         """T (m,) of hypotheses of several columns (m, q)."""
         sound = self.testable[members].all(axis=1)
         tested = members[sound]
-        along = self.basis[tested]
-        blocks = self.evidence.information.blocks(tested) - along @ along.transpose(0, 2, 1)
+        across = self.evidence.information.columns(self.columns)[tested]
+        blocks = self.evidence.information.blocks(tested) - across @ self.covariance @ across.transpose(0, 2, 1)
         scale = np.sqrt(self.evidence.information.diagonal[tested])
         values, vectors = np.linalg.eigh(blocks / (scale[:, :, None] * scale[:, None, :]))
         turned = np.einsum("mij,mi->mj", vectors, self.score[tested] / scale)
@@ -188,16 +195,14 @@ class Allowed:
         joint[np.flatnonzero(sound)[regular]] = np.sum(turned[regular] ** 2 / values[regular], axis=1)
         return joint
 
-    @cached_property
-    def covariance(self) -> FloatArray:
-        """Q_∇ = G_SS⁻¹ (s, s)."""
-        inverse = np.linalg.inv(self.lower)
-        return np.asarray(inverse.T @ inverse, dtype=np.float64)
-
-    @cached_property
-    def errors(self) -> FloatArray:
-        """∇ (s,) of the chosen, column by column."""
-        return np.asarray(np.linalg.solve(self.lower.T, self.coordinates), dtype=np.float64)
+    def joint_gain(self, hypotheses: Sequence[int]) -> float:
+        """T of further hypotheses together on top; directions in which nothing more can be told count nothing."""
+        columns = np.concatenate([self.evidence.columns_of(hypothesis) for hypothesis in hypotheses])
+        scale = np.sqrt(self.evidence.information.diagonal[columns])
+        values, vectors = np.linalg.eigh(self.block(columns) / np.outer(scale, scale))
+        turned = vectors.T @ (self.score[columns] / scale)
+        regular = values > LEAST_INFORMATION
+        return float(np.sum(turned[regular] ** 2 / values[regular]))
 
     def own(self, hypothesis: int) -> slice:
         """Where one of the chosen stands among their columns."""
@@ -213,15 +218,37 @@ class Allowed:
             [self.errors[own] @ np.linalg.solve(self.covariance[own, own], self.errors[own]) for own in parts]
         )
 
+    def without(self, hypothesis: int) -> Allowed:
+        """The same without one of the chosen, found from this in one step."""
+        own = self.own(hypothesis)
+        kept = np.delete(np.arange(len(self.columns)), own)
+        gone = np.linalg.solve(self.covariance[own, own], self.covariance[own, kept])
+        covariance = self.covariance[np.ix_(kept, kept)] - self.covariance[kept, own] @ gone
+        chosen = tuple(other for other in self.chosen if other != hypothesis)
+        return _Without(self.evidence, chosen, self.columns[kept], covariance, self, own)
 
-def joint_gain(allowed: Allowed, hypotheses: Sequence[int]) -> float:
-    """T of further hypotheses together on top; directions in which nothing more can be told count nothing."""
-    evidence = allowed.evidence
-    columns = np.concatenate([evidence.columns_of(hypothesis) for hypothesis in hypotheses])
-    along = allowed.basis[columns]
-    block = evidence.information.columns(columns)[columns] - along @ along.T
-    scale = np.sqrt(evidence.information.diagonal[columns])
-    values, vectors = np.linalg.eigh(block / np.outer(scale, scale))
-    turned = vectors.T @ (allowed.score[columns] / scale)
-    regular = values > LEAST_INFORMATION
-    return float(np.sum(turned[regular] ** 2 / values[regular]))
+
+@dataclass(frozen=True)
+class _Without(Allowed):
+    """A set that lacks the columns `gone` J of a `fuller` one S: with K_J the influence of J there,
+
+    g|R = g|S + K_J Q_JJ⁻¹ ∇_J,   G|R = G|S + K_J Q_JJ⁻¹ K_Jᵀ.
+    """
+
+    fuller: Allowed
+    gone: slice
+
+    @cached_property
+    def score(self) -> FloatArray:
+        """g|R (columns,)."""
+        fuller = self.fuller
+        returned = np.linalg.solve(fuller.covariance[self.gone, self.gone], fuller.errors[self.gone])
+        return np.asarray(fuller.score + fuller.influence[:, self.gone] @ returned, dtype=np.float64)
+
+    @cached_property
+    def diagonal(self) -> FloatArray:
+        """Diagonal (columns,) of G|R."""
+        fuller = self.fuller
+        influence = fuller.influence[:, self.gone]
+        returned = np.linalg.solve(fuller.covariance[self.gone, self.gone], influence.T).T
+        return np.asarray(fuller.diagonal + np.einsum("pq,pq->p", influence, returned), dtype=np.float64)

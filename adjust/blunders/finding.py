@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from pathlib import Path
 
-import numpy as np
-
 from adjust.adjustment import Adjustment
 from adjust.blunders.criterion import Criterion
 from adjust.blunders.diagnosis import diagnose
@@ -51,23 +49,27 @@ class _Rounds:
 
     def last(self) -> Round:
         """The round that settles it."""
-        start: tuple[int, ...] = ()
-        for _ in range(MOST_ROUNDS):
-            found = self._round(start)
+        found = self._round(None)
+        for _ in range(MOST_ROUNDS - 1):
             if found.moved <= NEAR:
                 break
             self.state = found.state
-            start = tuple(number for number in found.diagnosis.chosen if number < found.hypotheses.first_group)
-        return found
+            found = self._round(found)
+        return found.settled()
 
-    def _round(self, start: tuple[int, ...]) -> Round:
+    def _round(self, before: Round | None) -> Round:
+        """In a large network groups are only looked at where the search without them finds something."""
         system = System.at(self.job, self.model, self.state, self.analysis)
         self.analysis = system.analysis
         if self.model.observation_rows <= MOST_DENSE // 2:
-            return self._diagnosed(Hypotheses.of(system), start)
-        first = self._diagnosed(Hypotheses(system, ()), start)
-        rows = np.flatnonzero(np.abs(first.hypotheses.columns[:, first.diagnosis.allowed.columns]).sum(axis=1) > 0.0)
-        return self._diagnosed(Hypotheses.of(system, rows), first.diagnosis.chosen) if len(rows) else first
+            hypotheses = Hypotheses.of(system)
+            return self._diagnosed(hypotheses, () if before is None else before.known_to(hypotheses))
+        if before is None:
+            before = self._diagnosed(Hypotheses(system, ()), ())
+        if not len(before.rows):
+            return before
+        hypotheses = Hypotheses.of(system, before.rows)
+        return self._diagnosed(hypotheses, before.known_to(hypotheses))
 
     def _diagnosed(self, hypotheses: Hypotheses, start: tuple[int, ...]) -> Round:
         statistics = self.job.statistics

@@ -30,6 +30,10 @@ class InformationMatrix(Protocol):
         """Columns (columns, k) of G."""
         ...
 
+    def block(self, rows: IntArray, columns: IntArray) -> FloatArray:
+        """G (k, l) of some rows (k,) and columns (l,)."""
+        ...
+
     def blocks(self, members: IntArray) -> FloatArray:
         """Diagonal blocks (m, q, q) of members (m, q)."""
         ...
@@ -51,6 +55,10 @@ class DenseInformation:
         """Columns (columns, k) of G."""
         return self.matrix[:, wanted]
 
+    def block(self, rows: IntArray, columns: IntArray) -> FloatArray:
+        """G (k, l) of some rows (k,) and columns (l,)."""
+        return self.matrix[np.ix_(rows, columns)]
+
     def blocks(self, members: IntArray) -> FloatArray:
         """Diagonal blocks (m, q, q) of members (m, q)."""
         return self.matrix[members[:, :, None], members[:, None, :]]
@@ -58,7 +66,7 @@ class DenseInformation:
 
 @dataclass(frozen=True)
 class SparseInformation:
-    """G = HᵀH − HᵀÃ C ÃᵀH column by column, each by one solution with the factor; those asked for once are kept.
+    """G = HᵀH − HᵀÃ C ÃᵀH column by column, each by one solution with the factor; what was asked for once is kept.
 
     `columns` is H, `through` ÃᵀH; `singles` are the diagonal blocks (rows, c, c) of the observations' own errors, with
     the first column of each kind. The columns behind them are those of groups.
@@ -68,8 +76,9 @@ class SparseInformation:
     through: csr_array
     factor: Factor
     singles: tuple[tuple[int, FloatArray], ...]
-    affordable = 30
+    affordable = 12
     _kept: dict[int, FloatArray] = field(default_factory=dict, repr=False)
+    _blocks: dict[tuple[bytes, bytes], FloatArray] = field(default_factory=dict, repr=False)
 
     @cached_property
     def diagonal(self) -> FloatArray:
@@ -81,16 +90,34 @@ class SparseInformation:
 
     def columns(self, wanted: IntArray) -> FloatArray:
         """Columns (columns, k) of G."""
-        lacking = np.array(
-            [column for column in dict.fromkeys(wanted.tolist()) if column not in self._kept], dtype=np.int64
-        )
+        lacking = self._lacking(wanted)
         if len(lacking):
-            spread = self.factor.normal_solve(self.through[:, lacking].toarray())
-            fresh = (self.supposed.T @ self.supposed[:, lacking]).toarray() - self.through.T @ spread
-            self._kept.update(zip(lacking.tolist(), fresh.T, strict=True))
-        return np.column_stack(
-            [np.empty((self.supposed.shape[1], 0)), *(self._kept[column] for column in wanted.tolist())]
-        )
+            self._kept.update(zip(lacking.tolist(), self._solved(lacking).T, strict=True))
+        strips = np.empty((self.supposed.shape[1], len(wanted)))
+        for place, column in enumerate(wanted.tolist()):
+            strips[:, place] = self._kept[column]
+        return strips
+
+    def block(self, rows: IntArray, columns: IntArray) -> FloatArray:
+        """G (k, l) of some rows (k,) and columns (l,); columns that are solved for here are not kept."""
+        key = (rows.tobytes(), columns.tobytes())
+        if key not in self._blocks:
+            self._blocks[key] = self._block(rows, columns)
+        return self._blocks[key]
+
+    def _block(self, rows: IntArray, columns: IntArray) -> FloatArray:
+        lacking = self._lacking(columns)
+        fresh = dict(zip(lacking.tolist(), self._solved(lacking)[rows].T, strict=True)) if len(lacking) else {}
+        known = [fresh[column] if column in fresh else self._kept[column][rows] for column in columns.tolist()]
+        return np.array(known).reshape(len(columns), len(rows)).T
+
+    def _lacking(self, wanted: IntArray) -> IntArray:
+        lacking = [column for column in dict.fromkeys(wanted.tolist()) if column not in self._kept]
+        return np.array(lacking, dtype=np.int64)
+
+    def _solved(self, columns: IntArray) -> FloatArray:
+        spread = self.factor.normal_solve(self.through[:, columns].toarray())
+        return np.asarray((self.supposed.T @ self.supposed[:, columns]).toarray() - self.through.T @ spread)
 
     def blocks(self, members: IntArray) -> FloatArray:
         """Diagonal blocks (m, q, q) of members (m, q): those of whole observations are known, groups are solved for."""

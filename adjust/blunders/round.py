@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
 from scipy.sparse import csr_array
 
+from adjust.arrays import IntArray
 from adjust.blunders.diagnosis import Diagnosis
 from adjust.blunders.evidence import Allowed
 from adjust.blunders.hypotheses import Hypotheses
@@ -30,6 +31,24 @@ class Round:
     def columns_of(self, allowed: Allowed) -> csr_array:
         """H (rows, s), whitened, of the errors that are allowed for."""
         return csr_array(self.hypotheses.columns[:, allowed.columns])
+
+    @property
+    def rows(self) -> IntArray:
+        """System rows that the errors found enter, ascending."""
+        entered = abs(self.columns_of(self.diagnosis.allowed)).sum(axis=1)
+        return np.flatnonzero(np.asarray(entered) > 0.0)
+
+    def known_to(self, other: Hypotheses) -> tuple[int, ...]:
+        """The errors found, as another numbering has them; groups it does not know are left out."""
+        first = self.hypotheses.first_group
+        names = {group.hypothesis.name: other.first_group + place for place, group in enumerate(other.groups)}
+        groups = [self.hypotheses.hypothesis(number).name for number in self.diagnosis.chosen if number >= first]
+        singles = [number for number in self.diagnosis.chosen if number < first]
+        return tuple(sorted([*singles, *(names[name] for name in groups if name in names)]))
+
+    def settled(self) -> Round:
+        """The same, where several sets fit equally well the one of the smallest errors."""
+        return replace(self, diagnosis=self.diagnosis.settled())
 
     @cached_property
     def state(self) -> State:

@@ -36,14 +36,14 @@ class Choice:
 def find_errors(evidence: Evidence, criterion: Criterion, start: Sequence[int] = ()) -> Choice:
     """The set of least cost that the moves reach from `start`."""
     search = _Search(evidence, criterion)
-    best = search.choice(start)
-    effort = 0
+    allowed = evidence.allowing(tuple(sorted(start)))
+    best, effort = Choice(criterion.cost(allowed), allowed.chosen), 0
     while effort < len(search.efforts):
-        following = min(
-            search.efforts[effort](best.chosen), key=lambda choice: (choice.cost, choice.chosen), default=best
-        )
+        reached = search.efforts[effort](allowed)
+        following = min(reached, key=lambda choice: (choice.cost, choice.chosen), default=best)
         if following.cost < best.cost - LEAST_SAVING:
             best, effort = following, 0
+            allowed = evidence.allowing(best.chosen)
         else:
             effort += 1
     return best
@@ -55,45 +55,11 @@ class _Search:
     criterion: Criterion
 
     @property
-    def efforts(self) -> tuple[Callable[[tuple[int, ...]], Iterator[Choice]], ...]:
+    def efforts(self) -> tuple[Callable[[Allowed], Iterator[Choice]], ...]:
         """Moves in the order of the work they take."""
-        return self._joined, self._exchanged, self._two_exchanged
+        return self._one_more, self._two_more, self._exchanged, self._two_exchanged
 
-    def choice(self, chosen: Sequence[int]) -> Choice:
-        """A set and its cost."""
-        ordered = tuple(sorted(chosen))
-        return self._as_it_is(self.evidence.allowing(ordered))
-
-    def _as_it_is(self, allowed: Allowed) -> Choice:
-        return Choice(self.criterion.cost(allowed), allowed.chosen)
-
-    def _with(self, allowed: Allowed, gain: float, joining: Sequence[int]) -> Choice:
-        chosen = tuple(sorted((*allowed.chosen, *joining)))
-        price = self.criterion.price(map(self.evidence.sort, chosen))
-        return Choice(float(self.criterion.worth(allowed.statistic + gain)) + price, chosen)
-
-    def _joined(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
-        """One more, or two."""
-        allowed = self.evidence.allowing(chosen)
-        yield from self._with_one(allowed)
-        yield from self._with_two(allowed)
-
-    def _exchanged(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
-        """Without one, or with one or two others in its place."""
-        for removed in chosen:
-            allowed = self.evidence.allowing([other for other in chosen if other != removed])
-            yield self._as_it_is(allowed)
-            yield from self._with_one(allowed)
-            yield from self._with_two(allowed)
-
-    def _two_exchanged(self, chosen: tuple[int, ...]) -> Iterator[Choice]:
-        """One or two others in the place of two that lean on each other."""
-        for removed in coupled_pairs(self.evidence, chosen):
-            allowed = self.evidence.allowing([other for other in chosen if other not in removed])
-            yield from self._with_one(allowed)
-            yield from self._with_two(allowed)
-
-    def _with_one(self, allowed: Allowed) -> Iterator[Choice]:
+    def _one_more(self, allowed: Allowed) -> Iterator[Choice]:
         """The best hypothesis of each sort on top."""
         for numbers in self.evidence.sorts.values():
             gains = allowed.gains[numbers]
@@ -101,7 +67,7 @@ class _Search:
                 best = int(np.argmax(gains))
                 yield self._with(allowed, float(gains[best]), [int(numbers[best])])
 
-    def _with_two(self, allowed: Allowed) -> Iterator[Choice]:
+    def _two_more(self, allowed: Allowed) -> Iterator[Choice]:
         """The best pair of single-column hypotheses of each two sorts on top."""
         columns = pair_columns(allowed)
         owners = self.evidence.owner[columns]
@@ -113,6 +79,26 @@ class _Search:
                 i, k = divmod(int(np.argmax(among)), len(columns))
                 yield self._with(allowed, float(among[i, k]), [int(owners[i]), int(owners[k])])
 
+    def _exchanged(self, allowed: Allowed) -> Iterator[Choice]:
+        """Without one, or with one or two others in its place."""
+        for removed in allowed.chosen:
+            fewer = allowed.without(removed)
+            yield Choice(self.criterion.cost(fewer), fewer.chosen)
+            yield from self._one_more(fewer)
+            yield from self._two_more(fewer)
+
+    def _two_exchanged(self, allowed: Allowed) -> Iterator[Choice]:
+        """One or two others in the place of two that lean on each other."""
+        for first, second in coupled_pairs(allowed):
+            fewer = allowed.without(first).without(second)
+            yield from self._one_more(fewer)
+            yield from self._two_more(fewer)
+
+    def _with(self, allowed: Allowed, gain: float, joining: Sequence[int]) -> Choice:
+        chosen = tuple(sorted((*allowed.chosen, *joining)))
+        price = self.criterion.price(map(self.evidence.sort, chosen))
+        return Choice(float(self.criterion.worth(allowed.statistic + gain)) + price, chosen)
+
 
 def pair_columns(allowed: Allowed) -> IntArray:
     """The columns (k,) that pairs are made of: those that fit worst, as many as can be afforded."""
@@ -123,26 +109,20 @@ def pair_columns(allowed: Allowed) -> IntArray:
     return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:most]])
 
 
-def coupled_pairs(evidence: Evidence, chosen: tuple[int, ...]) -> Iterator[tuple[int, int]]:
+def coupled_pairs(allowed: Allowed) -> Iterator[tuple[int, int]]:
     """Pairs of the chosen whose estimated errors are correlated by more than `COUPLED`."""
-    if len(chosen) < 2:
-        return
-    allowed = evidence.allowing(chosen)
     scale = np.sqrt(np.diagonal(allowed.covariance))
     correlation = np.abs(allowed.covariance) / np.outer(scale, scale)
-    for first, second in combinations(chosen, 2):
+    for first, second in combinations(allowed.chosen, 2):
         if correlation[allowed.own(first), allowed.own(second)].max() > COUPLED:
             yield first, second
 
 
 def pair_gains(allowed: Allowed, columns: IntArray) -> FloatArray:
     """T (k, k) of every pair of `columns` (k,) on top; 0 where the two can not be told apart."""
-    information = (
-        allowed.evidence.information.columns(columns)[columns] - allowed.basis[columns] @ allowed.basis[columns].T
-    )
     scale = np.sqrt(allowed.diagonal[columns])
     w = allowed.w[columns]
-    correlation = information / np.outer(scale, scale)
+    correlation = allowed.block(columns) / np.outer(scale, scale)
     np.fill_diagonal(correlation, 1.0)
     apart = 1.0 - correlation**2
     sound = apart > LEAST_INFORMATION

@@ -19,7 +19,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from adjust.blunders.criterion import Criterion, chi_square_price
-from adjust.blunders.evidence import Allowed, Evidence, joint_gain
+from adjust.blunders.evidence import Allowed, Evidence
 from adjust.blunders.search import coupled_pairs, pair_columns, pair_gains
 
 EQUAL = 1.0
@@ -69,31 +69,38 @@ def size_of_errors(allowed: Allowed) -> float:
 
 def standing(evidence: Evidence, criterion: Criterion, chosen: tuple[int, ...]) -> Iterator[Replacement]:
     """Every replacement of one member by one other or by two, and of two by two, that the tests let stand."""
+    allowed = evidence.allowing(chosen)
     for removed in chosen:
-        one = _Standing(evidence, criterion, chosen, (removed,))
+        one = _Standing(criterion, allowed, (removed,))
         yield from one.by_one()
         yield from one.by_two(better=BETTER)
-    for pair in coupled_pairs(evidence, chosen):
-        yield from _Standing(evidence, criterion, chosen, pair).by_two(
-            better=-chi_square_price(criterion.significance, 2)
-        )
+    for pair in coupled_pairs(allowed):
+        yield from _Standing(criterion, allowed, pair).by_two(better=-chi_square_price(criterion.significance, 2))
 
 
 class _Standing:
     """What may stand in the place of `removed` members of a set."""
 
-    def __init__(self, evidence: Evidence, criterion: Criterion, chosen: tuple[int, ...], removed: tuple[int, ...]):
-        self.evidence, self.criterion, self.removed = evidence, criterion, removed
-        self.kept = tuple(other for other in chosen if other not in removed)
-        self.allowed = evidence.allowing(self.kept)
-        self.variance = criterion.variance(evidence.allowing(chosen).statistic, int(evidence.size[list(chosen)].sum()))
+    def __init__(self, criterion: Criterion, allowed: Allowed, removed: tuple[int, ...]) -> None:
+        self.evidence, self.criterion, self.removed = allowed.evidence, criterion, removed
+        self.variance = criterion.variance(allowed.statistic, len(allowed.columns))
+        for gone in removed:
+            allowed = allowed.without(gone)
+        self.allowed, self.kept = allowed, allowed.chosen
 
     def by_one(self) -> Iterator[Replacement]:
-        """One other for the one removed."""
-        gains = self.allowed.gains
-        for other in np.flatnonzero(gains > 0.0).tolist():
-            if other not in self.removed and self._pays(0.0, float(gains[other]), (), (other,)):
-                yield from self._if_standing((other,), float(gains[other]))
+        """One other for the one removed: it pays, and explains almost as much, or the one removed would be missed."""
+        most = self.allowed.joint_gain(self.removed)
+        kept = [self.evidence.sort(number) for number in self.kept]
+        gone = [self.evidence.sort(number) for number in self.removed]
+        for sort, numbers in self.evidence.sorts.items():
+            gains = self.allowed.gains[numbers]
+            cost = self.criterion.worth(self.allowed.statistic + gains) + self.criterion.price([*kept, sort])
+            alone = self._cost(0.0, ())
+            missed = float(self.criterion.worth(self.allowed.statistic + most))
+            enough = (cost < alone) & (cost <= missed + self.criterion.price([*kept, *gone, sort]))
+            for place in np.flatnonzero(enough & (gains > 0.0) & ~np.isin(numbers, self.removed)).tolist():
+                yield from self._if_standing((int(numbers[place]),), float(gains[place]))
 
     def by_two(self, better: float) -> Iterator[Replacement]:
         """Two other single columns for those removed, likeliest first, at most `MOST_PAIRS`.
@@ -105,7 +112,7 @@ class _Standing:
         gains = np.triu(pair_gains(self.allowed, columns), 1)
         same = np.isin(owners, self.removed)
         gains[same[:, None] | same[None, :]] = 0.0
-        first, second = np.nonzero(gains > max(joint_gain(self.allowed, self.removed) + better * self.variance, 0.0))
+        first, second = np.nonzero(gains > max(self.allowed.joint_gain(self.removed) + better * self.variance, 0.0))
         order = np.argsort(-gains[first, second], kind="stable")[:MOST_PAIRS]
         single = self.allowed.w[columns] ** 2
         for i, k in zip(first[order].tolist(), second[order].tolist(), strict=True):
@@ -115,10 +122,9 @@ class _Standing:
 
     def _if_standing(self, joined: tuple[int, ...], gain: float) -> Iterator[Replacement]:
         """The replacement, if the removed members explain nothing on top of it."""
-        chosen = tuple(sorted((*self.kept, *joined)))
-        further = joint_gain(self.evidence.allowing(chosen), self.removed)
-        if not self._pays(gain, gain + further, joined, (*joined, *self.removed)):
-            yield Replacement(self.removed, joined, chosen)
+        together = self.allowed.joint_gain((*joined, *self.removed))
+        if not self._pays(gain, together, joined, (*joined, *self.removed)):
+            yield Replacement(self.removed, joined, tuple(sorted((*self.kept, *joined))))
 
     def _pays(self, before: float, after: float, fewer: tuple[int, ...], more: tuple[int, ...]) -> bool:
         """Whether `more` hypotheses beside the kept ones are worth more than `fewer`, given what each explains."""
