@@ -1,11 +1,12 @@
 """The dissection: no row joins two branches, and the parts are balanced with small separators."""
 
+import networkx
 import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from adjust.solver.dissection import LEAF_COLUMNS, dissect
+from adjust.solver.dissection import LEAF_COLUMNS, Level, dissect, smallest_cover
 from tests.benchmarks.grid import grid_problem, grid_sides
 
 
@@ -66,3 +67,28 @@ def test_unconnected_parts_need_no_separator():
         inside = (node >> (np.frexp(node.astype(float))[1] - 2)) == branch
         assert len(set(part[inside])) >= 3
     assert np.count_nonzero(node == 1) <= 1
+
+
+def test_marks_tied_to_far_hubs_are_cut_at_the_hubs():
+    marks, hubs = 600, 6
+    generator = np.random.default_rng(4)
+    positions = generator.uniform(size=(marks, 2))
+    pairs = np.array([(hub, mark) for mark in range(hubs, marks) for hub in generator.choice(hubs, 2, replace=False)])
+    node = dissect(pairs, np.full(marks, 3), positions, np.zeros(marks, dtype=bool))
+    np.testing.assert_array_equal(np.flatnonzero(node == 1), np.arange(hubs))
+
+
+@settings(max_examples=60, deadline=None)
+@given(seed=st.integers(0, 2**32 - 1), members=st.integers(2, 40), density=st.floats(0.1, 3.0))
+def test_a_cover_touches_every_pair_across_and_is_as_small_as_the_largest_matching(seed, members, density):
+    generator = np.random.default_rng(seed)
+    ends = generator.integers(0, members, (int(density * members), 2))
+    ends = np.unique(ends[ends[:, 0] != ends[:, 1]], axis=0)
+    above = generator.uniform(size=members) < 0.5
+    one_part = np.zeros(members, dtype=np.int64)
+    cover = smallest_cover(Level(np.arange(members), one_part, 1, ends, one_part + 1), above)
+    across = ends[above[ends[:, 0]] != above[ends[:, 1]]]
+    assert cover[across].any(axis=1).all()
+    graph = networkx.Graph(across.tolist())
+    matching = networkx.bipartite.maximum_matching(graph, top_nodes=set(graph) & set(np.flatnonzero(above)))
+    assert np.count_nonzero(cover) == len(matching) // 2  # Kőnig's theorem: no cover is smaller

@@ -16,6 +16,7 @@ from adjust.arrays import BoolArray, FloatArray, IntArray
 LEAF_COLUMNS = 40  # parts of at most this many columns are not cut: measured, see docs/performance.md
 IMBALANCE_PRICE = 0.5  # × √columns: what a wholly one-sided cut would have to save in separator columns
 MOST_LOPSIDED = 0.5  # a cut leaves at least a quarter on either side, which bounds the depth of the tree
+POOR = 4.0  # × √columns: twice the separator of a plane network; beyond it hubs are looked for
 SEPARATOR_SHARE = 0.6  # of a part: a separator larger than this gains nothing over leaving the part whole
 
 
@@ -65,7 +66,13 @@ def open_level(node: IntArray, moving: IntArray, pairs: IntArray, sizes: IntArra
 
 def cut_level(node: IntArray, level: Level, positions: FloatArray) -> IntArray:
     """Cut every part once. Separators and parts not worth cutting stay; returns the groups moved on to child nodes."""
-    above, separator, worth = best_cuts(level, line_up(level, positions))
+    above, separator = best_cuts(level, line_up(level, positions))
+    total = np.bincount(level.part, level.weight)
+    poor = np.bincount(level.part, level.weight * separator) > POOR * np.sqrt(total)
+    if poor.any():
+        separator = np.where(poor[level.part], smallest_cover(level, above), separator)
+    split = np.bincount(level.part, above & ~separator) * np.bincount(level.part, ~above & ~separator) > 0
+    worth = split & (np.bincount(level.part, level.weight * separator) <= SEPARATOR_SHARE * total)
     moves = ~separator & worth[level.part]
     moved = level.members[moves]
     node[moved] = 2 * node[moved] + above[moves]
@@ -85,12 +92,12 @@ def line_up(level: Level, positions: FloatArray) -> IntArray:
     return order[np.argsort(level.part[order], kind="stable")]
 
 
-def best_cuts(level: Level, order: IntArray) -> tuple[BoolArray, BoolArray, BoolArray]:
+def best_cuts(level: Level, order: IntArray) -> tuple[BoolArray, BoolArray]:
     """Cut every part where it is cheapest along `order`, from the separator sizes of all cuts at once.
 
-    Returns who is above the cut and who is on the separator (members,), and which parts are worth the cut (parts,). A
-    member below a cut is on its lower separator when a neighbour lies at or above the cut, so it counts for the cuts
-    from its own place to its farthest neighbour's: a running sum over those intervals gives the size for every cut.
+    Returns who is above the cut and who is on the separator (members,), all on one side of it. A member below a cut is
+    on its lower separator when a neighbour lies at or above the cut, so it counts for the cuts from its own place to
+    its farthest neighbour's: a running sum over those intervals gives the size for every cut.
     """
     count, part = len(level.members), level.part
     place = np.empty(count, dtype=np.int64)
@@ -108,9 +115,31 @@ def best_cuts(level: Level, order: IntArray) -> tuple[BoolArray, BoolArray, Bool
     cut = hits[np.searchsorted(part[hits], np.arange(level.parts))]
     above = place >= cut[part]
     crossing = np.where(above, back < cut[part], ahead >= cut[part])
-    size = np.minimum(low, high)[cut]
-    worth = (size <= SEPARATOR_SHARE * total) & np.isfinite(least)
-    return above, crossing & (above != (low <= high)[cut][part]), worth
+    return above, crossing & (above != (low <= high)[cut][part])
+
+
+def smallest_cover(level: Level, above: BoolArray) -> BoolArray:
+    """The fewest members, on either side, that touch every pair across the cuts: few hubs rather than many spokes.
+
+    From a maximum matching of the pairs across, by the theorem of Kőnig (Papadimitriou & Steiglitz 1982, *Combinatorial
+    Optimization*, section 10.2): those above that alternating paths reach from unmatched ones below, and those below
+    that none reaches.
+    """
+    from scipy.sparse.csgraph import maximum_bipartite_matching
+
+    count = len(level.members)
+    across = level.ends[above[level.ends[:, 0]] != above[level.ends[:, 1]]]
+    across = np.where(above[across[:, :1]], across[:, ::-1], across)
+    mate = maximum_bipartite_matching(joined(across, count), perm_type="column")
+    below, matched = np.zeros(count, dtype=bool), np.flatnonzero(mate >= 0)
+    below[across[:, 0]] = True
+    reached = below & (mate < 0)
+    while True:
+        reached[across[reached[across[:, 0]], 1]] = True
+        fresh = matched[reached[mate[matched]] & ~reached[matched]]
+        if not len(fresh):
+            return np.asarray((below & ~reached) | (above & reached))
+        reached[fresh] = True
 
 
 def farthest_neighbours(place: IntArray, ends: IntArray) -> tuple[IntArray, IntArray]:
