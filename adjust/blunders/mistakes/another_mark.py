@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from adjust.arrays import FloatArray, IntArray
+from adjust.arrays import FloatArray
 from adjust.blunders.context import Correction
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.suspect import Suspect
@@ -21,31 +21,26 @@ class AnotherMark:
             return self._for_group(suspect)
         if not suspect.kind or suspect.kind == "control" or suspect.size < len(suspect.context.observations.components):
             return None
-        roles = suspect.row_itself.roles
-        return Candidates.together(
-            [
-                self._in_role(suspect, place)
-                for place, role in enumerate(roles)
-                if role != "at" or "direction" not in suspect.kind
-            ]
-        )
+        row = suspect.row_itself
+        own = [place for place, role in enumerate(row.roles) if role != "at" or row.setup is None]
+        return Candidates.together([self._in_role(suspect, place) for place in own])
 
     @staticmethod
     def _in_role(suspect: Suspect, place: int) -> Candidates | None:
         row = suspect.row_itself
         marks = np.setdiff1d(np.arange(len(suspect.job.marks)), row.marks[0])
         errors = suspect.error_if(suspect.with_marks(marks, place))
-        marks, errors = known(marks, errors)
         names, role = suspect.job.marks.names, row.roles[place]
-        written, source = names[row.marks[0, place]], suspect.lines[0][0]
+        written, lines = names[row.marks[0, place]], suspect.lines
 
         def remedy(number: int, error: FloatArray) -> Remedy:
             mark = names[marks[number]]
             detail = f"{role} {mark} in place of {written}"
             replacement = suspect.with_marks(marks[number : number + 1], place)
-            return Remedy("another mark", detail, (Correction(source, role, mark),), replacement)
+            corrections = tuple(Correction(source, role, mark) for source, _ in lines)
+            return Remedy("another mark", detail, corrections, replacement)
 
-        return Candidates(errors, np.full(len(marks), 1 / max(len(marks), 1)), remedy)
+        return Candidates(errors, np.full(len(marks), 1 / len(names)), remedy)
 
     @staticmethod
     def _for_group(suspect: Suspect) -> Candidates | None:
@@ -54,17 +49,10 @@ class AnotherMark:
         marks = np.setdiff1d(np.arange(len(suspect.job.marks)), [mark])
         start = np.repeat(geometry.coordinates[mark : mark + 1], len(marks), axis=0)
         errors = suspect.job.frame.displacement(start, geometry.coordinates[marks])[:, : suspect.size]
-        marks, errors = known(marks, errors)
         names = suspect.job.marks.names
         did = "the instrument stood on" if suspect.nature == "station" else "the target stood on"
 
         def remedy(number: int, error: FloatArray) -> Remedy:
             return Remedy(f"{did} {names[marks[number]]}, not on {names[mark]}")
 
-        return Candidates(errors, np.full(len(marks), 1 / max(len(marks), 1)), remedy)
-
-
-def known(marks: IntArray, errors: FloatArray) -> tuple[IntArray, FloatArray]:
-    """Those whose errors (k, q) the network can tell."""
-    told = np.isfinite(errors).all(axis=1)
-    return marks[told], errors[told]
+        return Candidates(errors, np.full(len(marks), 1 / len(names)), remedy)

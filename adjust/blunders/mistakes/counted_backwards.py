@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
+from adjust.angles import FULL_TURN
 from adjust.blunders.mistakes.interface import Candidates
 from adjust.blunders.mistakes.suspect import Suspect
 
@@ -16,7 +17,7 @@ class CountedBackwards:
     def candidates(self, suspect: Suspect) -> Candidates | None:
         """The value as the usual circle would show it."""
         if suspect.kind in ("direction", "azimuth"):
-            others = {"360° − the value, the circle counted backwards": (2 * np.pi, -1.0)}
+            others = {"360° − the value, the circle counted backwards": (FULL_TURN, -1.0)}
         elif suspect.kind == "zenith":
             others = {
                 "90° − the value, an elevation booked as a zenith angle": (np.pi / 2, -1.0),

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
+from adjust.blunders.mistakes.entry import Entry
 from adjust.blunders.mistakes.interface import Candidates
-from adjust.blunders.mistakes.suspect import Entry, Suspect
+from adjust.blunders.mistakes.suspect import Suspect
 from adjust.units import INTERNATIONAL_FOOT
 
 METRES = {1.0: 3.0, 2.0: 1.0, 5.0: 1.0, 10.0: 2.0, 20.0: 2.0, 30.0: 2.0, 50.0: 2.0, 100.0: 1.0}

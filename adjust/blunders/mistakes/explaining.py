@@ -11,9 +11,10 @@ from scipy.special import logsumexp
 from adjust.arrays import FloatArray
 from adjust.blunders.context import Context, Explanation
 from adjust.blunders.mistakes.catalogue import MISTAKES
+from adjust.blunders.mistakes.entries import HEIGHTS, SHARED_HEIGHTS
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.priors import PRIORS
-from adjust.blunders.mistakes.suspect import HEIGHTS, Suspect
+from adjust.blunders.mistakes.suspect import Suspect
 from adjust.blunders.mistakes.weighing import Weighing
 
 MOST_CHANCE = 0.05
@@ -23,7 +24,7 @@ MOST_EXPLANATIONS = 5
 LEAST_ODDS = 1e-3
 """Explanations below a thousandth are not worth a line."""
 MOST_REFINED = 20
-"""Candidates that are put to the network one by one: the rest is less likely by their estimated errors already."""
+"""Candidates that are put to the network one by one, as far as `LEAST_ODDS` lets them count at all."""
 ALIKE = 0.02
 """Standard deviations by which two errors differ that come to the same correction."""
 
@@ -35,11 +36,8 @@ def explain(context: Context) -> tuple[Explanation, ...]:
     better than it explains all but `MOST_CHANCE` of random errors of the same order of size.
     """
     suspect = Suspect(context)
-    found = [
-        (mistake.name, candidates)
-        for mistake in MISTAKES
-        if (candidates := mistake.candidates(suspect)) is not None and len(candidates)
-    ]
+    asked = ((mistake.name, mistake.candidates(suspect)) for mistake in MISTAKES)
+    found = [(name, known) for name, every in asked if every is not None and len(known := every.known())]
     return _Ranking(suspect, found).explanations() if found else ()
 
 
@@ -99,8 +97,9 @@ class _Ranking:
 
     def _choices(self) -> list[_Choice]:
         """The likeliest candidates, those that change more than a value put to the network."""
-        likeliest = np.argsort(-self.weighing.weights, kind="stable")[:MOST_REFINED]
-        return [self._choice(int(place)) for place in likeliest]
+        weights = self.weighing.weights
+        likeliest = np.argsort(-weights, kind="stable")[:MOST_REFINED]
+        return [self._choice(int(place)) for place in likeliest if weights[place] >= weights.max() + np.log(LEAST_ODDS)]
 
     def _choice(self, place: int) -> _Choice:
         owner = self._owner(place)
@@ -154,7 +153,7 @@ class _Ranking:
             corrected: FloatArray = suspect.row_itself.observed[0].copy()
             corrected[suspect.components] -= error
             return suspect.in_range(corrected)
-        if suspect.nature in ("instrument height", "target height"):
+        if suspect.nature in SHARED_HEIGHTS:
             written = suspect.row_itself.heights[0, HEIGHTS.index(suspect.values[0].name)]
             return np.array([written]) - error
         return None

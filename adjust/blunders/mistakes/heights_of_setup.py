@@ -8,8 +8,10 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
+from adjust.blunders.mistakes.entries import HEIGHTS, SHARED_HEIGHTS
+from adjust.blunders.mistakes.entry import Entry
 from adjust.blunders.mistakes.interface import Candidates, Remedy
-from adjust.blunders.mistakes.suspect import HEIGHTS, Entry, Suspect
+from adjust.blunders.mistakes.suspect import Suspect
 from adjust.observations.sighted import HeightedSight
 
 LEAST_SPREAD = 0.05
@@ -91,7 +93,7 @@ class Height:
 
 def heights_of(suspect: Suspect) -> Iterator[Height]:
     """The heights that a sight, or a group of sights, rests on."""
-    shared = suspect.nature in ("instrument height", "target height")
+    shared = suspect.nature in SHARED_HEIGHTS
     sights = [rows for rows in suspect.job.observations if isinstance(rows, HeightedSight)]
     for entry in suspect.values if shared else suspect.heights:
         role = HEIGHTS.index(entry.name)

@@ -50,6 +50,21 @@ class Candidates:
     def __len__(self) -> int:
         return len(self.errors)
 
+    def known(self) -> Candidates:
+        """Without those whose error the network cannot tell: NaN."""
+        finite = np.isfinite(self.errors).all(axis=1) & np.isfinite(self.open_part).all(axis=1)
+        if finite.all():
+            return self
+        chosen = np.flatnonzero(finite)
+        loose = None if self.loose is None else self.loose[chosen]
+        return Candidates(
+            self.errors[chosen],
+            self.shares[chosen],
+            lambda place, error: self.remedy(int(chosen[place]), error),
+            loose,
+            self.rarity,
+        )
+
     @property
     def open_part(self) -> FloatArray:
         """`loose`, zeros where nothing is left open."""

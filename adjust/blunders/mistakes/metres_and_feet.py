@@ -8,7 +8,7 @@ from adjust.blunders.context import Correction
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.notation import Notation
 from adjust.blunders.mistakes.suspect import Suspect
-from adjust.units import INTERNATIONAL_FOOT, US_SURVEY_FOOT
+from adjust.units import INTERNATIONAL_FOOT, LENGTH_ENDINGS, US_SURVEY_FOOT
 
 METRIC = {
     "feet booked as metres": INTERNATIONAL_FOOT,
@@ -41,7 +41,7 @@ class MetresAndFeet:
             return self._of_vector(suspect)
         parts = []
         for entry in suspect.values:
-            if entry.cell.text:
+            if entry.cell.text and entry.notation.ending in LENGTH_ENDINGS:
                 factors = factors_of(entry.notation)
                 values, whats = entry.value * np.array([*factors.values()]), list(factors)
                 parts.append(entry.valued(values, whats.__getitem__, np.array(SHARES[: len(whats)])))

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import numpy as np
 
+from adjust.blunders.mistakes.entry import Entry
 from adjust.blunders.mistakes.interface import Candidates
-from adjust.blunders.mistakes.suspect import Entry, Suspect
+from adjust.blunders.mistakes.suspect import Suspect
 from adjust.units import INTERNATIONAL_FOOT
 
 STEPS = {"dm": 0.1, "m": 1.0}

@@ -23,6 +23,7 @@ from functools import cached_property
 import numpy as np
 from scipy.special import gammaln, logsumexp
 
+from adjust.angles import FULL_TURN, wrapped
 from adjust.arrays import FloatArray
 from adjust.blunders.mistakes.priors import NO_COMMON_MISTAKE, ORDERS_OF_SIZE
 
@@ -31,7 +32,6 @@ SAMPLES = 500
 LEAST_SIZE, MOST_SIZE = 0.5, 2.0
 """What "of the same order of size" means, as multiples of the error found."""
 SEED = 1
-TURN = 2 * np.pi
 
 
 @dataclass(frozen=True)
@@ -65,7 +65,7 @@ class Weighing:
         """L⁻¹(∇ − e) (m, k, q) of errors (m, q)."""
         away = found[:, None, :] - self.errors
         if self.circle:
-            away = away - TURN * np.round(away / TURN)
+            away = wrapped(away)
         whitened: FloatArray = away @ self._whitening.T
         return whitened
 
@@ -83,7 +83,7 @@ class Weighing:
 
     def _weights(self, squares: FloatArray) -> FloatArray:
         """Logarithm (…, k) of prior times (1), but for |Q|^(−1/2), which all share."""
-        scale = 0.5 * self._size * math.log(TURN) + 0.5 * np.log1p(self._open_square)
+        scale = 0.5 * self._size * math.log(FULL_TURN) + 0.5 * np.log1p(self._open_square)
         weights: FloatArray = np.log(self.priors) - scale - 0.5 * squares
         return weights
 
