@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import re
+import shutil
 import sys
 from pathlib import Path
 
@@ -12,6 +14,7 @@ from cli.export import NAMES
 from cli.main import run
 from tests.exported import text_of
 
+ROOT = Path(__file__).parents[1]
 LIBRARIES = {"gpkg": ("pyogrio", "gis"), "dxf": ("ezdxf", "cad"), "xlsx": ("openpyxl", "office")}
 
 
@@ -71,3 +74,18 @@ def test_results_that_are_none_are_status_2(tmp_path: Path, capsys: pytest.Captu
 def test_an_unknown_format_or_exaggeration_is_status_2(folder: Path) -> None:
     assert run(["export", str(folder), "--to", "paper"]) == 2
     assert run(["export", str(folder), "--to", "dxf", "--exaggeration", "0"]) == 2
+
+
+def test_the_page_on_exports_does_what_it_says(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Its commands and its program run from the checkout's field data."""
+    text = (ROOT / "docs" / "exports.md").read_text("utf-8")
+    shutil.copytree(ROOT / "field_data" / "dam_control", tmp_path / "field_data" / "dam_control")
+    monkeypatch.chdir(tmp_path)
+    commands = re.findall(r"^hubtack (.*)$", text, re.MULTILINE)
+    assert len(commands) == 3
+    assert [run(command.split()) for command in commands] == [0, 0, 0]
+    (program,) = re.findall(r"```python\n(.*?)```", text, re.DOTALL)
+    names: dict[str, object] = {}
+    exec(program, names)
+    assert Path("dam.geojson").is_file()
+    assert "1 m" in str(names["notes"])

@@ -11,7 +11,7 @@ from typing import Any
 
 from adjust.errors import OutputError
 from adjust.reports.exports.options import Options, Table
-from adjust.reports.exports.rows import Cell
+from adjust.reports.exports.rows import Cell, Row
 from adjust.reports.exports.tables import table_rows
 from adjust.reports.exports.text import legal
 from adjust.reports.libraries import library
@@ -62,35 +62,51 @@ def _summary(workbook: Any, results: SavedResults) -> None:
             sheet.append(_cells(sheet, [("key", title), (title, sentence)]))
 
 
-def _sheet(workbook: Any, title: str, rows: Iterable[dict[str, Cell]]) -> None:
-    """A header row that stays in view and can filter, then the rows."""
+def _sheet(workbook: Any, title: str, rows: Iterable[Row]) -> None:
+    """A header row that stays in view and can filter, then the rows.
+
+    Each column has one cell that takes the values of all rows in turn: a row is written as it is appended, and making a
+    cell with its format anew for every figure takes most of the time.
+    """
     from openpyxl.utils import get_column_letter
 
     sheet = workbook.create_sheet(title)
     sheet.freeze_panes = "B2"
-    count = 0
+    count, columns = 0, []
     for count, row in enumerate(rows, 1):
         if count == 1:
             for number in range(1, len(row) + 1):
                 sheet.column_dimensions[get_column_letter(number)].width = WIDTH
             sheet.append(_cells(sheet, ((name, name) for name in row)))
-        sheet.append(_cells(sheet, row.items()))
+            columns = [_column(sheet, name) for name in row]
+        sheet.append([_filled(cell, value) for cell, value in zip(columns, row.values(), strict=True)])
     if count:
-        sheet.auto_filter.ref = f"A1:{get_column_letter(len(row))}{count + 1}"
+        sheet.auto_filter.ref = f"A1:{get_column_letter(len(columns))}{count + 1}"
 
 
 def _cells(sheet: Any, values: Iterable[tuple[str, Cell]]) -> list[Any]:
+    return [_filled(_column(sheet, name), value) for name, value in values]
+
+
+def _column(sheet: Any, name: str) -> Any:
+    """A cell that shows figures with the digits that suit the unit in the column's name."""
     from openpyxl.cell import WriteOnlyCell
 
-    cells = []
-    for name, value in values:
-        cell = WriteOnlyCell(sheet, legal(value) if isinstance(value, str) else value)
-        if isinstance(value, str):
-            cell.data_type = "s"
-        elif isinstance(value, float):
-            cell.number_format = next((form for end, form in NUMBER_FORMATS.items() if name.endswith(end)), "General")
-        cells.append(cell)
-    return cells
+    cell = WriteOnlyCell(sheet)
+    form = next((form for end, form in NUMBER_FORMATS.items() if name.endswith(end)), None)
+    if form is not None:
+        cell.number_format = form
+    return cell
+
+
+def _filled(cell: Any, value: Cell) -> Any:
+    """The cell with its value, None where there is none; text stays text, whatever it looks like."""
+    if value is None:
+        return None
+    cell.value = legal(value) if isinstance(value, str) else value
+    if isinstance(value, str):
+        cell.data_type = "s"
+    return cell
 
 
 def _save(workbook: Any, path: Path) -> None:
