@@ -16,7 +16,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from adjust.blunders import Context
-from adjust.blunders.mistakes import explain
+from adjust.blunders.mistakes import PRIORS, explain
 from adjust.simulate import NETWORKS, observe
 from tests.planting import VALUE, book, read, revalued, with_row
 from tests.studies.pages import rewrite
@@ -28,6 +28,8 @@ JOBS = 200
 """Of each mistake."""
 RANDOM_JOBS = 2000
 """Of each range of sizes."""
+PRIOR_JOBS = 20
+"""Of each mistake, for the question what the priors matter."""
 SEED = 20261201
 PAGE = "validation-mistakes.md"
 PLANTS: tuple[Plant, ...] = (*BOOKED, *RAW)
@@ -137,6 +139,32 @@ def random_table(jobs: int) -> str:
     return "\n".join(lines) + "\n"
 
 
+def with_other_priors(plants: Sequence[Plant], jobs: int, seed: int = SEED) -> tuple[float, float]:
+    """Share of jobs with the right explanation first: with the table of priors, and with every figure of it up to
+    three times as large or as small, drawn anew for each job."""
+    usual, generator = dict(PRIORS), np.random.default_rng(seed)
+    found = []
+    for case in (case for plant in plants for case in plant.cases(jobs, seed)):
+        first = verdict(case)[0] == RIGHT
+        PRIORS.update({name: prior * 3.0 ** generator.uniform(-1, 1) for name, prior in usual.items()})
+        found.append((first, verdict(case)[0] == RIGHT))
+        PRIORS.update(usual)
+    with_table, without = np.mean(found, axis=0)
+    return float(with_table), float(without)
+
+
+def priors_table(jobs: int) -> str:
+    """The table of what the priors matter."""
+    with_table, without = with_other_priors(PLANTS, jobs)
+    lines = [
+        "| priors | jobs | right first |",
+        "| --- | ---: | ---: |",
+        f"| the table | {jobs * len(PLANTS):,} | {with_table:.1%} |",
+        f"| each up to 3 × off | {jobs * len(PLANTS):,} | {without:.1%} |",
+    ]
+    return "\n".join(lines) + "\n"
+
+
 def main() -> int:
     """Run the study, show the tables, put them into the page."""
     scores = []
@@ -147,6 +175,7 @@ def main() -> int:
     print(chance)
     rewrite(PAGE, "mistakes", table(scores))
     rewrite(PAGE, "chance", chance)
+    rewrite(PAGE, "priors", priors_table(PRIOR_JOBS))
     return 0
 
 

@@ -23,6 +23,8 @@ MOST_EXPLANATIONS = 5
 """More are no help to a surveyor."""
 LEAST_ODDS = 1e-3
 """Explanations below a thousandth are not worth a line."""
+MOST_ODDS = 1e6
+"""A million to one: beyond it the tails of normal errors would speak, which nobody has measured."""
 MOST_REFINED = 20
 """Candidates that are put to the network one by one, as far as `LEAST_ODDS` lets them count at all."""
 ALIKE = 0.02
@@ -83,8 +85,9 @@ class _Ranking:
             return ()
         merged = sorted(self._merged(choices), key=lambda choice: -choice.weight)
         weights = np.array([*(choice.weight for choice in merged), self.weighing.none])
-        odds = [float(np.exp(weight - logsumexp(np.delete(weights, place)))) for place, weight in enumerate(weights)]
-        told = [self._told(choice, chance) for choice, chance in zip(merged, odds, strict=False)]
+        against = [logsumexp(np.delete(weights, place)) for place in range(len(merged))]
+        odds = np.exp(np.minimum(weights[:-1] - against, np.log(MOST_ODDS)))
+        told = [self._told(choice, float(chance)) for choice, chance in zip(merged, odds, strict=True)]
         return tuple(explanation for explanation in told[:MOST_EXPLANATIONS] if explanation.odds >= LEAST_ODDS)
 
     @property
