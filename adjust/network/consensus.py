@@ -10,9 +10,11 @@ from adjust.arrays import FloatArray, IntArray
 
 def group_medians(keys: IntArray, values: FloatArray) -> tuple[IntArray, FloatArray]:
     """The distinct keys (groups,), ascending, and the median of the values (rows,) of each."""
-    order = np.lexsort((values, keys))
-    sorted_keys, sorted_values = keys[order], values[order]
-    groups, starts, counts = np.unique(sorted_keys, return_index=True, return_counts=True)
+    groups, first, counts = np.unique(keys, return_index=True, return_counts=True)
+    if len(groups) == len(keys):
+        return groups, values[first]
+    sorted_values = values[np.lexsort((values, keys))]
+    starts = np.cumsum(counts) - counts
     lower, upper = starts + (counts - 1) // 2, starts + counts // 2
     return groups, 0.5 * (sorted_values[lower] + sorted_values[upper])
 

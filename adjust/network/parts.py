@@ -109,10 +109,11 @@ def _pieces(sought: BoolArray, lines: IntArray) -> list[IntArray]:
     """Connected marks, in the order of their first, wherever at least one is sought."""
     graph = csr_array((np.ones(len(lines)), (lines[:, 0], lines[:, 1])), shape=(len(sought),) * 2)
     label = connected_components(graph, directed=False)[1]
-    order = np.argsort(label, kind="stable")
-    pieces = np.split(order, np.nonzero(np.diff(label[order]))[0] + 1)
-    wanted = np.unique(label[sought])
-    return [piece for piece in pieces if len(piece) and label[piece[0]] in wanted]
+    marks = np.nonzero(np.isin(label, label[sought]))[0]
+    if not len(marks):
+        return []
+    order = marks[np.argsort(label[marks], kind="stable")]
+    return np.split(order, np.nonzero(np.diff(label[order]))[0] + 1)
 
 
 def _height_lines(job: Job, unknowns: Unknowns) -> IntArray:

@@ -55,11 +55,13 @@ def _tally(relations: PlanRelations, standing: BoolArray) -> Tally:
     station, target = relations.station[relations.round], relations.target
     rays = useful_rays(relations, standing[station] & standing[target])
     free, northed = rays & ~relations.northed[relations.round], rays & relations.northed[relations.round]
-    lines = np.unique(np.sort(np.column_stack([station, target])[northed], axis=1), axis=0)
+    one, other = np.minimum(station, target)[northed], np.maximum(station, target)[northed]
+    lines = np.unique(one * count + other)
     ends = relations.ends[standing[relations.ends].all(axis=1)]
     rounds = relations.station[np.unique(relations.round[free])]
     return Tally(
-        np.bincount(target[free], minlength=count) + np.bincount(lines.ravel(), minlength=count),
+        np.bincount(target[free], minlength=count)
+        + np.bincount(np.concatenate([lines // count, lines % count]), minlength=count),
         np.bincount(station[free], minlength=count) - np.bincount(rounds, minlength=count),
         np.bincount(ends.ravel(), minlength=count),
     )

@@ -88,8 +88,10 @@ class SightLines:
         H_to − H_at = S cos z + (1 − k) s²/2R + instrument height − target height, with s cot z for S cos z where no
         slope distance is measured: the contract of the zenith angle solved for the height difference.
         """
+        if not self.zeniths:
+            return Rises(np.empty((0, 2), dtype=np.int64), np.empty(0))
         marks, zenith = _columns(self.zeniths)
-        heights = np.vstack([rows.heights for rows in self.zeniths]) if self.zeniths else np.empty((0, 2))
+        heights = np.vstack([rows.heights for rows in self.zeniths])
         slope = self._measured(self.slopes, marks)
         level = self._measured(self.horizontals, marks)
         apart = np.abs(estimate.points[marks[:, 1]] - estimate.points[marks[:, 0]])

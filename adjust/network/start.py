@@ -152,8 +152,9 @@ class _Finder:
         """Say which rounds see one target only: they orient themselves and give nothing."""
         for rows in self.job.observations:
             if isinstance(rows, Directions):
-                sights = np.unique(np.column_stack([rows.setup, rows.marks[:, 1]]), axis=0)
-                idle = np.nonzero(np.bincount(sights[:, 0], minlength=len(self.job.setups)) == 1)[0]
+                marks = len(self.job.marks)
+                sights = np.unique(rows.setup * marks + rows.marks[:, 1])
+                idle = np.nonzero(np.bincount(sights // marks, minlength=len(self.job.setups)) == 1)[0]
                 if len(idle):
                     names = listed([self.job.setups[setup] for setup in idle], "setup")
                     self.notes.append(f"{names}: one target only, so the directions orient the round and fix nothing")
