@@ -70,6 +70,12 @@ class Check:
 
 def check_job(job: Job) -> Check:
     """Close everything that closes, and look for what is odd. Never raises for a job that could be read."""
+    # a zenith angle misread as 0 divides by zero; what comes of it is not finite and closes nothing
+    with np.errstate(all="ignore"):
+        return _checked(job)
+
+
+def _checked(job: Job) -> Check:
     geometry, notes = _geometry(job)
     observed = Observed(job, geometry)
     lines, stations = Lines(observed), Stations(observed)
@@ -109,7 +115,8 @@ def _closures(orientations: Orientations, lines: Lines, traverses: Traversing) -
         height_closures(observed, lines),
         *vector_closures(observed),
     ]
-    return [closures for closures in every if len(closures)]
+    finite = [closures.take(closures.finite) for closures in every]
+    return [closures for closures in finite if len(closures)]
 
 
 def narrowed(suspicion: Suspicion, clues: Sequence[Clue]) -> Suspicion:

@@ -41,6 +41,11 @@ class Closures:
     def __len__(self) -> int:
         return len(self.misclosure)
 
+    @property
+    def finite(self) -> BoolArray:
+        """Closures (closures,) with a misclosure and an sd: rows that make no sense have none."""
+        return np.asarray(np.isfinite(self.misclosure).all(axis=1) & np.isfinite(self.sd).all(axis=1))
+
     def take(self, chosen: BoolArray | IntArray) -> Closures:
         """A choice of the closures."""
         places: IntArray = np.arange(len(self))[chosen]

@@ -169,11 +169,11 @@ class Lines:
             return no_differences(1)
         zenith, heights = self.zenith, self.zeniths.heights
         level = self.length_of(self.zeniths.marks)
-        with np.errstate(divide="ignore"):
+        with np.errstate(divide="ignore", invalid="ignore"):
             rise = level / np.tan(self._chord_zenith(zenith, level)) + heights[:, 0] - heights[:, 1]
             variance = (level / np.sin(zenith) ** 2 * self.observed.sd[self.zenith_rows]) ** 2
             variance += self._variance_of(self.zeniths.marks) / np.tan(zenith) ** 2
-        known = np.flatnonzero(np.isfinite(rise))
+        known = np.flatnonzero(np.isfinite(rise) & np.isfinite(variance))
         return Differences(
             self.zeniths.marks[known],
             rise[known, None],
