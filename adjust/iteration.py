@@ -193,7 +193,11 @@ SHOWN = 5
 
 
 def with_geoid(job: Job, geometry: Geometry) -> Geometry:
-    """The geometry with geoid heights taken from the job's grid at the marks' present positions, if it has one."""
+    """The geometry with geoid heights from the job's grid at the marks' present positions, if it has one.
+
+    A mark without a position keeps the geoid height it has.
+    """
     if job.geoid_grid is None:
         return geometry
-    return replace(geometry, geoid=job.geoid_grid.heights(geometry.frame.geographic(geometry.coordinates)))
+    found = job.geoid_grid.heights(geometry.frame.geographic(geometry.coordinates))
+    return replace(geometry, geoid=np.where(np.isnan(found), geometry.geoid, found))
