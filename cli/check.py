@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
+import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 import click
 
 from cli.adjust import ACCEPTED, DOUBTFUL, UNUSABLE
+from cli.progress import ProgressLine
 
 if TYPE_CHECKING:
     from adjust.network.closures import Check
+
+READ, CHECKED = 0.2, 0.8
+"""Shares of the waiting time that lie behind when the job is read, and when it is checked."""
 
 
 @click.command("check", epilog="Example: hubtack check field_data/fen_levels --out results")
@@ -30,25 +35,36 @@ def check_command(job: Path, out: Path | None) -> int:
       1  something exceeds its tolerance
       2  the field data or the job file cannot be used, or the reports not written
     """
-    from adjust import read_job
     from adjust.errors import HubtackError
-    from adjust.network.closures import check_job
-    from adjust.reports.check_files import CHECK_REPORTS, write_check_reports
 
     folder = out or (job if job.is_dir() else job.parent) / "out"
     try:
-        check = check_job(read_job(job))
-        write_check_reports(check, folder)
+        check = _check_and_write(job, folder)
     except HubtackError as error:
         click.echo(str(error), err=True)
         return UNUSABLE
-    _summarise(check)
-    click.echo(f"Wrote {' and '.join(CHECK_REPORTS)} into {folder}.")
+    _summarise(check, folder)
     return ACCEPTED if check.passed else DOUBTFUL
 
 
-def _summarise(check: Check) -> None:
+def _check_and_write(job: Path, folder: Path) -> Check:
+    with ProgressLine(sys.stderr) as progress:
+        progress("reading the field book", 0.0)
+        from adjust import read_job
+        from adjust.network.closures import check_job
+        from adjust.reports.check_files import write_check_reports
+
+        field_book = read_job(job)
+        progress("closing loops", READ)
+        check = check_job(field_book)
+        progress("writing the reports", CHECKED)
+        write_check_reports(check, folder)
+    return check
+
+
+def _summarise(check: Check, folder: Path) -> None:
     """The verdict, how each kind of closure went and what cannot be right on stdout, the rest on stderr."""
+    from adjust.reports.check_files import CHECK_REPORTS
     from adjust.reports.check_listing import summary
     from adjust.reports.check_words import check_verdict
 
@@ -57,5 +73,6 @@ def _summarise(check: Check) -> None:
         click.echo(line)
     for remark in check.remarks:
         click.echo(remark.text, err=not remark.exceeds)
+    click.echo(f"Wrote {' and '.join(CHECK_REPORTS)} into {folder}.")
     for note in check.notes:
         click.echo(f"Note: {note}", err=True)
