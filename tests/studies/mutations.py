@@ -266,7 +266,7 @@ GRADED_KINDS = (
 def graded_mistakes(grade: float) -> Iterator[Mistake]:
     """An error of so many tolerances in every kind of observation."""
     for name, network, kind, checks in GRADED_KINDS:
-        yield Mistake(f"{name}, {grade:g} tolerances", network, graded(kind, checks, grade))
+        yield Mistake(f"{name}, {grade:g} × its tolerance", network, graded(kind, checks, grade))
 
 
 def outcome(mistake: Mistake, number: int) -> Outcome:

@@ -126,7 +126,7 @@ def shortest_way(neighbours: Neighbours, start: int, end: int) -> list[int] | No
             continue
         for neighbour, (length, edge) in neighbours[node].items():
             longer = reached + length
-            if longer >= distance[side].get(neighbour, math.inf):
+            if longer >= best or longer >= distance[side].get(neighbour, math.inf):
                 continue
             distance[side][neighbour], before[side][neighbour] = longer, (node, edge)
             heapq.heappush(front[side], (longer, neighbour))
