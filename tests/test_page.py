@@ -5,10 +5,12 @@ import hashlib
 import json
 import re
 from dataclasses import replace
+from pathlib import Path
 
 import pytest
 
-from adjust import adjust
+from adjust import adjust, read_job
+from adjust.blunders import find_blunders
 from adjust.network.closures import check_job
 from adjust.reports import write_reports
 from adjust.reports.page import render_page
@@ -17,6 +19,7 @@ from tests.adjusted_networks import JOBS, adjusted
 from tests.job_folders import PLANE, job_of
 from tests.page_parts import XHTML, at, figures_of, parsed, same, table_columns, text_of
 
+TOWN = Path(__file__).parents[1] / "field_data/town_traverse"
 HOSTILE = '<script>alert("x")</script>'
 SPECIFIED = PLANE | {
     "job.toml": PLANE["job.toml"]
@@ -205,12 +208,35 @@ def test_hostile_names_stay_text(tmp_path):
     assert not list(tree.iter(f"{XHTML}img"))
 
 
-def test_explanations_are_shown_with_their_suspects():
-    adjustment = adjusted("blunder")
-    source = adjustment.suspects[0]
-    page = render_page(adjustment, explanations={source: ["Probably the other face, <not> mended."]})
-    (sentence,) = [text_of(node) for node in parsed(page).iter(f"{XHTML}p") if node.get("class") == "explanation"]
-    assert sentence == "Probably the other face, <not> mended."
+@pytest.fixture(scope="module")
+def searched():
+    """The street traverse, which holds two blunders, and what the search for them finds."""
+    adjustment = adjust(read_job(TOWN))
+    findings = find_blunders(adjustment, TOWN)
+    assert findings.blunders
+    return adjustment, findings
+
+
+def test_blunders_are_shown_with_their_explanations(searched):
+    adjustment, findings = searched
+    tree = parsed(render_page(adjustment, findings=findings))
+    section = next(node for node in tree.iter(f"{XHTML}section") if node.get("id") == "suspects")
+    words = " ".join(text_of(section).split())
+    for blunder in findings.blunders:
+        assert blunder.name in words
+        assert f"test {blunder.test:.2f}, critical {blunder.critical:.2f}" in words
+        for explanation in blunder.explanations:
+            assert explanation.mistake[1:] in words
+        for alternative in blunder.alternatives:
+            assert alternative.name in words
+    shown = len([node for node in section.iter(f"{XHTML}li") if node.get("data-source")])
+    assert shown == sum(int(table.suspect.sum()) for table in adjustment.residuals)
+
+
+def test_a_search_that_finds_nothing_says_so():
+    adjustment = adjusted("levelling")
+    assert "The search for blunders found none." in render_page(adjustment, findings=find_blunders(adjustment))
+    assert "The search for blunders" not in render_page(adjustment)
 
 
 def test_same_job_gives_the_same_bytes(tmp_path):
@@ -219,7 +245,7 @@ def test_same_job_gives_the_same_bytes(tmp_path):
 
 
 def test_long_tables_say_what_is_not_in_the_page(monkeypatch):
-    monkeypatch.setattr("adjust.reports.page.tables.MOST_ROWS", 10)
+    monkeypatch.setattr("adjust.reports.page.observations.MOST_ROWS", 10)
     adjustment = adjusted("mixed")
     page = re.sub(r"\s+", " ", render_page(adjustment))
     left = adjustment.solution.observations - 10

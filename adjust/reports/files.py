@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
@@ -15,14 +16,23 @@ from adjust.reports.selection import Order
 from adjust.reports.tables import write_coordinates, write_residuals
 from adjust.reports.verdict import cautions
 
+if TYPE_CHECKING:
+    from adjust.blunders import Findings
+
 REPORTS = ("results.json", "coordinates.csv", "residuals.csv", "listing.txt", "report.html")
 
 
-def write_reports(adjustment: Adjustment, folder: Path, order: Order = "worst", check: Check | None = None) -> None:
+def write_reports(
+    adjustment: Adjustment,
+    folder: Path,
+    order: Order = "worst",
+    check: Check | None = None,
+    findings: Findings | None = None,
+) -> None:
     """Write all `REPORTS` into `folder`, or none: earlier files stay as they were when anything fails.
 
-    `order` is that of the listing's observations; `check` is what was said of the job before it was adjusted. Raises
-    OutputError where the folder cannot be written.
+    `order` is that of the listing's observations; `check` is what was said of the job before it was adjusted,
+    `findings` what a search for blunders found, for the page. Raises OutputError where the folder cannot be written.
     """
     warned = cautions(adjustment)
     closures = [] if check is None else [check_record(judged) for judged in check.closures]
@@ -31,6 +41,6 @@ def write_reports(adjustment: Adjustment, folder: Path, order: Order = "worst", 
         "coordinates.csv": lambda path: write_coordinates(adjustment, warned, path),
         "residuals.csv": lambda path: write_residuals(adjustment, warned, path),
         "listing.txt": lambda path: write_listing(adjustment, order, path, check),
-        "report.html": lambda path: write_page(adjustment, path, check),
+        "report.html": lambda path: write_page(adjustment, path, check, findings),
     }
     publish(folder, writers)

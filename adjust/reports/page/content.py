@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -182,7 +182,7 @@ def _specification_card(held: Specified) -> Iterator[Card]:
 
 @dataclass(frozen=True)
 class Suspect:
-    """A suspect observation in words, with what somebody probably did where that is known."""
+    """A suspect observation in words."""
 
     source: str
     what: str
@@ -191,21 +191,18 @@ class Suspect:
     observed: str
     test: Figure
     off_by: str
-    explanations: tuple[str, ...]
 
 
-def suspects(adjustment: Adjustment, explanations: Mapping[str, Sequence[str]]) -> list[Suspect]:
-    """The suspects, worst first; `explanations` are sentences by source."""
+def suspects(adjustment: Adjustment) -> list[Suspect]:
+    """The suspects, worst first."""
     key = "tau" if adjustment.solution.sd_basis == "posterior" else "w"
     statistics = adjustment.job.statistics
     shift = non_centrality(statistics.significance, statistics.power) ** 0.5
     found = [record for record in listed_observations(adjustment, "worst", MOST_SUSPECTS) if record["suspect"]]
-    return [_suspect(adjustment, record, key, shift, explanations) for record in found]
+    return [_suspect(adjustment, record, key, shift) for record in found]
 
 
-def _suspect(
-    adjustment: Adjustment, record: Record, key: str, shift: float, explanations: Mapping[str, Sequence[str]]
-) -> Suspect:
+def _suspect(adjustment: Adjustment, record: Record, key: str, shift: float) -> Suspect:
     index = adjustment.job.marks.index
     error = dict(record, error=-record["w"] * record["minimal_detectable_bias"] / shift)
     return Suspect(
@@ -216,7 +213,6 @@ def _suspect(
         observed=observed(record),
         test=Figure(decimals(record[key], 2, signed=True), record[key], key),
         off_by=f"{small(error, 'error', signed=True)} {small_unit(record)}",
-        explanations=tuple(explanations.get(record["source"], ())),
     )
 
 

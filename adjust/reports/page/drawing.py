@@ -17,6 +17,10 @@ LARGEST_ELLIPSE = 45.0
 """Units of the drawing that the largest semi-axis first has."""
 OF_SPACING = 0.6
 """Share of the usual distance between marks that the median semi-axis first has at most: ellipses stay apart."""
+PATCH = 60.0
+"""Units of the drawing across a patch that is painted together."""
+TOGETHER = 200
+"""Marks or lines of one path at most."""
 NICE = (1.0, 2.0, 5.0)
 
 FAMILIES = {
@@ -46,12 +50,12 @@ class Outline:
 
 @dataclass(frozen=True)
 class Layer:
-    """Lines of one family or marks of one status: its name, its words for the legend, how many, and its path."""
+    """Lines of one family or marks of one status: its name, its words for the legend, how many, and its paths."""
 
     name: str
     words: str
     count: int
-    path: str
+    paths: tuple[str, ...]
 
 
 @dataclass(frozen=True)
@@ -161,7 +165,20 @@ def nice_below(value: float) -> float:
 
 
 def _number(value: float) -> str:
-    return f"{round(value, 2) + 0.0:.2f}".rstrip("0").rstrip(".")
+    """Two decimals at most within the drawing, no zeros at the end."""
+    return f"{round(value, 2) + 0.0:g}"
+
+
+def _patches(pieces: list[str], places: FloatArray) -> tuple[str, ...]:
+    """Pieces of a path that lie at `places` (n, 2), put together patch by patch.
+
+    A browser paints the parts of the screen that changed, and of a path all of it: small ones are painted sooner.
+    """
+    row, column = (places[:, ::-1] // PATCH).astype(np.int64).T
+    order = np.lexsort((column, row)).tolist()
+    return tuple(
+        "".join(pieces[place] for place in order[first : first + TOGETHER]) for first in range(0, len(order), TOGETHER)
+    )
 
 
 def _longest_bar(adjustment: Adjustment) -> tuple[str, float] | None:
@@ -195,10 +212,9 @@ def _line_layer(name: str, words: str, lines: IntArray, places: Places) -> Itera
     shown[places.drawn] = True
     lines = lines[np.all(shown[lines], axis=1)]
     if len(lines):
-        points = np.round(places.positions, 2)
-        ends = zip(points[lines[:, 0]].tolist(), points[lines[:, 1]].tolist(), strict=True)
-        path = "".join(f"M{_number(x1)} {_number(y1)}L{_number(x2)} {_number(y2)}" for (x1, y1), (x2, y2) in ends)
-        yield Layer(name, words, len(lines), path)
+        ends = np.round(places.positions[lines], 2) + 0.0
+        pieces = ["M{:g} {:g}L{:g} {:g}".format(*each) for each in ends.reshape(-1, 4).tolist()]
+        yield Layer(name, words, len(lines), _patches(pieces, ends.mean(axis=1)))
 
 
 def lines_of(adjustment: Adjustment, kinds: tuple[str, ...]) -> BoolArray:
@@ -214,13 +230,12 @@ def lines_of(adjustment: Adjustment, kinds: tuple[str, ...]) -> BoolArray:
 
 def _mark_layers(places: Places, statuses: list[str]) -> Iterator[Layer]:
     """Marks as strokes of next to no length, which the style sheet gives a width and square or round ends."""
-    drawn = set(places.drawn.tolist())
-    points = np.round(places.positions, 2).tolist()
+    status = np.array(statuses, dtype=str)[places.drawn]
     for name, words in STATUSES.items():
-        chosen = [mark for mark, status in enumerate(statuses) if status == name and mark in drawn]
-        if chosen:
-            path = "".join(f"M{_number(points[mark][0])} {_number(points[mark][1])}h.01" for mark in chosen)
-            yield Layer(name, words, len(chosen), path)
+        points = np.round(places.positions[places.drawn[status == name]], 2) + 0.0
+        if len(points):
+            pieces = [f"M{x:g} {y:g}h.01" for x, y in points.tolist()]
+            yield Layer(name, words, len(points), _patches(pieces, points))
 
 
 def _ellipse_outlines(places: Places, ellipses: Ellipse, marks: IntArray, scale: float) -> Iterator[Outline]:

@@ -14,6 +14,8 @@ LETTER, LINE = 6.6, 13.0
 """Units of the drawing that a letter is wide and a line of text high."""
 MOST = 300
 """Labels on the drawing as it first stands; the script places more as the reader comes nearer."""
+CANDIDATES = 2000
+"""The most important marks are tried; among more there is no room."""
 LONGEST = 18
 """Letters of a name that are shown."""
 CELL = 40.0
@@ -64,7 +66,7 @@ def place_labels(places: Places, names: Sequence[str], importance: FloatArray) -
     taken, labels = _Taken(), []
     for x, y in places.positions[drawn].tolist():
         taken.add((x - 4, y - 4, x + 4, y + 4))
-    for mark in drawn[np.argsort(-importance[drawn], kind="stable")].tolist():
+    for mark in drawn[np.argsort(-importance[drawn], kind="stable")][:CANDIDATES].tolist():
         label = _placed(mark, shortened(names[mark]), places, taken)
         if label is not None:
             labels.append(label)

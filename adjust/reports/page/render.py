@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import base64
 import hashlib
-from collections.abc import Mapping, Sequence
 from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -13,28 +12,31 @@ from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
 from adjust.reports.listing import STANDING_CAUTION, job_facts, numerical_facts
 from adjust.reports.page import content
+from adjust.reports.page.blunders import blunder_words
 from adjust.reports.page.charts import histogram, strips
 from adjust.reports.page.drawing import Drawing, draw
+from adjust.reports.page.observations import observations_table
 from adjust.reports.page.table import packed
-from adjust.reports.page.tables import lines_table, marks_table, observations_table
+from adjust.reports.page.tables import lines_table, marks_table
 from adjust.reports.specification import specified
 
 if TYPE_CHECKING:
     import jinja2
 
+    from adjust.blunders import Findings
+
 TEMPLATES = Path(__file__).parent / "templates"
-Explanations = Mapping[str, Sequence[str]]
-"""Sentences about suspects by their sources: what somebody probably did."""
 
 
 def write_page(
-    adjustment: Adjustment, path: Path, check: Check | None = None, explanations: Explanations | None = None
+    adjustment: Adjustment, path: Path, check: Check | None = None, findings: Findings | None = None
 ) -> None:
-    """Write the page of an adjustment; `check` is what was said of the job before it was adjusted."""
-    path.write_text(render_page(adjustment, check, explanations), encoding="utf-8", newline="\n")
+    """Write the page of an adjustment; `check` is what was said of the job before it was adjusted, `findings` what a
+    search for blunders found."""
+    path.write_text(render_page(adjustment, check, findings), encoding="utf-8", newline="\n")
 
 
-def render_page(adjustment: Adjustment, check: Check | None = None, explanations: Explanations | None = None) -> str:
+def render_page(adjustment: Adjustment, check: Check | None = None, findings: Findings | None = None) -> str:
     """The page as text. It holds every figure it shows and loads nothing."""
     held, drawing = specified(adjustment), draw(adjustment)
     tables = [marks_table(adjustment), observations_table(adjustment), lines_table(adjustment)]
@@ -51,7 +53,9 @@ def render_page(adjustment: Adjustment, check: Check | None = None, explanations
             cards=content.cards(adjustment, held),
             drawing=drawing,
             percent=f"{100 * adjustment.job.statistics.confidence:g} %",
-            suspects=content.suspects(adjustment, explanations or {}),
+            suspects=content.suspects(adjustment),
+            searched=findings is not None,
+            blunders=blunder_words(adjustment, findings),
             suspect_count=len(adjustment.suspects),
             test_words=content.test_words(adjustment),
             tables={table.name: table for table in tables},

@@ -1,4 +1,4 @@
-"""The long tables of the page: coordinates, observations, relative accuracy."""
+"""The long tables of marks and of lines: coordinates, relative accuracy."""
 
 from __future__ import annotations
 
@@ -9,11 +9,9 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.reports.page.table import Heading, PageTable
-from adjust.reports.records import Figures, Record, line_figures, mark_figures
-from adjust.reports.selection import listed_lines, listed_observations, worst_first
-from adjust.reports.wording import NAMES, between, decimals, dms, observed, small, small_unit, what
-
-SECONDS = "″"
+from adjust.reports.records import Figures, line_figures, mark_figures
+from adjust.reports.selection import listed_lines, worst_first
+from adjust.reports.wording import decimals, dms
 
 MOST_ROWS = 100_000
 """Rows of one table in the page, the worst: a network of 10,000 marks has them all, and the page stays below 15 MB. A
@@ -34,8 +32,11 @@ def whole(chunks: Iterable[Figures]) -> Figures:
     return together
 
 
-def _fixed(column: Sequence[float | None], places: int) -> list[str]:
-    return [decimals(value, places) for value in column]
+def fixed(column: Sequence[float | None], places: int, *, signed: bool = False) -> list[str]:
+    """Numbers with so many decimals, "" where there is none; what rounds to nothing has no sign."""
+    rounded = np.round(np.array(column, dtype=np.float64), places) + 0.0
+    plain, with_sign = f"%.{places}f", f"%+.{places}f"
+    return ["" if value != value else (with_sign if signed and value else plain) % value for value in rounded.tolist()]
 
 
 def marks_table(adjustment: Adjustment) -> PageTable:
@@ -50,30 +51,30 @@ def marks_table(adjustment: Adjustment) -> PageTable:
         (Heading("plan_status", "plan", "", "choice", "how easting and northing came about"), figures["plan_status"]),
         (Heading("height_status", "height is", "", "choice", "how the height came about"), figures["height_status"]),
         *(
-            (Heading(key, name, "m", "number", f"adjusted {name}"), _fixed(figures[key], 4))
+            (Heading(key, name, "m", "number", f"adjusted {name}"), fixed(figures[key], 4))
             for key, name in (("easting_m", "easting"), ("northing_m", "northing"), ("height_m", "height"))
         ),
         *(
             (
                 Heading(f"sd_{name}_mm", f"sd {letter}", "mm", "number", SD.format(name)),
-                _fixed(figures[f"sd_{name}_mm"], 2),
+                fixed(figures[f"sd_{name}_mm"], 2),
             )
             for name, letter in (("easting", "E"), ("northing", "N"), ("height", "H"))
         ),
-        (Heading("horizontal_95_mm", "95 % circle", "mm", "number", CIRCLE), _fixed(figures["horizontal_95_mm"], 2)),
-        (Heading("height_95_mm", "95 % height", "mm", "number", HEIGHT), _fixed(figures["height_95_mm"], 2)),
+        (Heading("horizontal_95_mm", "95 % circle", "mm", "number", CIRCLE), fixed(figures["horizontal_95_mm"], 2)),
+        (Heading("height_95_mm", "95 % height", "mm", "number", HEIGHT), fixed(figures["height_95_mm"], 2)),
         (
             Heading("ellipse.semi_major_mm", "major", "mm", "number", AXIS.format("major")),
-            _fixed(ellipse["semi_major_mm"], 2),
+            fixed(ellipse["semi_major_mm"], 2),
         ),
         (
             Heading("ellipse.semi_minor_mm", "minor", "mm", "number", AXIS.format("minor")),
-            _fixed(ellipse["semi_minor_mm"], 2),
+            fixed(ellipse["semi_minor_mm"], 2),
         ),
-        (Heading("ellipse.azimuth_deg", "azimuth", "°", "number", AZIMUTH), _fixed(ellipse["azimuth_deg"], 1)),
+        (Heading("ellipse.azimuth_deg", "azimuth", "°", "number", AZIMUTH), fixed(ellipse["azimuth_deg"], 1)),
         (
             Heading("ellipse_confidence.semi_major_mm", f"{percent} major", "mm", "number", SCALED.format(percent)),
-            _fixed(confidence["semi_major_mm"], 2),
+            fixed(confidence["semi_major_mm"], 2),
         ),
         *(
             (Heading(key, name, "d-m-s", "dms", f"{name} on the ellipsoid"), [dms(value, 5) for value in figures[key]])
@@ -81,10 +82,10 @@ def marks_table(adjustment: Adjustment) -> PageTable:
         ),
         (
             Heading("ellipsoidal_height_m", "ellipsoidal height", "m", "number", "height above the ellipsoid"),
-            _fixed(figures["ellipsoidal_height_m"], 4),
+            fixed(figures["ellipsoidal_height_m"], 4),
         ),
     ]
-    return _table(
+    return page_table(
         "marks",
         "Coordinates",
         rows,
@@ -103,82 +104,11 @@ AZIMUTH = "azimuth of the major axis, clockwise from north, 0 to 180"
 SCALED = "semi-major axis of the ellipse that holds the true place with a probability of {}"
 
 
-def _table(
+def page_table(
     name: str, title: str, rows: Sequence[tuple[Heading, Sequence[str]]], marks: Sequence[tuple[int, ...]], **more: Any
 ) -> PageTable:
     headings, columns = zip(*rows, strict=True)
     return PageTable(name, title, headings, columns, marks, **more)
-
-
-def observations_table(adjustment: Adjustment) -> PageTable:
-    """All observations with their tests, the worst fit first."""
-    key = "tau" if adjustment.solution.sd_basis == "posterior" else "w"
-    listed = listed_observations(adjustment, "worst", MOST_ROWS)
-    symbol = "τ" if key == "tau" else "w"
-    rows: list[tuple[Heading, Sequence[str]]] = [
-        (Heading("marks", "marks", "", "marks", "from → to; of an angle at: from → to"), list(map(between, listed))),
-        (Heading("kind", "what", "", "choice", "kind of the observation"), list(map(_what, listed))),
-        (Heading(key, symbol, "", "number", TESTED[key]), [decimals(record[key], 2, signed=True) for record in listed]),
-        (
-            Heading("residual", "residual", "", "number", "adjusted minus observed"),
-            [small(record, "residual", signed=True) for record in listed],
-        ),
-        (
-            Heading("sd", "sd", "", "number", "standard deviation as claimed beforehand"),
-            [small(record, "sd") for record in listed],
-        ),
-        (
-            Heading("unit", "of", "", "choice", "unit of residual, sd and least bias"),
-            [SECONDS if small_unit(record) == '"' else small_unit(record) for record in listed],
-        ),
-        (
-            Heading("redundancy", "r", "", "number", REDUNDANCY),
-            [decimals(record["redundancy"], 2) for record in listed],
-        ),
-        (
-            Heading("minimal_detectable_bias", "least bias", "", "number", _bias(adjustment)),
-            [small(record, "minimal_detectable_bias") for record in listed],
-        ),
-        (Heading("observed", "observed", "m or d-m-s", "dms", "as the field book has it"), list(map(observed, listed))),
-        (Heading("adjusted", "adjusted", "m or d-m-s", "dms", "observed plus residual"), list(map(_adjusted, listed))),
-        (
-            Heading("source", "source", "", "source", "file and line of the field book"),
-            [record["source"] for record in listed],
-        ),
-    ]
-    index = adjustment.job.marks.index
-    marks = [
-        tuple(index[record[role]] for role in ("at", "from", "to") if record[role] is not None) for record in listed
-    ]
-    return _table(
-        "observations",
-        "Observations",
-        rows,
-        marks,
-        order="the worst fit first",
-        left_out=adjustment.solution.observations - len(listed),
-        flagged=frozenset(place for place, record in enumerate(listed) if record["suspect"]),
-        flag="suspect",
-    )
-
-
-TESTED = {
-    "w": "residual over its own standard deviation, on σ₀ = 1",
-    "tau": "residual over its own standard deviation, on the estimated σ₀",
-}
-REDUNDANCY = "share of an error of this observation that shows in its residual: 0 nothing checks it, 1 all of it"
-
-
-def _bias(adjustment: Adjustment) -> str:
-    return f"smallest error that the test finds {100 * adjustment.job.statistics.power:g} times in 100"
-
-
-def _what(record: Record) -> str:
-    return what(record) if record["component"] is not None else NAMES[record["kind"]][0]
-
-
-def _adjusted(record: Record) -> str:
-    return observed(dict(record, observed=record["adjusted"]))
 
 
 def lines_table(adjustment: Adjustment) -> PageTable:
@@ -191,26 +121,26 @@ def lines_table(adjustment: Adjustment) -> PageTable:
     majors, lengths = ellipse.get("semi_major_mm", []), figures.get("distance_m", [])
     rows: list[tuple[Heading, Sequence[str]]] = [
         (Heading("marks", "marks", "", "marks", "the two marks"), [f"{names[a]} → {names[b]}" for a, b in pairs]),
-        (Heading("distance_m", "distance", "m", "number", "horizontal, at the marks' mean height"), _fixed(lengths, 3)),
+        (Heading("distance_m", "distance", "m", "number", "horizontal, at the marks' mean height"), fixed(lengths, 3)),
         (Heading("ppm", "major", "ppm", "number", "semi-major axis over distance"), list(map(_ppm, majors, lengths))),
         *(
             (
                 Heading(f"ellipse.semi_{axis}_mm", axis, "mm", "number", RELATIVE.format(axis)),
-                _fixed(ellipse.get(f"semi_{axis}_mm", []), 2),
+                fixed(ellipse.get(f"semi_{axis}_mm", []), 2),
             )
             for axis in ("major", "minor")
         ),
-        (Heading("ellipse.azimuth_deg", "azimuth", "°", "number", AZIMUTH), _fixed(ellipse.get("azimuth_deg", []), 1)),
+        (Heading("ellipse.azimuth_deg", "azimuth", "°", "number", AZIMUTH), fixed(ellipse.get("azimuth_deg", []), 1)),
         (
             Heading("ellipse_confidence.semi_major_mm", f"{percent} major", "mm", "number", SCALED.format(percent)),
-            _fixed(confidence.get("semi_major_mm", []), 2),
+            fixed(confidence.get("semi_major_mm", []), 2),
         ),
         (
             Heading("sd_height_difference_mm", "sd ΔH", "mm", "number", "standard deviation of the height difference"),
-            _fixed(figures.get("sd_height_difference_mm", []), 2),
+            fixed(figures.get("sd_height_difference_mm", []), 2),
         ),
     ]
-    return _table(
+    return page_table(
         "relative",
         "Relative accuracy",
         rows,

@@ -9,7 +9,7 @@ const drawn = xs.map((_, mark) => mark).filter((mark) => !Number.isNaN(xs[mark])
 const ordered = ranks(names).map((rank, mark) => [rank, mark]).filter(([, mark]) => !Number.isNaN(xs[mark]))
   .sort((one, other) => one[0] - other[0]).map(([, mark]) => mark);
 const view = { x: 0, y: 0, width: drawing.width, height: drawing.height };
-const LABELS = 260, LETTER = 6.6, LINE = 13, NEAR_MARK = 14, NEAR_LINE = 6, RELATIVES = 500, DEEPEST = 4000;
+const LABELS = 260, CANDIDATES = 2000, LETTER = 6.6, LINE = 13, NEAR_MARK = 14, NEAR_LINE = 6, RELATIVES = 500, CROWD = 1500, DEEPEST = 4000;
 const SVG = "http://www.w3.org/2000/svg";
 
 function shape(name, attributes, text) {
@@ -74,7 +74,7 @@ function redraw() {
     letters = parseFloat(getComputedStyle(document.documentElement).fontSize) * 0.78 / 12;
     map.style.fontSize = `${12 * letters / scale}px`;
     const inView = drawn.filter((mark) => inside(xs[mark], ys[mark]));
-    map.classList.toggle("crowded", inView.length > 1500);
+    map.classList.toggle("crowded", inView.length > CROWD);
     drawLabels(scale, inView);
     drawFurniture(scale);
     drawRelatives();
@@ -98,14 +98,17 @@ function drawLabels(scale, inView) {
   };
   const free = (box) => cellsOf(box).every((key) => (taken.get(key) ?? []).every((other) =>
     box[0] >= other[2] || other[0] >= box[2] || box[1] >= other[3] || other[1] >= box[3]));
-  const take = (box) => cellsOf(box).forEach((key) => { taken.set(key, [...(taken.get(key) ?? []), box]); });
+  const take = (box) => cellsOf(box).forEach((key) => {
+    if (taken.has(key)) taken.get(key).push(box);
+    else taken.set(key, [box]);
+  });
   const right = view.width * scale, labels = [];
   const on = (mark) => [(xs[mark] - view.x) * scale, (ys[mark] - view.y) * scale];
   for (const mark of inView) {
     const [x, y] = on(mark);
     take([x - 4, y - 4, x + 4, y + 4]);
   }
-  const candidates = [...choice.marks.filter((mark) => inside(xs[mark], ys[mark])), ...importance(inView)];
+  const candidates = [...choice.marks.filter((mark) => inside(xs[mark], ys[mark])), ...importance(inView).slice(0, CANDIDATES)];
   for (const mark of new Set(candidates)) {
     const text = names[mark].length > 18 ? `${names[mark].slice(0, 17)}…` : names[mark];
     const width = LETTER * letters * text.length, [x, y] = on(mark);
@@ -392,7 +395,7 @@ function showChip() {
   chip.replaceChildren(element("strong", {}, tables.get("marks").called(choice.marks)), only, none);
 }
 
-const suspectItems = selectAll(".suspects li").map((item) => [item, item.dataset.marks.split(" ").map(Number)]);
+const suspectItems = selectAll(".suspects li[data-marks]").map((item) => [item, item.dataset.marks.split(" ").map(Number)]);
 for (const [item, marks] of suspectItems) {
   const name = select("strong", item);
   const button = element("button", { type: "button" }, "Show");

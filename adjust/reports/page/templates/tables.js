@@ -305,6 +305,12 @@ function ranks(words) {
   return words.map((word) => rank.get(word));
 }
 
+// What a search looks through is made ready while nothing else happens.
+function whenIdle(act) {
+  if ("requestIdleCallback" in window) requestIdleCallback(act, { timeout: 4000 });
+  else setTimeout(act, 1500);
+}
+
 const tables = new Map();
 for (const [name, data] of Object.entries(figures.tables)) {
   if (select(`table[data-table="${name}"]`)) tables.set(name, new Table(name, data));
@@ -317,3 +323,4 @@ choice.listeners.push(() => {
     table.only = choice.only;
   }
 });
+for (const table of tables.values()) whenIdle(() => table.haystack);
