@@ -14,10 +14,6 @@ from adjust.reports import write_reports
 from adjust.reports.served import PageServer
 from tests.exported import FIELD_DATA, adjustment_of
 
-BROWSER = shutil.which("chromium")
-sync_api = pytest.importorskip("playwright.sync_api", reason="needs the package playwright")
-pytestmark = pytest.mark.skipif(BROWSER is None, reason="needs a browser: apt-get install chromium")
-
 
 @pytest.fixture
 def server(tmp_path: Path) -> Iterator[PageServer]:
@@ -27,16 +23,14 @@ def server(tmp_path: Path) -> Iterator[PageServer]:
 
 
 @pytest.fixture
-def page(server: PageServer) -> Iterator[Any]:
-    with sync_api.sync_playwright() as playwright:
-        browser = playwright.chromium.launch(executable_path=BROWSER, args=["--no-sandbox"])
-        opened = browser.new_page(viewport={"width": 1000, "height": 800})
-        opened.problems = []
-        opened.on("console", lambda message: opened.problems.append(message.text) if message.type == "error" else None)
-        opened.on("pageerror", lambda error: opened.problems.append(str(error)))
-        opened.goto(server.url)
-        yield opened
-        browser.close()
+def page(chromium: Any, server: PageServer) -> Iterator[Any]:
+    opened = chromium.new_page(viewport={"width": 1000, "height": 800})
+    opened.problems = []
+    opened.on("console", lambda message: opened.problems.append(message.text) if message.type == "error" else None)
+    opened.on("pageerror", lambda error: opened.problems.append(str(error)))
+    opened.goto(server.url)
+    yield opened
+    opened.close()
 
 
 def adjust_without_the_blunder(folder: Path) -> None:
