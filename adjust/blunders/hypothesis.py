@@ -37,7 +37,7 @@ class Hypothesis:
     """In words: `distances.csv:13`, `instrument height at S1, 1.612 m`."""
     rows: tuple[tuple[int, IntArray], ...]
     components: tuple[str, ...]
-    """("",) for a scalar; of a vector `x`, `y`, `z` or one of them; of control and of a station `east`, `north`, `up`."""
+    """("",) for a scalar; of a vector `x`, `y`, `z` or one of them; of control and stations `east`, `north`, `up`."""
     unit: Literal["m", "rad", "1"]
     mark: int | None = None
 
