@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
+from contextlib import suppress
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -12,12 +14,13 @@ from adjust.arrays import BoolArray, FloatArray
 from adjust.covariance import Request, Transformation, observed_lines, selected_blocks
 from adjust.errors import NetworkError
 from adjust.frames import Geometry
-from adjust.iteration import Converged, Progress, iterate
+from adjust.iteration import MOST_ITERATIONS, Converged, Progress, iterate
 from adjust.job import Control, Job
 from adjust.model import whitened
-from adjust.network import check_solvable, find_start
+from adjust.network import Start, check_solvable, find_start
 from adjust.quality import critical_tau, critical_w, global_test, non_centrality
 from adjust.residuals import Residuals, TestLevels, residuals_of
+from adjust.robust import robust_start
 from adjust.unknowns import Unknowns, find_unknowns
 
 
@@ -43,26 +46,43 @@ def adjust(job: Job, progress: Progress = _unwatched) -> Adjustment:
 
 
 def _converge(job: Job, unknowns: Unknowns, progress: Progress) -> tuple[Converged, tuple[str, ...]]:
-    """Iterate from the start coordinates given; where they lead nowhere, from some built on the control alone."""
+    """Iterate from the start coordinates given; where they lead nowhere, from others."""
     start = find_start(job, unknowns)
     try:
         return iterate(job, unknowns, start, progress), start.notes
     except NetworkError as failure:
-        free = (job.marks.control[:, [0, 0, 1]] == Control.FREE) & ~np.isnan(job.marks.given) & unknowns.sought
-        if job.datum.mode == "inner" or not free.any():
-            raise
+        for other, note, patience in _other_starts(job, unknowns, start):
+            try:
+                return iterate(job, unknowns, other, progress, patience), (*other.notes, note)
+            except NetworkError:
+                continue
+        raise failure from None
+
+
+def _other_starts(job: Job, unknowns: Unknowns, start: Start) -> Iterator[tuple[Start, str, int]]:
+    """A start built on the control alone, then one that gross errors have no part in, each with what to say of it."""
+    free = (job.marks.control[:, [0, 0, 1]] == Control.FREE) & ~np.isnan(job.marks.given) & unknowns.sought
+    if job.datum.mode == "control" and free.any():
         bare = replace(job, marks=replace(job.marks, given=np.where(free, np.nan, job.marks.given)))
-        try:
+        with suppress(NetworkError):
             start = find_start(bare, unknowns)
-            return iterate(job, unknowns, start, progress), (*start.notes, REBUILT)
-        except NetworkError:
-            raise failure from None
+            yield start, REBUILT, MOST_ITERATIONS
+    yield robust_start(job, unknowns, start), GROSS, PATIENT
 
 
 REBUILT = (
     "The coordinates that marks.csv gives for free marks led to no solution; start coordinates were built from the "
     "control and the observations instead. Check the coordinates given: they contradict the rest."
 )
+
+GROSS = (
+    "Gross errors kept the adjustment from settling; it was begun again where most observations agree. They are still "
+    "in it: find them (hubtack blunders) and leave them out before any coordinate is used."
+)
+
+PATIENT = 200
+"""Iterations where gross errors keep plain steps from settling: towards large residuals Gauss–Newton closes in by a
+constant share a step only (Björck 1996, *Numerical Methods for Least Squares Problems*, section 9.2.2; from memory)."""
 
 
 @dataclass(frozen=True)

@@ -53,13 +53,13 @@ def station_of_setups(job: Job) -> IntArray:
     return station
 
 
-def iterate(job: Job, unknowns: Unknowns, start: Start, progress: Progress) -> Converged:
+def iterate(job: Job, unknowns: Unknowns, start: Start, progress: Progress, most: int = MOST_ITERATIONS) -> Converged:
     """Adjust from start coordinates.
 
-    Raises NetworkError where the observations leave some mark undetermined, ConvergenceError where 20 iterations do
+    Raises NetworkError where the observations leave some mark undetermined, ConvergenceError where `most` iterations do
     not settle.
     """
-    return _GaussNewton(job, unknowns, start, progress).run()
+    return _GaussNewton(job, unknowns, start, progress, most).run()
 
 
 def after_step(job: Job, unknowns: Unknowns, state: State, step: FloatArray) -> State:
@@ -72,11 +72,17 @@ def after_step(job: Job, unknowns: Unknowns, state: State, step: FloatArray) -> 
     return State(geometry, state.orientations + step[unknowns.coordinates :])
 
 
+def moved_by(unknowns: Unknowns, before: State, after: State) -> float:
+    """The longest way, metres along one axis, that an unknown coordinate went."""
+    moved = before.geometry.frame.displacement(before.geometry.coordinates, after.geometry.coordinates)
+    return float(np.abs(moved[unknowns.sought]).max(initial=0.0))
+
+
 class _GaussNewton:
     """The iteration of one job; the symbolic analysis is done once and reused."""
 
-    def __init__(self, job: Job, unknowns: Unknowns, start: Start, progress: Progress) -> None:
-        self.job, self.unknowns, self.progress = job, unknowns, progress
+    def __init__(self, job: Job, unknowns: Unknowns, start: Start, progress: Progress, most: int) -> None:
+        self.job, self.unknowns, self.progress, self.most = job, unknowns, progress, most
         self.state = State(start.geometry, start.orientations)
         self.stations = station_of_setups(job)
         self.given = np.where(np.isnan(job.marks.given), start.geometry.coordinates, job.marks.given)
@@ -87,14 +93,14 @@ class _GaussNewton:
         self.opinion: SecondOpinion | None = None
 
     def run(self) -> Converged:
-        for iteration in range(1, MOST_ITERATIONS + 1):
+        for iteration in range(1, self.most + 1):
             self.progress("adjusting", iteration / (iteration + 2))
             linearisation = self.model.linearise(self.state)
             self._refuse_without_geometry(linearisation)
             factor = self._solve(linearisation)
             if self.opinion is None:
                 self.opinion = factor.second_opinion()
-            before = self.state.geometry
+            before = self.state
             self.state = self._step(linearisation, factor.solution)
             inner = self._fit_to_given()
             if self._moved(before) <= STANDSTILL:
@@ -135,9 +141,8 @@ class _GaussNewton:
         self.state = self._after(inner.correction(away))
         return inner
 
-    def _moved(self, before: Geometry) -> float:
-        moved = before.frame.displacement(before.coordinates, self.state.geometry.coordinates)
-        largest = float(np.abs(moved[self.unknowns.sought]).max(initial=0.0))
+    def _moved(self, before: State) -> float:
+        largest = moved_by(self.unknowns, before, self.state)
         if not np.isfinite(largest):
             raise ConvergenceError(
                 "the adjustment ran away from its start coordinates: check the control's coordinates"
@@ -180,7 +185,7 @@ class _GaussNewton:
             worst.extend((-misfit[row], label(int(row))) for row in np.argsort(-misfit)[:SHOWN])
         places = ", ".join(label for _, label in sorted(worst)[:SHOWN])
         return (
-            f"no convergence in {MOST_ITERATIONS} iterations: look first at {places}, which fit worst; a wrong mark or "
+            f"no convergence in {self.most} iterations: look first at {places}, which fit worst; a wrong mark or "
             "unit, a wrong control coordinate, or an almost undetermined mark does this"
         )
 
