@@ -9,7 +9,7 @@ from adjust.blunders.criterion import Criterion
 from adjust.blunders.evidence import Allowed, Evidence
 from adjust.blunders.information import DenseInformation
 from adjust.blunders.proposals import proposal, snooped
-from adjust.blunders.search import find_errors
+from adjust.blunders.search import find_errors, sound
 from adjust.blunders.separability import Replacement, settled, standing
 
 
@@ -52,6 +52,7 @@ def diagnose(evidence: Evidence, criterion: Criterion, rows: int, start: tuple[i
     It begins with nothing, with `start`, and with what a robust estimate proposes; where not all of G is at hand, with
     `start`, or else with what snooping in strides finds.
     """
+    start = sound(evidence, start)
     if isinstance(evidence.information, DenseInformation):
         beginnings = [(), start, proposal(evidence, criterion, rows)]
     else:

@@ -26,8 +26,12 @@ from adjust.arrays import BoolArray, FloatArray, IntArray
 from adjust.blunders.information import InformationMatrix
 
 LEAST_INFORMATION = 1e-6
-"""Share of its weight hᵀh, and of the information it has by itself, below which an error can not be told from the
-unknowns or from other errors: it would show by less than a thousandth of itself."""
+"""Share of its weight hᵀh below which an error can not be told from the unknowns: it would show by less than a
+thousandth of itself in the residuals."""
+
+LEAST_APART = 1e-4
+"""Share of the information it has by itself below which an error can not be told from other errors: one in a hundred of
+its size would pass for it."""
 
 
 Sort = tuple[int, bool]
@@ -93,6 +97,11 @@ class Evidence:
         if 1 in self.members:
             owner[self.members[1][:, 0]] = self.numbers[1]
         return owner
+
+    @cached_property
+    def blocks(self) -> dict[int, FloatArray]:
+        """Information (m, q, q) of the hypotheses of each number q of columns."""
+        return {width: self.information.blocks(members) for width, members in self.members.items()}
 
     @cached_property
     def by_itself(self) -> Allowed:
@@ -163,7 +172,7 @@ class Allowed:
         """Which columns (columns,) still show an error of their own."""
         by_itself = self.evidence.information.diagonal
         checked = by_itself > LEAST_INFORMATION * self.evidence.weight
-        testable: BoolArray = checked & (self.diagonal > LEAST_INFORMATION * by_itself)
+        testable: BoolArray = checked & (self.diagonal > LEAST_APART * by_itself)
         return testable
 
     @cached_property
@@ -185,12 +194,13 @@ class Allowed:
         """T (m,) of hypotheses of several columns (m, q)."""
         sound = self.testable[members].all(axis=1)
         tested = members[sound]
-        across = self.evidence.information.columns(self.columns)[tested]
-        blocks = self.evidence.information.blocks(tested) - across @ self.covariance @ across.transpose(0, 2, 1)
+        across = self.evidence.information.block(tested.ravel(), self.columns)
+        across = across.reshape(*tested.shape, len(self.columns))
+        blocks = self.evidence.blocks[members.shape[1]][sound] - across @ self.covariance @ across.transpose(0, 2, 1)
         scale = np.sqrt(self.evidence.information.diagonal[tested])
         values, vectors = np.linalg.eigh(blocks / (scale[:, :, None] * scale[:, None, :]))
         turned = np.einsum("mij,mi->mj", vectors, self.score[tested] / scale)
-        regular = values[:, 0] > LEAST_INFORMATION
+        regular = values[:, 0] > LEAST_APART
         joint = np.zeros(len(members))
         joint[np.flatnonzero(sound)[regular]] = np.sum(turned[regular] ** 2 / values[regular], axis=1)
         return joint
@@ -201,7 +211,7 @@ class Allowed:
         scale = np.sqrt(self.evidence.information.diagonal[columns])
         values, vectors = np.linalg.eigh(self.block(columns) / np.outer(scale, scale))
         turned = vectors.T @ (self.score[columns] / scale)
-        regular = values > LEAST_INFORMATION
+        regular = values > LEAST_APART
         return float(np.sum(turned[regular] ** 2 / values[regular]))
 
     def own(self, hypothesis: int) -> slice:

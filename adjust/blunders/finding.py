@@ -14,8 +14,10 @@ from adjust.blunders.system import System, model_of
 from adjust.blunders.telling import tell
 from adjust.job import Job
 from adjust.model import State
+from adjust.network import find_start
+from adjust.robust import robust_start
 from adjust.solver import Analysis
-from adjust.unknowns import Unknowns
+from adjust.unknowns import Unknowns, find_unknowns
 
 NEAR = 0.01
 """Metres: a network that moves by less than this when its blunders are allowed for is linear enough. Across a sight of
@@ -25,18 +27,34 @@ MOST_ROUNDS = 6
 """Linearisations at most: each follows the network to where it stands without the blunders of the round before."""
 
 
+GROSS = 100.0
+"""vᵀPv over its degrees of freedom from which on the adjusted network may stand too far from the truth to begin there:
+its residuals are ten times as large as they should be."""
+
+
 def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> Findings:
     """Every observation, and everything observations share, that is wrong at the job's significance.
 
     `folder` is where the job was read from: entries are then quoted as they stand in the book.
     """
-    state = State(adjustment.geometry, adjustment.orientations)
-    return search(adjustment.job, adjustment.unknowns, state, folder)
+    job, unknowns = adjustment.job, adjustment.unknowns
+    adjusted = _Rounds(job, unknowns, State(adjustment.geometry, adjustment.orientations))
+    if (adjustment.solution.variance_factor or 0.0) < GROSS:
+        return tell(adjusted.last(), folder)
+    rounds = [_Rounds(job, unknowns, _robust_state(job, unknowns)), adjusted]
+    return tell(min((each.last() for each in rounds), key=lambda found: found.left), folder)
 
 
-def search(job: Job, unknowns: Unknowns, state: State, folder: str | Path | None = None) -> Findings:
-    """As `find_blunders`, from any state near the truth, converged or not."""
-    return tell(_Rounds(job, unknowns, state).last(), folder)
+def find_blunders_of(job: Job, folder: str | Path | None = None) -> Findings:
+    """As `find_blunders`, of a job whose adjustment does not settle. Raises NetworkError where it has no start."""
+    unknowns = find_unknowns(job)
+    return tell(_Rounds(job, unknowns, _robust_state(job, unknowns)).last(), folder)
+
+
+def _robust_state(job: Job, unknowns: Unknowns) -> State:
+    """Where most observations agree."""
+    start = robust_start(job, unknowns, find_start(job, unknowns))
+    return State(start.geometry, start.orientations)
 
 
 class _Rounds:
@@ -62,19 +80,19 @@ class _Rounds:
         system = System.at(self.job, self.model, self.state, self.analysis)
         self.analysis = system.analysis
         if self.model.observation_rows <= MOST_DENSE // 2:
-            hypotheses = Hypotheses.of(system)
-            return self._diagnosed(hypotheses, () if before is None else before.known_to(hypotheses))
+            return self._diagnosed(Hypotheses.of(system), before)
         if before is None:
-            before = self._diagnosed(Hypotheses(system, ()), ())
+            before = self._diagnosed(Hypotheses(system, ()), None)
         if not len(before.rows):
             return before
-        hypotheses = Hypotheses.of(system, before.rows)
-        return self._diagnosed(hypotheses, before.known_to(hypotheses))
+        return self._diagnosed(Hypotheses.of(system, before.rows), before)
 
-    def _diagnosed(self, hypotheses: Hypotheses, start: tuple[int, ...]) -> Round:
+    def _diagnosed(self, hypotheses: Hypotheses, before: Round | None) -> Round:
+        """`before` says what is known already, from the same linearisation or another."""
         statistics = self.job.statistics
-        evidence = hypotheses.evidence
+        known = ((), None) if before is None else before.known_to(hypotheses)
+        evidence = hypotheses.evidence(*known)
         criterion = Criterion(
             statistics.significance, statistics.sd_basis == "posterior", evidence.square_sum, evidence.freedom
         )
-        return Round(hypotheses, diagnose(evidence, criterion, hypotheses.rows, start))
+        return Round(hypotheses, diagnose(evidence, criterion, hypotheses.rows, known[0]))

@@ -98,21 +98,44 @@ class Hypotheses:
         return csc_array(columns)
 
     @cached_property
-    def evidence(self) -> Evidence:
-        """Scores and information of all columns."""
-        columns = self.columns
+    def information(self) -> InformationMatrix:
+        """G of all columns."""
+        columns, matrix = self.columns, self.system.matrix
+        through = csr_array(matrix.T @ columns)
+        if columns.shape[1] <= MOST_DENSE:
+            spread = through.toarray()
+            whole = (columns.T @ columns).toarray() - spread.T @ self.system.factor.normal_solve(spread)
+            return DenseInformation((whole + whole.T) / 2)
+        return SparseInformation(columns, through, self.system.factor, self._single_blocks())
+
+    def evidence(self, chosen: Sequence[int] = (), errors: FloatArray | None = None) -> Evidence:
+        """Scores and information of all columns.
+
+        `chosen` hypotheses with their `errors` ∇₀ (s,) are known about already. The observations are freed of them
+        before the residuals e₀ are taken, and score and vᵀPv put together again as g = Hᵀe₀ + G∇₀ and
+        e₀ᵀe₀ + 2∇₀ᵀHᵀe₀ + ∇₀ᵀG∇₀: what is small then stays exact beside errors that are a million times as large.
+        """
         members, numbers = self._members()
-        residual = self.system.residual
+        owned = [members[size][numbers[size] == number][0] for number in chosen for size in [self._size(number)]]
+        known = np.concatenate([np.empty(0, dtype=np.int64), *owned])
+        sizes = np.empty(0) if errors is None else errors
+        residual = self.system.residual_without(self.columns[:, known] @ sizes)
+        score = np.asarray(self.columns.T @ residual)
+        strips = self.information.columns(known)
+        returned = strips @ sizes
         return Evidence(
-            score=np.asarray(columns.T @ residual),
-            information=self._information(),
-            weight=np.asarray(columns.multiply(columns).sum(axis=0)).ravel(),
+            score=score + returned,
+            information=self.information,
+            weight=np.asarray(self.columns.multiply(self.columns).sum(axis=0)).ravel(),
             members=members,
             numbers=numbers,
             shared=np.arange(self.first_group + len(self.groups)) >= self.first_group,
-            square_sum=float(residual @ residual),
+            square_sum=float(residual @ residual + 2.0 * sizes @ score[known] + sizes @ returned[known]),
             freedom=self.system.freedom,
         )
+
+    def _size(self, number: int) -> int:
+        return len(self.hypothesis(number).components)
 
     def _members(self) -> tuple[dict[int, IntArray], dict[int, IntArray]]:
         """Columns (m, q) and numbers (m,) of the hypotheses by their size q."""
@@ -135,15 +158,6 @@ class Hypotheses:
                 for size, found in of_size.items()
             },
         )
-
-    def _information(self) -> InformationMatrix:
-        columns, matrix = self.columns, self.system.matrix
-        through = csr_array(matrix.T @ columns)
-        if columns.shape[1] <= MOST_DENSE:
-            spread = through.toarray()
-            whole = (columns.T @ columns).toarray() - spread.T @ self.system.factor.normal_solve(spread)
-            return DenseInformation((whole + whole.T) / 2)
-        return SparseInformation(columns, through, self.system.factor, self._single_blocks())
 
     def _single_blocks(self) -> tuple[tuple[int, FloatArray], ...]:
         """First column and information (rows, c, c) of the rows of each kind: L⁻ᵀ (I − leverage) L⁻¹."""

@@ -100,16 +100,17 @@ class SparseInformation:
 
     def block(self, rows: IntArray, columns: IntArray) -> FloatArray:
         """G (k, l) of some rows (k,) and columns (l,); columns that are solved for here are not kept."""
-        key = (rows.tobytes(), columns.tobytes())
-        if key not in self._blocks:
-            self._blocks[key] = self._block(rows, columns)
-        return self._blocks[key]
-
-    def _block(self, rows: IntArray, columns: IntArray) -> FloatArray:
         lacking = self._lacking(columns)
-        fresh = dict(zip(lacking.tolist(), self._solved(lacking)[rows].T, strict=True)) if len(lacking) else {}
+        fresh = dict(zip(lacking.tolist(), self._fresh(rows, lacking).T, strict=True)) if len(lacking) else {}
         known = [fresh[column] if column in fresh else self._kept[column][rows] for column in columns.tolist()]
         return np.array(known).reshape(len(columns), len(rows)).T
+
+    def _fresh(self, rows: IntArray, lacking: IntArray) -> FloatArray:
+        """Entries (k, l) of columns that are not kept. The same few are asked for again and again."""
+        key = (rows.tobytes(), lacking.tobytes())
+        if key not in self._blocks:
+            self._blocks[key] = self._solved(lacking)[rows]
+        return self._blocks[key]
 
     def _lacking(self, wanted: IntArray) -> IntArray:
         lacking = [column for column in dict.fromkeys(wanted.tolist()) if column not in self._kept]

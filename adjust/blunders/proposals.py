@@ -15,7 +15,7 @@ from adjust.arrays import FloatArray
 from adjust.blunders.criterion import Criterion
 from adjust.blunders.evidence import Allowed, Evidence
 from adjust.blunders.information import DenseInformation
-from adjust.blunders.search import COUPLED
+from adjust.blunders.search import COUPLED, most_columns, sound
 
 HUBER = 1.345
 """Residual, in sds, from which on an observation is trusted less."""
@@ -49,11 +49,8 @@ def robust_errors(evidence: Evidence, rows: int) -> FloatArray:
 def proposal(evidence: Evidence, criterion: Criterion, rows: int) -> tuple[int, ...]:
     """A set to begin with: the largest robust errors, as many as half the degrees of freedom, thinned out."""
     errors = np.abs(robust_errors(evidence, rows))
-    order = np.argsort(-errors, kind="stable")[: evidence.freedom // 2]
-    chosen: tuple[int, ...] = ()
-    for row in order[errors[order] > 0.0].tolist():
-        if evidence.allowing(chosen).testable[row]:
-            chosen = tuple(sorted((*chosen, row)))
+    order = np.argsort(-errors, kind="stable")[: evidence.freedom]
+    chosen = sound(evidence, order[errors[order] > 0.0].tolist())
     return thinned(evidence.allowing(chosen), criterion)
 
 
@@ -77,7 +74,7 @@ def snooped(evidence: Evidence, criterion: Criterion) -> tuple[int, ...]:
     allowed = evidence.by_itself
     while True:
         joining = _joining(allowed, criterion)
-        if not joining:
+        if not joining or len(allowed.columns) + len(joining) > most_columns(evidence):
             return thinned(allowed, criterion)
         allowed = evidence.allowing(tuple(sorted((*allowed.chosen, *joining))))
 

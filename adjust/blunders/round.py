@@ -8,7 +8,7 @@ from functools import cached_property
 import numpy as np
 from scipy.sparse import csr_array
 
-from adjust.arrays import IntArray
+from adjust.arrays import FloatArray, IntArray
 from adjust.blunders.diagnosis import Diagnosis
 from adjust.blunders.evidence import Allowed
 from adjust.blunders.hypotheses import Hypotheses
@@ -38,13 +38,17 @@ class Round:
         entered = abs(self.columns_of(self.diagnosis.allowed)).sum(axis=1)
         return np.flatnonzero(np.asarray(entered) > 0.0)
 
-    def known_to(self, other: Hypotheses) -> tuple[int, ...]:
-        """The errors found, as another numbering has them; groups it does not know are left out."""
-        first = self.hypotheses.first_group
+    def known_to(self, other: Hypotheses) -> tuple[tuple[int, ...], FloatArray]:
+        """The errors found, as another numbering has them, and their sizes; groups it does not know are left out."""
+        first, allowed = self.hypotheses.first_group, self.diagnosis.allowed
         names = {group.hypothesis.name: other.first_group + place for place, group in enumerate(other.groups)}
-        groups = [self.hypotheses.hypothesis(number).name for number in self.diagnosis.chosen if number >= first]
-        singles = [number for number in self.diagnosis.chosen if number < first]
-        return tuple(sorted([*singles, *(names[name] for name in groups if name in names)]))
+        number = {
+            chosen: chosen if chosen < first else names.get(self.hypotheses.hypothesis(chosen).name)
+            for chosen in allowed.chosen
+        }
+        known = sorted((there, here) for here, there in number.items() if there is not None)
+        sizes = [allowed.errors[allowed.own(here)] for _, here in known]
+        return tuple(there for there, _ in known), np.concatenate([np.empty(0), *sizes])
 
     def settled(self) -> Round:
         """The same, where several sets fit equally well the one of the smallest errors."""
@@ -55,6 +59,13 @@ class Round:
         """Where the network stands without the errors found."""
         allowed = self.diagnosis.allowed
         return self.system.without(self.columns_of(allowed), allowed.errors)
+
+    @property
+    def left(self) -> float:
+        """What the errors found leave of vᵀPv, and their price: comparable between linearisations."""
+        evidence, criterion = self.diagnosis.evidence, self.diagnosis.criterion
+        whole = np.log(evidence.square_sum) if criterion.estimated else evidence.square_sum
+        return float(whole + criterion.cost(self.diagnosis.allowed))
 
     @cached_property
     def moved(self) -> float:

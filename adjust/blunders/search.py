@@ -15,7 +15,7 @@ import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
 from adjust.blunders.criterion import Criterion
-from adjust.blunders.evidence import LEAST_INFORMATION, Allowed, Evidence
+from adjust.blunders.evidence import LEAST_APART, Allowed, Evidence
 
 LEAST_SAVING = 1e-9
 """Of cost: below it a move is rounding, and could be undone by the next."""
@@ -61,14 +61,16 @@ class _Search:
 
     def _one_more(self, allowed: Allowed) -> Iterator[Choice]:
         """The best hypothesis of each sort on top."""
-        for numbers in self.evidence.sorts.values():
+        for (width, _), numbers in self.evidence.sorts.items():
             gains = allowed.gains[numbers]
-            if gains.max(initial=0.0) > 0.0:
+            if gains.max(initial=0.0) > 0.0 and self._has_room(allowed, width):
                 best = int(np.argmax(gains))
                 yield self._with(allowed, float(gains[best]), [int(numbers[best])])
 
     def _two_more(self, allowed: Allowed) -> Iterator[Choice]:
         """The best pair of single-column hypotheses of each two sorts on top."""
+        if not self._has_room(allowed, 2):
+            return
         columns = pair_columns(allowed)
         owners = self.evidence.owner[columns]
         shared = self.evidence.shared[owners]
@@ -78,6 +80,10 @@ class _Search:
             if among.max(initial=0.0) > 0.0:
                 i, k = divmod(int(np.argmax(among)), len(columns))
                 yield self._with(allowed, float(among[i, k]), [int(owners[i]), int(owners[k])])
+
+    def _has_room(self, allowed: Allowed, columns: int) -> bool:
+        """Whether errors in so many more columns leave more to test than they take."""
+        return len(allowed.columns) + columns <= most_columns(self.evidence)
 
     def _exchanged(self, allowed: Allowed) -> Iterator[Choice]:
         """Without one, or with one or two others in its place."""
@@ -100,9 +106,27 @@ class _Search:
         return Choice(float(self.criterion.worth(allowed.statistic + gain)) + price, chosen)
 
 
+def most_columns(evidence: Evidence) -> int:
+    """Columns that a set may have: half of the degrees of freedom. With more, sets of all sorts explain everything."""
+    return max(evidence.freedom // 2, 1)
+
+
+def sound(evidence: Evidence, hypotheses: Sequence[int]) -> tuple[int, ...]:
+    """Those of the hypotheses, the first first, that can be told from those before them, ascending."""
+    allowed = evidence.by_itself
+    for hypothesis in dict.fromkeys(hypotheses):
+        columns = evidence.columns_of(hypothesis)
+        fits = len(allowed.columns) + len(columns) <= most_columns(evidence)
+        if fits and not np.isin(columns, allowed.columns).any() and allowed.testable[columns].all():
+            allowed = evidence.allowing(tuple(sorted((*allowed.chosen, hypothesis))))
+    return allowed.chosen
+
+
 def pair_columns(allowed: Allowed) -> IntArray:
     """The columns (k,) that pairs are made of: those that fit worst, as many as can be afforded."""
-    columns = np.flatnonzero(allowed.testable & (allowed.evidence.owner >= 0))
+    candidates = allowed.testable & (allowed.evidence.owner >= 0)
+    candidates[allowed.columns] = False
+    columns = np.flatnonzero(candidates)
     most = allowed.evidence.information.affordable
     if len(columns) <= most:
         return columns
@@ -125,6 +149,8 @@ def pair_gains(allowed: Allowed, columns: IntArray) -> FloatArray:
     correlation = allowed.block(columns) / np.outer(scale, scale)
     np.fill_diagonal(correlation, 1.0)
     apart = 1.0 - correlation**2
-    sound = apart > LEAST_INFORMATION
-    square = w[:, None] ** 2 + w[None, :] ** 2 - 2.0 * correlation * np.outer(w, w)
-    return np.where(sound, square / np.where(sound, apart, 1.0), 0.0)
+    share = allowed.diagonal[columns] / allowed.evidence.information.diagonal[columns]
+    left = apart * np.minimum(share[:, None], share[None, :])
+    # Not w₁² + w₂² − 2ρw₁w₂ over 1 − ρ², which would lose the small error beside a gross one.
+    second = (w[None, :] - correlation * w[:, None]) ** 2 / np.where(apart > 0.0, apart, 1.0)
+    return np.where(left > LEAST_APART, w[:, None] ** 2 + second, 0.0)

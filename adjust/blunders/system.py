@@ -57,12 +57,17 @@ class System:
         """Degrees of freedom."""
         return int(self.linearisation.matrix.shape[0] - self.linearisation.matrix.shape[1])
 
-    @cached_property
-    def residual(self) -> FloatArray:
-        """e = b̃ − Ã x (rows,): whitened observed minus adjusted."""
+    def residual_without(self, effect: FloatArray) -> FloatArray:
+        """e = M(b̃ − effect) (rows,): whitened observed minus adjusted, once the observations are freed of an effect."""
         rows = self.model.observation_rows
-        residual: FloatArray = self.linearisation.right_side[:rows] - self.matrix @ self.factor.solution
-        return residual
+        right = self.linearisation.right_side[:rows] - effect
+        first: FloatArray = right - self.matrix @ self._solved(right)
+        # Once more on the residuals, because the normal equations leave half of the digits.
+        return first - self.matrix @ self._solved(first)
+
+    def _solved(self, right: FloatArray) -> FloatArray:
+        solved: FloatArray = self.factor.normal_solve((self.matrix.T @ right)[:, None])[:, 0]
+        return solved
 
     def blocks(self) -> Iterator[tuple[Block, FloatArray]]:
         """The kinds with the whitening factors L⁻¹ (rows, c, c) of their rows."""
@@ -86,5 +91,5 @@ class System:
 
     def without(self, columns: csr_array, errors: FloatArray) -> State:
         """The state that the observations lead to once they are freed of `errors` (k,) in whitened `columns`."""
-        shift = self.factor.normal_solve((self.matrix.T @ (columns @ errors))[:, None])[:, 0]
-        return after_step(self.job, self.model.unknowns, self.state, self.factor.solution - shift)
+        right = self.linearisation.right_side[: self.model.observation_rows] - columns @ errors
+        return after_step(self.job, self.model.unknowns, self.state, self._solved(right))
