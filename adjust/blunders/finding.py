@@ -41,8 +41,8 @@ def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> F
     adjusted = _Rounds(job, unknowns, State(adjustment.geometry, adjustment.orientations))
     if (adjustment.solution.variance_factor or 0.0) < GROSS:
         return tell(adjusted.last(), folder)
-    rounds = [_Rounds(job, unknowns, _robust_state(job, unknowns)), adjusted]
-    return tell(min((each.last() for each in rounds), key=lambda found: found.left), folder)
+    ends = [_Rounds(job, unknowns, _robust_state(job, unknowns)).last(), adjusted.last()]
+    return tell(min(ends, key=lambda found: (found.moved > NEAR, found.left)), folder)
 
 
 def find_blunders_of(job: Job, folder: str | Path | None = None) -> Findings:
@@ -66,11 +66,13 @@ class _Rounds:
         self.analysis: Analysis | None = None
 
     def last(self) -> Round:
-        """The round that settles it."""
-        found = self._round(None)
+        """The round that settles it, or the first, if the network runs away from one to the next."""
+        first = found = self._round(None)
         for _ in range(MOST_ROUNDS - 1):
             if found.moved <= NEAR:
-                break
+                return found.settled()
+            if not found.moved <= found.extent:
+                return first.settled()
             self.state = found.state
             found = self._round(found)
         return found.settled()

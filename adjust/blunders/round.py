@@ -60,12 +60,23 @@ class Round:
         allowed = self.diagnosis.allowed
         return self.system.without(self.columns_of(allowed), allowed.errors)
 
-    @property
+    @cached_property
     def left(self) -> float:
         """What the errors found leave of vᵀPv, and their price: comparable between linearisations."""
-        evidence, criterion = self.diagnosis.evidence, self.diagnosis.criterion
-        whole = np.log(evidence.square_sum) if criterion.estimated else evidence.square_sum
-        return float(whole + criterion.cost(self.diagnosis.allowed))
+        allowed, criterion = self.diagnosis.allowed, self.diagnosis.criterion
+        residual = self.system.residual_without(self.columns_of(allowed) @ allowed.errors)
+        whole = float(residual @ residual)
+        price = criterion.price(map(allowed.evidence.sort, allowed.chosen))
+        return (float(np.log(max(whole, np.finfo(float).tiny))) if criterion.estimated else whole) + price
+
+    @property
+    def extent(self) -> float:
+        """How far apart, metres, the marks lie at most along one axis."""
+        geometry = self.system.state.geometry
+        away = geometry.frame.displacement(
+            np.broadcast_to(geometry.coordinates[0], geometry.coordinates.shape), geometry.coordinates
+        )
+        return float(np.nanmax(np.nanmax(away, axis=0) - np.nanmin(away, axis=0)))
 
     @cached_property
     def moved(self) -> float:
