@@ -47,16 +47,16 @@ class Diagnosis:
 
 
 def diagnose(evidence: Evidence, criterion: Criterion, rows: int, start: tuple[int, ...] = ()) -> Diagnosis:
-    """The set of least cost from several beginnings; `rows` single components come first among the columns.
+    """The set of least cost; `rows` single components come first among the columns.
 
-    It begins with nothing, with `start`, and with what a robust estimate proposes; where not all of G is at hand, with
-    `start`, or else with what snooping in strides finds.
+    The search begins with `start`. Without one it begins with nothing and with what a robust estimate proposes, or,
+    where not all of G is at hand, with what snooping in strides finds.
     """
-    start = sound(evidence, start)
-    if isinstance(evidence.information, DenseInformation):
-        beginnings = [(), start, proposal(evidence, criterion, rows)]
-    else:
-        beginnings = [start or snooped(evidence, criterion)]
+    beginnings = [sound(evidence, start)]
+    if not start and isinstance(evidence.information, DenseInformation):
+        beginnings.append(proposal(evidence, criterion, rows))
+    elif not start:
+        beginnings = [snooped(evidence, criterion)]
     choices = [find_errors(evidence, criterion, beginning) for beginning in dict.fromkeys(beginnings)]
     best = min(choices, key=lambda choice: (choice.cost, choice.chosen))
     return Diagnosis(evidence, criterion, best.chosen)

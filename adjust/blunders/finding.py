@@ -19,10 +19,6 @@ from adjust.robust import robust_start
 from adjust.solver import Analysis
 from adjust.unknowns import Unknowns, find_unknowns
 
-NEAR = 0.01
-"""Metres: a network that moves by less than this when its blunders are allowed for is linear enough. Across a sight of
-50 m the neglected second order is s²/2D, a thousandth of a millimetre."""
-
 MOST_ROUNDS = 6
 """Linearisations at most: each follows the network to where it stands without the blunders of the round before."""
 
@@ -41,8 +37,10 @@ def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> F
     adjusted = _Rounds(job, unknowns, State(adjustment.geometry, adjustment.orientations))
     if (adjustment.solution.variance_factor or 0.0) < GROSS:
         return tell(adjusted.last(), folder)
-    ends = [_Rounds(job, unknowns, _robust_state(job, unknowns)).last(), adjusted.last()]
-    return tell(min(ends, key=lambda found: (found.moved > NEAR, found.left)), folder)
+    robust = _Rounds(job, unknowns, _robust_state(job, unknowns)).last()
+    if robust.settled and robust.variance < GROSS:
+        return tell(robust, folder)
+    return tell(min([robust, adjusted.last()], key=lambda found: (not found.settled, found.left)), folder)
 
 
 def find_blunders_of(job: Job, folder: str | Path | None = None) -> Findings:
@@ -69,13 +67,13 @@ class _Rounds:
         """The round that settles it, or the first, if the network runs away from one to the next."""
         first = found = self._round(None)
         for _ in range(MOST_ROUNDS - 1):
-            if found.moved <= NEAR:
-                return found.settled()
+            if found.settled:
+                return found.of_smallest_errors()
             if not found.moved <= found.extent:
-                return first.settled()
+                return first.of_smallest_errors()
             self.state = found.state
             found = self._round(found)
-        return found.settled()
+        return found.of_smallest_errors()
 
     def _round(self, before: Round | None) -> Round:
         """In a large network groups are only looked at where the search without them finds something."""

@@ -15,6 +15,10 @@ from adjust.blunders.hypotheses import Hypotheses
 from adjust.blunders.system import System
 from adjust.model import State
 
+NEAR = 0.01
+"""Metres: a network that moves by less than this when its blunders are allowed for is linear enough. Across a sight of
+50 m the neglected second order is s²/2D, a thousandth of a millimetre."""
+
 
 @dataclass(frozen=True)
 class Round:
@@ -50,7 +54,7 @@ class Round:
         sizes = [allowed.errors[allowed.own(here)] for _, here in known]
         return tuple(there for there, _ in known), np.concatenate([np.empty(0), *sizes])
 
-    def settled(self) -> Round:
+    def of_smallest_errors(self) -> Round:
         """The same, where several sets fit equally well the one of the smallest errors."""
         return replace(self, diagnosis=self.diagnosis.settled())
 
@@ -61,22 +65,41 @@ class Round:
         return self.system.without(self.columns_of(allowed), allowed.errors)
 
     @cached_property
-    def left(self) -> float:
-        """What the errors found leave of vᵀPv, and their price: comparable between linearisations."""
-        allowed, criterion = self.diagnosis.allowed, self.diagnosis.criterion
+    def square_sum(self) -> float:
+        """What the errors found leave of vᵀPv."""
+        allowed = self.diagnosis.allowed
         residual = self.system.residual_without(self.columns_of(allowed) @ allowed.errors)
-        whole = float(residual @ residual)
+        return float(residual @ residual)
+
+    @property
+    def variance(self) -> float:
+        """That over its degrees of freedom; 0 without any."""
+        freedom = self.system.freedom - len(self.diagnosis.allowed.columns)
+        return self.square_sum / freedom if freedom > 0 else 0.0
+
+    @property
+    def left(self) -> float:
+        """What is left with the price of the errors: comparable between linearisations."""
+        allowed, criterion = self.diagnosis.allowed, self.diagnosis.criterion
         price = criterion.price(map(allowed.evidence.sort, allowed.chosen))
-        return (float(np.log(max(whole, np.finfo(float).tiny))) if criterion.estimated else whole) + price
+        if criterion.estimated:
+            return float(np.log(max(self.square_sum, np.finfo(float).tiny))) + price
+        return self.square_sum + price
+
+    @property
+    def settled(self) -> bool:
+        """Whether the network without the errors stands where it was linearised."""
+        return self.moved <= NEAR
 
     @property
     def extent(self) -> float:
-        """How far apart, metres, the marks lie at most along one axis."""
+        """How far apart, metres, the marks lie at most in plan; infinite without plan coordinates."""
         geometry = self.system.state.geometry
-        away = geometry.frame.displacement(
-            np.broadcast_to(geometry.coordinates[0], geometry.coordinates.shape), geometry.coordinates
-        )
-        return float(np.nanmax(np.nanmax(away, axis=0) - np.nanmin(away, axis=0)))
+        plan = geometry.coordinates[~np.isnan(geometry.coordinates[:, 0])]
+        if not len(plan):
+            return float("inf")
+        away = geometry.frame.displacement(np.broadcast_to(plan[0], plan.shape), plan)[:, :2]
+        return float(np.max(np.ptp(away, axis=0)))
 
     @cached_property
     def moved(self) -> float:

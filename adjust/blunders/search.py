@@ -25,6 +25,10 @@ COUPLED = 0.05
 """Correlation of two estimated errors below which neither can stand in for a part of the other."""
 
 
+MOST_COUPLED = 30
+"""Pairs of members that are looked at together, so that a badly wrecked job does not take minutes."""
+
+
 @dataclass(frozen=True)
 class Choice:
     """Hypotheses in ascending order and what they cost together."""
@@ -133,13 +137,15 @@ def pair_columns(allowed: Allowed) -> IntArray:
     return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:most]])
 
 
-def coupled_pairs(allowed: Allowed) -> Iterator[tuple[int, int]]:
-    """Pairs of the chosen whose estimated errors are correlated by more than `COUPLED`."""
+def coupled_pairs(allowed: Allowed) -> list[tuple[int, int]]:
+    """Pairs of the chosen whose estimated errors are correlated by more than `COUPLED`, closest first, `MOST_COUPLED`
+    at most."""
     scale = np.sqrt(np.diagonal(allowed.covariance))
     correlation = np.abs(allowed.covariance) / np.outer(scale, scale)
-    for first, second in combinations(allowed.chosen, 2):
-        if correlation[allowed.own(first), allowed.own(second)].max() > COUPLED:
-            yield first, second
+    own = {chosen: allowed.own(chosen) for chosen in allowed.chosen}
+    pairs = [(float(correlation[own[one], own[two]].max()), one, two) for one, two in combinations(allowed.chosen, 2)]
+    close = sorted((-coupling, one, two) for coupling, one, two in pairs if coupling > COUPLED)
+    return [(one, two) for _, one, two in close[:MOST_COUPLED]]
 
 
 def pair_gains(allowed: Allowed, columns: IntArray) -> FloatArray:

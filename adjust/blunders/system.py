@@ -63,7 +63,7 @@ class System:
         right = self.linearisation.right_side[:rows] - effect
         first: FloatArray = right - self.matrix @ self._solved(right)
         # Once more on the residuals, because the normal equations leave half of the digits.
-        return first - self.matrix @ self._solved(first)
+        return np.asarray(first - self.matrix @ self._solved(first), dtype=np.float64)
 
     def _solved(self, right: FloatArray) -> FloatArray:
         solved: FloatArray = self.factor.normal_solve((self.matrix.T @ right)[:, None])[:, 0]
