@@ -112,7 +112,7 @@ def suspect_group(job: Job, nature: str, place: int, row: int, cells: Mapping[st
     number = _number_of(hypotheses, nature, place, row)
     if number is None:
         return None
-    allowed = hypotheses.evidence.allowing((number,))
+    allowed = hypotheses.evidence().allowing((number,))
     without = hypotheses.system.without(hypotheses.columns[:, allowed.columns], allowed.errors)
     freed = replace(result, geometry=without.geometry, orientations=without.orientations)
     hypothesis = hypotheses.hypothesis(number)
@@ -120,8 +120,7 @@ def suspect_group(job: Job, nature: str, place: int, row: int, cells: Mapping[st
 
 
 def _number_of(hypotheses: Hypotheses, nature: str, place: int, row: int) -> int | None:
-    first = hypotheses.evidence.count - len(hypotheses.groups)
-    for number, group in enumerate(hypotheses.groups, first):
+    for number, group in enumerate(hypotheses.groups, hypotheses.first_group):
         rows = dict(group.hypothesis.rows)
         if group.hypothesis.nature == nature and row in rows.get(place, ()):
             return number
