@@ -20,7 +20,7 @@ class Book:
     """The tables of a job as read.
 
     `mark_names` numbers the marks of `marks`, `names` those that observations name, `setups` the setups of directions
-    and pointings, `lines` the lines of level books.
+    and pointings, `lines` the lines of level books, `groups` the groups that rows are put into.
     """
 
     marks: TableRows
@@ -30,6 +30,7 @@ class Book:
     names: Vocabulary
     setups: Vocabulary
     lines: Vocabulary
+    groups: Vocabulary
 
 
 class BookReader:
@@ -54,7 +55,7 @@ class BookReader:
         whole = marks is not None and marks.complete
         listing = listed(file for file, name in self._table_of.items() if name == MARKS.name)
         names = Vocabulary(f"a mark of {listing}", mark_names.names if whole else None)
-        setups, lines = Vocabulary("a setup"), Vocabulary("a line")
+        setups, lines, groups = Vocabulary("a setup"), Vocabulary("a line"), Vocabulary("a group")
         words = dict.fromkeys(("at", "from", "to"), names) | {
             "setup": setups,
             "instrument": Vocabulary("an instrument of the job file", self.job_file.instruments),
@@ -62,6 +63,7 @@ class BookReader:
             "round": Vocabulary("a round"),
             "face": Vocabulary("a face, L or R", FACES),
             "line": lines,
+            "group": groups,
             "point": StaffPoints(names.described, names.names if whole else None),
         }
         read = [self._table(table, words) for table in OBSERVATION_TABLES]
@@ -69,9 +71,8 @@ class BookReader:
         if marks is None:
             self.mistakes.raise_if_any()
             raise AssertionError("a missing table of marks leaves a mistake behind")
-        return Book(
-            marks, mark_names, descriptions, tuple(rows for rows in read if rows is not None), names, setups, lines
-        )
+        tables = tuple(rows for rows in read if rows is not None)
+        return Book(marks, mark_names, descriptions, tables, names, setups, lines, groups)
 
     def _complain_of_absent_tables(self) -> None:
         tables = set(self._table_of.values())

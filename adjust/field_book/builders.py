@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 import numpy as np
@@ -14,7 +14,7 @@ from adjust.field_book.instruments import Instruments
 from adjust.field_book.mistakes import ENOUGH, Mistakes
 from adjust.field_book.raw_tables import RawTables
 from adjust.field_book.schema import AXES, LARGEST_LENGTH, SMALLEST_SD
-from adjust.field_book.vocabulary import Vocabulary
+from adjust.field_book.vocabulary import NO_NAME, Vocabulary
 from adjust.job import Control, Marks
 from adjust.observations import (
     Angles,
@@ -23,6 +23,7 @@ from adjust.observations import (
     Directions,
     HeightDifferences,
     HorizontalDistances,
+    Labels,
     Observations,
     SlopeDistances,
     Vectors,
@@ -41,6 +42,7 @@ class Builder:
     instruments: Instruments
     setups: Vocabulary
     marks: Vocabulary
+    groups: Vocabulary
     mistakes: Mistakes
     raw: RawTables
     precision_mistakes: Mistakes
@@ -50,7 +52,14 @@ class Builder:
     def build(self, rows: TableRows) -> tuple[Observations, ...]:
         """The observations of a table, in use and not; meaningful only where no mistake was noted."""
         self._check_ends(rows)
-        return _BUILDERS[rows.table.name](self, rows)
+        return _BUILDERS[rows.table.name](self, self._with_labels(rows))
+
+    def _with_labels(self, rows: TableRows) -> TableRows:
+        """The rows with the instrument and the group of each."""
+        group = _labels(self.groups.names, rows.indices["group"])
+        used = self.instruments.of_rows(rows) if rows.table.has_instrument else np.full(len(rows), NO_NAME)
+        instrument = _labels(self.instruments.names, used)
+        return replace(rows, provenance=replace(rows.provenance, instrument=instrument, group=group))
 
     def _check_ends(self, rows: TableRows) -> None:
         """The marks of a row differ."""
@@ -178,6 +187,10 @@ class Builder:
                 "contradict each other; copy them again from the baseline's solution"
             )
             rows.complain(self.mistakes, int(row), None, message)
+
+
+def _labels(names: tuple[str, ...], number: IntArray) -> Labels | None:
+    return Labels(names, number) if np.any(number >= 0) else None
 
 
 def _fields(observations: SlopeDistances) -> dict[str, Any]:

@@ -78,7 +78,7 @@ class LevelsBuilder:
         )
 
     def _check_lines(self, book: StaffRows) -> None:
-        """The rows of a line follow each other in one file, with one instrument."""
+        """The rows of a line follow each other in one file, with one instrument and in one group."""
         line, lines = number_groups(book.line)
         opening = first_of_groups(line, lines)[line]
         used = self.instruments.of_rows(self.rows)
@@ -92,6 +92,10 @@ class LevelsBuilder:
         for row in np.flatnonzero(used != used[opening])[:ENOUGH]:
             message = "a line is levelled with one instrument; give the second part another line name"
             self.rows.complain(self.mistakes, int(row), "instrument", message)
+        group = self.rows.indices["group"]
+        for row in np.flatnonzero(group != group[opening])[:ENOUGH]:
+            message = "a line belongs to one group; write it in every row, or give the second part another line name"
+            self.rows.complain(self.mistakes, int(row), "group", message)
         for row in np.flatnonzero(self.rows.provenance.file != self.rows.provenance.file[opening])[:1]:
             message = "the line began in another file; give this run another name"
             self.rows.complain(self.mistakes, int(row), "line", message)

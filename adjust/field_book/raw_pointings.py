@@ -117,13 +117,14 @@ class PointingsBuilder:
         return np.where(own == NO_NAME, self.targets.default, own)
 
     def _check_setups(self) -> None:
-        """One setup keeps its instrument and its file (that it keeps its mark is checked with directions)."""
+        """One setup keeps its instrument, group and file (that it keeps its mark is checked with directions)."""
         rows = self.rows
         setup, setups = number_groups(rows.indices["setup"])
         opening = first_of_groups(setup, setups)[setup]
         used = self.instruments.of_rows(rows)
         for values, column, what in (
             (used, "instrument", "another instrument"),
+            (rows.indices["group"], "group", "another group"),
             (rows.provenance.file, None, "another file"),
         ):
             wrong = np.flatnonzero(values != values[opening])

@@ -113,7 +113,8 @@ class JobReader:
         precision_mistakes = Mistakes() if self.mistakes.any_in(self.reader.name) else self.mistakes
         self.raw = RawTables(self.job_file, book, self.mistakes, precision_mistakes, self.notes)
         instruments = self.raw.instruments
-        builder = Builder(instruments, book.setups, book.names, self.mistakes, self.raw, precision_mistakes, self.notes)
+        words = book.setups, book.names, book.groups
+        builder = Builder(instruments, *words, self.mistakes, self.raw, precision_mistakes, self.notes)
         built: tuple[list[Observations], list[Observations]] = ([], [])
         for rows in book.observations:
             if self.mistakes.any_in(*rows.provenance.files):

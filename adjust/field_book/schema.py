@@ -154,6 +154,9 @@ _TO = _mark("to", "the mark sighted")
 _ANGLE_SD = _angle("sd", "standard deviation of the observation; wins over the instrument", SD)
 _LENGTH_SD = _length("sd", "standard deviation of the observation; wins over the instrument", SD)
 _INSTRUMENT = Column("instrument", Quantity.TEXT, "a table `[instruments.NAME]` of the job file; blank: the default")
+_GROUP = Column(
+    "group", Quantity.TEXT, "rows of the same word are judged together, how well their sds were stated; blank: none"
+)
 _USE = Column(
     "use", Quantity.CHOICE, "`no` keeps the row in the books and leaves it out of the adjustment", choices=("yes", "no")
 )
@@ -203,6 +206,7 @@ DIRECTIONS = Table(
         _angle("direction", "reading of the horizontal circle, clockwise", required=True),
         _ANGLE_SD,
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
 )
@@ -217,6 +221,7 @@ ANGLES = Table(
         _angle("angle", "the clockwise angle", required=True),
         _ANGLE_SD,
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
 )
@@ -224,7 +229,15 @@ ANGLES = Table(
 AZIMUTHS = Table(
     "azimuths",
     "an azimuth, clockwise from the north of the plane grid, or of the geodetic meridian in an ellipsoid frame",
-    (_AT, _TO, _angle("azimuth", "the azimuth, clockwise from north", required=True), _ANGLE_SD, _INSTRUMENT, _USE),
+    (
+        _AT,
+        _TO,
+        _angle("azimuth", "the azimuth, clockwise from north", required=True),
+        _ANGLE_SD,
+        _INSTRUMENT,
+        _GROUP,
+        _USE,
+    ),
 )
 
 DISTANCES = Table(
@@ -239,6 +252,7 @@ DISTANCES = Table(
         *_HEIGHTS,
         _LENGTH_SD,
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
     one_of=(("slope", "horizontal"),),
@@ -254,6 +268,7 @@ ZENITHS = Table(
         *_HEIGHTS,
         _ANGLE_SD,
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
 )
@@ -269,6 +284,7 @@ LEVELS = Table(
         _number("setups", "number of instrument setups along the line", WHOLE),
         _LENGTH_SD,
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
 )
@@ -290,6 +306,7 @@ VECTORS = Table(
         ),
         *(_number(f"{name}_m2", f"covariance of {name[4]} and {name[5]}, m²") for name in COVARIANCES),
         Column("session", Quantity.TEXT, "the session it was observed in"),
+        _GROUP,
         _USE,
     ),
     one_of=(("sd_x", "cov_xx_m2"),),
@@ -318,6 +335,7 @@ POINTINGS = Table(
         _number("pressure_hpa", "air pressure at the station, hPa; holds in the setup until given again", PRESSURE),
         _number("humidity_percent", "relative humidity; holds in the setup until given again", HUMIDITY),
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
     one_of=(("circle", "zenith", "slope"),),
@@ -337,6 +355,7 @@ LEVEL_BOOK = Table(
         _length("backsight_distance", "length of the sight back", DISTANCE),
         _length("foresight_distance", "length of the sight ahead, or to the side", DISTANCE),
         _INSTRUMENT,
+        _GROUP,
         _USE,
     ),
     one_of=(("backsight",), ("foresight",)),

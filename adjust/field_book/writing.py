@@ -170,6 +170,9 @@ def _rows_table(job: Job, rows: Observations, use: str, style: Style, book: Inst
         table |= _value_columns(rows, style)
     if isinstance(rows, SightedObservations):
         table["instrument"] = book.cells(rows.table, rows.precision)
+    group = rows.provenance.group
+    if group is not None:
+        table["group"] = names_of(group.number, (*group.names, ""))
     return table | {"use": [use] * len(rows)}
 
 

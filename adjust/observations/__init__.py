@@ -2,7 +2,7 @@
 
 from adjust.observations.angle import Angles
 from adjust.observations.azimuth import Azimuths
-from adjust.observations.base import Observations, Precision, Provenance, concatenated
+from adjust.observations.base import Labels, Observations, Precision, Provenance, concatenated
 from adjust.observations.control import ControlCoordinates
 from adjust.observations.direction import Directions
 from adjust.observations.height_difference import HeightDifferences
@@ -32,6 +32,7 @@ __all__ = [
     "Directions",
     "HeightDifferences",
     "HorizontalDistances",
+    "Labels",
     "Observations",
     "Precision",
     "Provenance",

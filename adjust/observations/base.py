@@ -33,6 +33,19 @@ class Columns:
 
 
 @dataclass(frozen=True)
+class Labels(Columns):
+    """A word for each row. `number` (rows,) indexes `names`, −1 where the row has none."""
+
+    names: tuple[str, ...]
+    number: IntArray
+
+    def of(self, row: int) -> str:
+        """The word of a row, "" where it has none."""
+        number = int(self.number[row])
+        return self.names[number] if number >= 0 else ""
+
+
+@dataclass(frozen=True)
 class Provenance(Columns):
     """File and line of each row. `file` (rows,) indexes `files`; `line` (rows,) counts from 1."""
 
@@ -41,6 +54,10 @@ class Provenance(Columns):
     line: IntArray
     further: NDArray[np.object_] | None = None
     """(rows,) of tuples: the lines after `line` that a mean was made of; None where every row is one line."""
+    instrument: Labels | None = None
+    """What the row was observed with, as the job file names it; None where no row says."""
+    group: Labels | None = None
+    """The group that the surveyor put the row into; None where no row says."""
 
     def label(self, row: int) -> str:
         """`levels.csv:3`; of a mean `pointings.csv:3+7+12`."""
@@ -55,7 +72,7 @@ class Provenance(Columns):
         lines, bounds = self.line[order].tolist(), [*starts.tolist(), len(order)]
         further = np.empty(groups, dtype=object)
         further[:] = [tuple(lines[start + 1 : end]) for start, end in pairwise(bounds)]
-        return Provenance(self.files, self.file[order][starts], self.line[order][starts], further)
+        return replace(self.take(order[starts]), further=further)
 
 
 @dataclass(frozen=True)
@@ -157,12 +174,25 @@ def _joined_provenance(parts: Sequence[Provenance]) -> Provenance:
     further = None
     if any(part.further is not None for part in parts):
         further = np.concatenate([_lines_after_the_first(part) for part in parts])
+    rows = [len(part.line) for part in parts]
     return Provenance(
         files,
         np.concatenate([place[part.file] for place, part in zip(number, parts, strict=True)]),
         np.concatenate([part.line for part in parts]),
         further,
+        _joined_labels([part.instrument for part in parts], rows),
+        _joined_labels([part.group for part in parts], rows),
     )
+
+
+def _joined_labels(parts: Sequence[Labels | None], rows: Sequence[int]) -> Labels | None:
+    """Words below each other, numbered anew; None where no part has any."""
+    given = [Labels((), np.full(count, -1)) if part is None else part for part, count in zip(parts, rows, strict=True)]
+    names = tuple(dict.fromkeys(name for part in given for name in part.names))
+    if not names:
+        return None
+    number = [np.array([*(names.index(name) for name in part.names), -1], dtype=np.int64) for part in given]
+    return Labels(names, np.concatenate([place[part.number] for place, part in zip(number, given, strict=True)]))
 
 
 def _lines_after_the_first(part: Provenance) -> NDArray[np.object_]:
