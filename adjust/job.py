@@ -75,6 +75,23 @@ class Statistics:
 
 
 @dataclass(frozen=True)
+class Decision:
+    """What the surveyor decided of one line of the field book, and why.
+
+    `source` is its file and line. A correction replaces what was `written` under the title `column` by `value`, both as
+    the book writes. Of a line that is kept or left out `column` may be blank; `written` is then its observed value, or
+    blank where it has several.
+    """
+
+    source: str
+    decision: Literal["keep", "leave_out", "correct"]
+    column: str
+    written: str
+    value: str
+    reason: str
+
+
+@dataclass(frozen=True)
 class Job:
     """Everything one adjustment starts from. Nothing mutates it."""
 
@@ -103,6 +120,8 @@ class Job:
     """Rows with `use = no`: kept in the books, not adjusted."""
     reduction: Reduction = field(default_factory=Reduction)
     """What the raw readings said of themselves when they were made into observations."""
+    decisions: tuple[Decision, ...] = ()
+    """What the surveyor decided of single lines; observations and marks are as they read with it."""
     notes: tuple[str, ...] = ()
     """What reading decided for the surveyor and has to be said in the listing."""
     input_sha256: str = ""

@@ -218,14 +218,24 @@ def _parsers(place: Place) -> tuple[Callable[[list[str]], FloatArray], Callable[
     return parse_numbers, parse_number
 
 
+def plain_sheet(file: str, text: str, table: Table, mistakes: Mistakes) -> Sheet:
+    """A file as it is written."""
+    return Sheet(file, text, mistakes)
+
+
 def read_table(
-    table: Table, texts: Mapping[str, str], vocabularies: Mapping[str, Vocabulary], mistakes: Mistakes
+    table: Table,
+    texts: Mapping[str, str],
+    vocabularies: Mapping[str, Vocabulary],
+    mistakes: Mistakes,
+    sheet_of: Callable[[str, str, Table, Mistakes], Sheet] = plain_sheet,
 ) -> TableRows:
     """All files of a table (`texts`: their contents by name) as one. Mistakes are noted, not raised.
 
-    A column that has no entry in `vocabularies` although it holds text is ignored.
+    A column that has no entry in `vocabularies` although it holds text is ignored. `sheet_of` cuts a file into cells.
     """
-    readers = [FileReader(Sheet(file, text, mistakes), table, vocabularies, mistakes) for file, text in texts.items()]
+    sheets = [sheet_of(file, text, table, mistakes) for file, text in texts.items()]
+    readers = [FileReader(sheet, table, vocabularies, mistakes) for sheet in sheets]
     read = [reader.read() for reader in readers]
     joined = {column.name: np.concatenate([values[column.name] for _, values in read]) for column in table.columns}
     file = np.repeat(np.arange(len(read)), [len(lines) for lines, _ in read])

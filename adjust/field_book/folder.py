@@ -65,6 +65,13 @@ class Folder:
             )
             return None
 
+    def text_of_another(self, path: Path) -> str | None:
+        """The text of a file that may lie anywhere, or None as above; the fingerprint covers it under its bare name."""
+        other = Folder(Path(), self.job_file, self._mistakes)
+        text = other.text(str(path))
+        self._digests |= {f"/{path.name}": digest for digest in other._digests.values()}
+        return text
+
     def has(self, name: str) -> bool:
         """Whether something of that name is in the folder."""
         try:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import difflib
 from collections import Counter
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from functools import cached_property
 
 from adjust.errors import FieldDataError, Mistake
@@ -27,6 +27,8 @@ class Mistakes:
     def __init__(self) -> None:
         self._found: list[Mistake] = []
         self._count: Counter[str] = Counter()
+        self.blame: Callable[[Mistake], Mistake] = lambda mistake: mistake
+        """Puts a mistake where it can be mended, when that is another place than where it shows."""
 
     def add(self, file: str, line: int | None, column: str | None, message: str) -> None:
         """Note one mistake; see `Mistake`."""
@@ -52,8 +54,9 @@ class Mistakes:
         """Raise FieldDataError with all mistakes: files in the order they were met, lines in order within each."""
         if not self._found:
             return
-        order = {file: place for place, file in enumerate(self._count)}
-        raise FieldDataError(sorted(self._found, key=lambda mistake: (order[mistake.file], mistake.line or 0)))
+        found = list(map(self.blame, self._found))
+        order = {file: place for place, file in enumerate(dict.fromkeys((*self._count, *(m.file for m in found))))}
+        raise FieldDataError(sorted(found, key=lambda mistake: (order[mistake.file], mistake.line or 0)))
 
 
 class Likeness:

@@ -11,6 +11,7 @@ import numpy as np
 from adjust.arrays import IntArray
 from adjust.field_book.book import Book, BookReader
 from adjust.field_book.builders import Builder, weighted_control
+from adjust.field_book.decisions import Decisions, read_decisions
 from adjust.field_book.folder import Folder, open_folder
 from adjust.field_book.geoid_heights import check_geoid, marks_that_need_geoid
 from adjust.field_book.instruments import MILLIMETRE
@@ -27,8 +28,11 @@ from adjust.job import Datum, Job, Marks, Statistics
 from adjust.observations import KINDS, Directions, Observations, concatenated
 
 
-def read_job(path: str | Path) -> Job:
+def read_job(path: str | Path, decisions: str | Path | None = None) -> Job:
     """Read a job: `path` is a job folder or its `job.toml` (docs/job-folder.md describes both).
+
+    `decisions` is a table of what the surveyor decided of single lines (docs/decisions.md); the job is then what the
+    book says with them. Nothing is written into the folder.
 
     Raises FieldDataError with every mistake found, files in the order of reading.
     """
@@ -41,19 +45,30 @@ def read_job(path: str | Path) -> Job:
     if job_file is None:
         mistakes.raise_if_any()
         raise AssertionError("a job file that cannot be read leaves a mistake behind")
-    return JobReader(folder, job_file, reader, mistakes).read()
+    decided = None if decisions is None else read_decisions(decisions, folder, mistakes)
+    return JobReader(folder, job_file, reader, mistakes, decided).read()
 
 
 class JobReader:
     """Reads the tables of a job and puts the job together."""
 
-    def __init__(self, folder: Folder, job_file: JobFile, reader: JobFileReader, mistakes: Mistakes) -> None:
+    def __init__(
+        self,
+        folder: Folder,
+        job_file: JobFile,
+        reader: JobFileReader,
+        mistakes: Mistakes,
+        decisions: Decisions | None = None,
+    ) -> None:
+        self.decisions = decisions
+        if decisions is not None:
+            mistakes.blame = decisions.blamed
         self.folder = folder
         self.job_file = job_file
         self.reader = reader
         self.mistakes = mistakes
         self.settings = SettingsReader(job_file, reader, folder.path)
-        self.tables = BookReader(folder, job_file, reader, mistakes)
+        self.tables = BookReader(folder, job_file, reader, mistakes, decisions)
         self.notes: list[str] = []
 
     def read(self) -> Job:
@@ -62,6 +77,8 @@ class JobReader:
         frame, grid = self.settings.frame(), self.settings.geoid_grid()
         tolerances = read_tolerances(self.job_file.tolerances, self.reader)
         book = self.tables.read()
+        if self.decisions is not None:
+            self.decisions.check_sources()
         marks = self._marks(book, frame)
         in_use, left_out = self._observations(book)
         if frame is None or marks is None:
@@ -94,6 +111,7 @@ class JobReader:
             refraction_coefficient=self.job_file.frame.refraction_coefficient,
             target_constants={name: target.constant_mm * MILLIMETRE for name, target in self.job_file.targets.items()},
             left_out=left_out,
+            decisions=() if self.decisions is None else self.decisions.taken,
             notes=tuple(self.notes),
             reduction=self.raw.reduction,
             input_sha256=self.folder.fingerprint(),
@@ -155,7 +173,12 @@ class JobReader:
         self.notes += note_frame(frame, book.marks, heights_stated=heights_stated)
         self.notes += note_control(marks, inner=self.job_file.datum.mode == "inner")
         self.notes += note_left_out(left_out)
-        self.notes += note_unread([name for name in self.folder.tables() if name not in self.tables.files])
+        self.notes += note_unread([name for name in self._other_tables() if name not in self.tables.files])
+
+    def _other_tables(self) -> list[str]:
+        """The CSV files of the folder, but for the table of decisions."""
+        decided = None if self.decisions is None else Path(self.decisions.name).resolve()
+        return [name for name in self.folder.tables() if (self.folder.path / name).resolve() != decided]
 
 
 def _in_order(observations: list[Observations]) -> tuple[Observations, ...]:

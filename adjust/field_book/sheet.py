@@ -51,6 +51,7 @@ class Sheet:
             message = "the header row is separated by tabs, expected commas or semicolons; save the table as CSV"
             mistakes.add(file, self.header_line, None, message)
             self.titles = []
+        self._width = len(self.titles)
 
     def _find_header(self) -> tuple[int, int, str]:
         """Line number of the first line that is written on, where the next line starts, and the line."""
@@ -83,13 +84,13 @@ class Sheet:
 
     def _cut(self, numbers: IntArray, lines: list[str], *, quoted: bool) -> Block:
         """Cut lines at their separators: all at once where they are plain, one by one where that is not enough."""
-        width = len(self.titles)
+        width = self._width
         if not quoted and set(map(str.count, lines, repeat(self.separator))) == {width - 1}:
             cells = self.separator.join(lines).split(self.separator)
             return Block(numbers, [list(map(str.strip, cells[column::width])) for column in range(width)])
         rows = [self._row(int(number), line, width) for number, line in zip(numbers, lines, strict=True)]
         kept = [cells for cells in rows if cells is not None]
-        columns = [list(column) for column in zip(*kept, strict=True)] or [[] for _ in self.titles]
+        columns = [list(column) for column in zip(*kept, strict=True)] or [[] for _ in range(width)]
         return Block(numbers[[cells is not None for cells in rows]], columns)
 
     def _row(self, number: int, line: str, width: int) -> list[str] | None:
