@@ -19,7 +19,7 @@ it and the reverse, and single errors are the commoner ones.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
+from collections import Counter
 from dataclasses import dataclass
 from functools import cache
 
@@ -61,12 +61,14 @@ class Criterion:
         """Significance of the test of one hypothesis."""
         return self.significance * (RARER if shared else 1.0)
 
-    def price(self, sorts: Iterable[Sort]) -> float:
-        """What hypotheses of these sorts cost together."""
+    def price(self, sorts: Counter[Sort]) -> float:
+        """What hypotheses of these sorts, so many of each, cost together."""
         if not self.estimated:
-            return sum(chi_square_price(self.level(shared), size) for size, shared in sorts)
+            return sum(
+                count * chi_square_price(self.level(shared), size) for (size, shared), count in sorted(sorts.items())
+            )
         total, freedom = 0.0, self.freedom
-        for size, shared in sorted(sorts, reverse=True):
+        for size, shared in sorted(sorts.elements(), reverse=True):
             total += beta_price(self.level(shared), size, freedom)
             freedom -= size
         return total
@@ -80,7 +82,7 @@ class Criterion:
 
     def cost(self, allowed: Allowed) -> float:
         """Equation (1) or (2) of the set that is allowed for."""
-        return float(self.worth(allowed.statistic)) + self.price(map(allowed.evidence.sort, allowed.chosen))
+        return float(self.worth(allowed.statistic)) + self.price(allowed.sorts)
 
     def variance(self, statistic: float, columns: int) -> float:
         """σ₀² once errors in so many columns with this T are allowed for: 1 where it is known."""

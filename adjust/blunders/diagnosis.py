@@ -7,8 +7,7 @@ from functools import cached_property
 
 from adjust.blunders.criterion import Criterion
 from adjust.blunders.evidence import Allowed, Evidence
-from adjust.blunders.information import DenseInformation
-from adjust.blunders.proposals import proposal, snooped
+from adjust.blunders.proposals import proposal
 from adjust.blunders.search import find_errors, sound
 from adjust.blunders.separability import Replacement, settled, standing
 
@@ -49,14 +48,11 @@ class Diagnosis:
 def diagnose(evidence: Evidence, criterion: Criterion, rows: int, start: tuple[int, ...] = ()) -> Diagnosis:
     """The set of least cost; `rows` single components come first among the columns.
 
-    The search begins with `start`. Without one it begins with nothing and with what a robust estimate proposes, or,
-    where not all of G is at hand, with what snooping in strides finds.
+    The search begins with `start`. Without one it begins with nothing and with what a robust estimate proposes.
     """
     beginnings = [sound(evidence, start)]
-    if not start and isinstance(evidence.information, DenseInformation):
+    if not start:
         beginnings.append(proposal(evidence, criterion, rows))
-    elif not start:
-        beginnings = [snooped(evidence, criterion)]
     choices = [find_errors(evidence, criterion, beginning) for beginning in dict.fromkeys(beginnings)]
     best = min(choices, key=lambda choice: (choice.cost, choice.chosen))
     return Diagnosis(evidence, criterion, best.chosen)

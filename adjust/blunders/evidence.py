@@ -16,7 +16,8 @@ without another adjustment.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections import Counter
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -82,6 +83,10 @@ class Evidence:
         """Number of columns, and whether it is of a group."""
         return int(self.size[hypothesis]), bool(self.shared[hypothesis])
 
+    def sorts_of(self, hypotheses: Iterable[int]) -> Counter[Sort]:
+        """How many of some hypotheses are of each sort."""
+        return Counter(map(self.sort, hypotheses))
+
     @cached_property
     def place(self) -> IntArray:
         """Row (hypotheses,) of each hypothesis among those of its size."""
@@ -134,6 +139,11 @@ class Allowed:
     chosen: tuple[int, ...]
     columns: IntArray
     covariance: FloatArray
+
+    @cached_property
+    def sorts(self) -> Counter[Sort]:
+        """How many of each sort are chosen."""
+        return self.evidence.sorts_of(self.chosen)
 
     @cached_property
     def errors(self) -> FloatArray:

@@ -6,10 +6,12 @@ from pathlib import Path
 
 from adjust.adjustment import Adjustment
 from adjust.blunders.criterion import Criterion
-from adjust.blunders.diagnosis import diagnose
+from adjust.blunders.diagnosis import Diagnosis, diagnose
+from adjust.blunders.evidence import Evidence
 from adjust.blunders.findings import Findings
 from adjust.blunders.hypotheses import MOST_DENSE, Hypotheses
 from adjust.blunders.round import Round
+from adjust.blunders.snooping import considered, snooped
 from adjust.blunders.system import System, model_of
 from adjust.blunders.telling import tell
 from adjust.job import Job
@@ -76,23 +78,29 @@ class _Rounds:
         return found.of_smallest_errors()
 
     def _round(self, before: Round | None) -> Round:
-        """In a large network groups are only looked at where the search without them finds something."""
+        """Large networks are snooped in strides, then looked at closely around what that finds."""
         system = System.at(self.job, self.model, self.state, self.analysis)
         self.analysis = system.analysis
         if self.model.observation_rows <= MOST_DENSE // 2:
             return self._diagnosed(Hypotheses.of(system), before)
-        if before is None:
-            before = self._diagnosed(Hypotheses(system, ()), None)
-        if not len(before.rows):
-            return before
-        return self._diagnosed(Hypotheses.of(system, before.rows), before)
+        snooped = self._snooped(Hypotheses(system, ()), before)
+        rows = considered(snooped.hypotheses, snooped.diagnosis.allowed, snooped.diagnosis.criterion)
+        return self._diagnosed(Hypotheses.of(system, snooped.rows, rows), snooped if before is None else before)
+
+    def _snooped(self, every: Hypotheses, before: Round | None) -> Round:
+        evidence, criterion, known = self._tests(every, before)
+        return Round(every, Diagnosis(evidence, criterion, snooped(evidence, criterion, known)))
 
     def _diagnosed(self, hypotheses: Hypotheses, before: Round | None) -> Round:
-        """`before` says what is known already, from the same linearisation or another."""
+        evidence, criterion, known = self._tests(hypotheses, before)
+        return Round(hypotheses, diagnose(evidence, criterion, hypotheses.rows, known))
+
+    def _tests(self, hypotheses: Hypotheses, before: Round | None) -> tuple[Evidence, Criterion, tuple[int, ...]]:
+        """The tests of all hypotheses. `before` says what is known already, from the same linearisation or another."""
         statistics = self.job.statistics
         known = ((), None) if before is None else before.known_to(hypotheses)
         evidence = hypotheses.evidence(*known)
         criterion = Criterion(
             statistics.significance, statistics.sd_basis == "posterior", evidence.square_sum, evidence.freedom
         )
-        return Round(hypotheses, diagnose(evidence, criterion, hypotheses.rows, known[0]))
+        return evidence, criterion, known[0]

@@ -9,8 +9,8 @@ from functools import cached_property
 import numpy as np
 from scipy.sparse import block_diag, csc_array, csr_array, hstack
 
-from adjust.arrays import FloatArray, IntArray
-from adjust.blunders.evidence import Evidence
+from adjust.arrays import BoolArray, FloatArray, IntArray
+from adjust.blunders.evidence import LEAST_INFORMATION, Evidence
 from adjust.blunders.groups import Group, find_groups
 from adjust.blunders.hypothesis import Hypothesis
 from adjust.blunders.information import DenseInformation, InformationMatrix, SparseInformation
@@ -23,60 +23,100 @@ MOST_DENSE = 2500
 
 @dataclass(frozen=True)
 class Hypotheses:
-    """All hypotheses of a system, numbered: components in the order of system rows, then whole vectors, then groups."""
+    """All hypotheses of a system, numbered: components in the order of system rows, then whole vectors, then groups.
+
+    `considered` system rows, ascending and of correlated observations whole, are the only ones supposed to be wrong by
+    themselves, where they are given.
+    """
 
     system: System
     groups: tuple[Group, ...]
+    considered: IntArray | None = None
 
     @classmethod
-    def of(cls, system: System, interesting: IntArray | None = None) -> Hypotheses:
-        """All of a small job; of a large one, the groups that enter one of the `interesting` system rows."""
+    def of(cls, system: System, interesting: IntArray | None = None, considered: IntArray | None = None) -> Hypotheses:
+        """With all groups, or those that enter one of the `interesting` system rows."""
         mask = None
         if interesting is not None:
             mask = np.zeros(system.model.observation_rows, dtype=bool)
             mask[interesting] = True
-        return cls(system, tuple(find_groups(system, mask)))
+        return cls(system, tuple(find_groups(system, mask)), considered)
 
     @cached_property
+    def singles(self) -> IntArray:
+        """System rows, ascending, that are the hypotheses of single components."""
+        return np.arange(self.system.model.observation_rows) if self.considered is None else self.considered
+
+    @property
     def rows(self) -> int:
-        """System rows, which are the hypotheses of single components."""
-        return self.system.model.observation_rows
+        """How many they are."""
+        return len(self.singles)
 
     @cached_property
-    def _correlated(self) -> list[Block]:
-        return [block for block in self.system.model.blocks if block.components > 1]
+    def _whole(self) -> list[tuple[int, int]]:
+        """Kind and row of the correlated observations among them, which are the next hypotheses."""
+        return [
+            (place, int(row))
+            for place, block in enumerate(self.system.model.blocks)
+            if block.components > 1
+            for row in (self._of_block(block) - block.offset)[:: block.components] // block.components
+        ]
+
+    def _of_block(self, block: Block) -> IntArray:
+        first, last = np.searchsorted(self.singles, [block.system_rows.start, block.system_rows.stop])
+        return self.singles[first:last]
 
     @cached_property
     def first_group(self) -> int:
         """Number of the first group."""
-        return self.rows + sum(len(block.observations) for block in self._correlated)
+        return self.rows + len(self._whole)
 
     def hypothesis(self, number: int) -> Hypothesis:
         """One of them, with its words."""
         if number >= self.first_group:
             return self.groups[number - self.first_group].hypothesis
+        blocks = self.system.model.blocks
         if number >= self.rows:
-            return self._whole(number - self.rows)
-        place = max(i for i, block in enumerate(self.system.model.blocks) if block.offset <= number)
-        block = self.system.model.blocks[place]
-        row, component = divmod(number - block.offset, block.components)
-        return _of_row(place, block, row, (block.observations.components[component],))
+            place, row = self._whole[number - self.rows]
+            return _of_row(place, blocks[place], row, blocks[place].observations.components)
+        place, row, component = self._component(number)
+        return _of_row(place, blocks[place], row, (blocks[place].observations.components[component],))
 
-    def _whole(self, number: int) -> Hypothesis:
-        for place, block in enumerate(self.system.model.blocks):
-            if block.components > 1:
-                if number < len(block.observations):
-                    return _of_row(place, block, number, block.observations.components)
-                number -= len(block.observations)
-        raise IndexError(number)
+    def _component(self, number: int) -> tuple[int, int, int]:
+        """Kind, row and component of a single."""
+        system_row = int(self.singles[number])
+        place = max(i for i, block in enumerate(self.system.model.blocks) if block.offset <= system_row)
+        block = self.system.model.blocks[place]
+        return place, *divmod(system_row - block.offset, block.components)
+
+    def number_in(self, other: Hypotheses, number: int) -> int | None:
+        """The number of one of them in another numbering, None where it is not among those."""
+        if number < self.rows:
+            place = int(np.searchsorted(other.singles, self.singles[number]))
+            return place if self.singles[number] in other.singles[place : place + 1] else None
+        if number < self.first_group:
+            whole = self._whole[number - self.rows]
+            return other.rows + other._whole.index(whole) if whole in other._whole else None
+        return other._number_of_group.get(self.hypothesis(number).name)
+
+    @cached_property
+    def _number_of_group(self) -> dict[str, int]:
+        return {group.hypothesis.name: number for number, group in enumerate(self.groups, self.first_group)}
+
+    def whole_observations(self, rows: IntArray) -> IntArray:
+        """System rows, ascending, with all components of the observations that some `rows` belong to."""
+        mask: BoolArray = np.zeros(self.system.model.observation_rows, dtype=np.bool_)
+        mask[rows] = True
+        for block in self.system.model.blocks:
+            own: BoolArray = mask[block.system_rows].reshape(-1, block.components)
+            own[own.any(axis=1)] = True
+        return np.flatnonzero(mask)
 
     @cached_property
     def columns(self) -> csr_array:
         """H (rows, columns), whitened: what an error of one metre or radian does to each row in its own sds."""
-        singles = [self._singles(block, factor) for block, factor in self.system.blocks()]
-        return csr_array(
-            hstack([block_diag(singles, format="csc"), *map(self._group_columns, self.groups)], format="csr")
-        )
+        singles = block_diag([self._singles(block, factor) for block, factor in self.system.blocks()], format="csc")
+        return csr_array(hstack([singles[:, self.singles], *map(self._group_columns, self.groups)], format="csr"))
 
     @staticmethod
     def _singles(block: Block, factor: FloatArray) -> csc_array:
@@ -88,7 +128,7 @@ class Hypotheses:
 
     def _group_columns(self, group: Group) -> csc_array:
         width = len(group.hypothesis.components)
-        columns = csc_array((self.rows, width))
+        columns = csc_array((self.system.model.observation_rows, width))
         for (place, rows), effect in zip(group.hypothesis.rows, group.effects, strict=True):
             block, factor = self.system.model.blocks[place], self.system.linearisation.factors[place]
             values = np.einsum("rij,rjq->riq", factor[rows], effect)
@@ -100,13 +140,29 @@ class Hypotheses:
     @cached_property
     def information(self) -> InformationMatrix:
         """G of all columns."""
-        columns, matrix = self.columns, self.system.matrix
-        through = csr_array(matrix.T @ columns)
+        columns, factor = self.columns, self.system.factor
+        through = csr_array(self.system.matrix.T @ columns)
         if columns.shape[1] <= MOST_DENSE:
-            spread = through.toarray()
-            whole = (columns.T @ columns).toarray() - spread.T @ self.system.factor.normal_solve(spread)
-            return DenseInformation((whole + whole.T) / 2)
-        return SparseInformation(columns, through, self.system.factor, self._single_blocks())
+            return DenseInformation.of(columns, through, factor)
+        return SparseInformation(columns, through, factor, self.diagonal)
+
+    @cached_property
+    def diagonal(self) -> FloatArray:
+        """Diagonal (system rows,) of G among the singles of the whole system: that of L⁻ᵀ (I − leverage) L⁻¹."""
+        blocks = zip(self.system.blocks(), self.system.leverage, strict=True)
+        own = [
+            np.einsum("rij,rik,rkj->rj", factor, np.eye(block.components) - leverage, factor).ravel()
+            for (block, factor), leverage in blocks
+        ]
+        return np.concatenate(own)
+
+    @cached_property
+    def untestable_rows(self) -> IntArray:
+        """System rows (k,), ascending, in which an error shows in no residual."""
+        weight = np.concatenate(
+            [np.einsum("rij,rij->rj", factor, factor).ravel() for _, factor in self.system.blocks()]
+        )
+        return np.flatnonzero(self.diagonal <= LEAST_INFORMATION * weight)
 
     def evidence(self, chosen: Sequence[int] = (), errors: FloatArray | None = None) -> Evidence:
         """Scores and information of all columns.
@@ -141,10 +197,11 @@ class Hypotheses:
         """Columns (m, q) and numbers (m,) of the hypotheses by their size q."""
         parts: list[tuple[IntArray, int]] = [(np.arange(self.rows)[:, None], 0)]
         number, used = self.rows, self.rows
-        for block in self._correlated:
-            first = np.arange(len(block.observations))[:, None] * block.components + block.offset
-            parts.append((first + np.arange(block.components), number))
-            number += len(first)
+        for block in self.system.model.blocks:
+            if block.components > 1:
+                own = np.searchsorted(self.singles, self._of_block(block)).reshape(-1, block.components)
+                parts.append((own, number))
+                number += len(own)
         for group in self.groups:
             width = len(group.hypothesis.components)
             parts.append((np.arange(used, used + width)[None], number))
@@ -157,14 +214,6 @@ class Hypotheses:
                 size: np.concatenate([first + np.arange(len(part)) for part, first in found])
                 for size, found in of_size.items()
             },
-        )
-
-    def _single_blocks(self) -> tuple[tuple[int, FloatArray], ...]:
-        """First column and information (rows, c, c) of the rows of each kind: L⁻ᵀ (I − leverage) L⁻¹."""
-        blocks = zip(self.system.blocks(), self.system.leverage, strict=True)
-        return tuple(
-            (block.offset, np.einsum("rij,rik,rkl->rjl", factor, np.eye(block.components) - leverage, factor))
-            for (block, factor), leverage in blocks
         )
 
 

@@ -15,13 +15,10 @@ from adjust.arrays import FloatArray
 from adjust.blunders.criterion import Criterion
 from adjust.blunders.evidence import Allowed, Evidence
 from adjust.blunders.information import DenseInformation
-from adjust.blunders.search import COUPLED, most_columns, sound
+from adjust.blunders.search import sound
 
 HUBER = 1.345
 """Residual, in sds, from which on an observation is trusted less."""
-
-STRIDE = 40
-"""Rows that may join together: as many as it takes to find most blunders of a large network at once."""
 
 STEPS = 100
 """Gradient steps: errors are needed to tell large from small, not to many digits."""
@@ -64,36 +61,3 @@ def thinned(allowed: Allowed, criterion: Criterion) -> tuple[int, ...]:
             return allowed.chosen
         allowed = fewer
     return ()
-
-
-def snooped(evidence: Evidence, criterion: Criterion) -> tuple[int, ...]:
-    """Data snooping in strides: in each, the worst single rows that do not lean on each other join together.
-
-    Blunders far apart have nothing to do with each other, so that a large network needs few strides.
-    """
-    allowed = evidence.by_itself
-    while True:
-        joining = _joining(allowed, criterion)
-        if not joining or len(allowed.columns) + len(joining) > most_columns(evidence):
-            return thinned(allowed, criterion)
-        allowed = evidence.allowing(tuple(sorted((*allowed.chosen, *joining))))
-
-
-def _joining(allowed: Allowed, criterion: Criterion) -> list[int]:
-    """Single rows that fail their test, worst first, at most `STRIDE`, none correlated with one before it."""
-    evidence = allowed.evidence
-    singles = evidence.sorts[1, False]
-    gains = allowed.gains[singles]
-    sorts = [evidence.sort(number) for number in allowed.chosen]
-    pays = criterion.worth(allowed.statistic + gains) + criterion.price([*sorts, (1, False)]) < criterion.cost(allowed)
-    failed = np.flatnonzero(pays)
-    worst = singles[failed[np.argsort(-gains[failed], kind="stable")[:STRIDE]]]
-    columns = evidence.members[1][evidence.place[worst], 0]
-    block = allowed.block(columns)
-    scale = np.sqrt(np.diagonal(block))
-    correlation = np.abs(block) / np.outer(scale, scale)
-    taken: list[int] = []
-    for place in range(len(worst)):
-        if not taken or correlation[place, taken].max() < COUPLED:
-            taken.append(place)
-    return [int(number) for number in worst[taken]]

@@ -44,12 +44,8 @@ class Round:
 
     def known_to(self, other: Hypotheses) -> tuple[tuple[int, ...], FloatArray]:
         """The errors found, as another numbering has them, and their sizes; groups it does not know are left out."""
-        first, allowed = self.hypotheses.first_group, self.diagnosis.allowed
-        names = {group.hypothesis.name: other.first_group + place for place, group in enumerate(other.groups)}
-        number = {
-            chosen: chosen if chosen < first else names.get(self.hypotheses.hypothesis(chosen).name)
-            for chosen in allowed.chosen
-        }
+        allowed = self.diagnosis.allowed
+        number = {chosen: self.hypotheses.number_in(other, chosen) for chosen in allowed.chosen}
         known = sorted((there, here) for here, there in number.items() if there is not None)
         sizes = [allowed.errors[allowed.own(here)] for _, here in known]
         return tuple(there for there, _ in known), np.concatenate([np.empty(0), *sizes])
@@ -81,7 +77,7 @@ class Round:
     def left(self) -> float:
         """What is left with the price of the errors: comparable between linearisations."""
         allowed, criterion = self.diagnosis.allowed, self.diagnosis.criterion
-        price = criterion.price(map(allowed.evidence.sort, allowed.chosen))
+        price = criterion.price(allowed.sorts)
         if criterion.estimated:
             return float(np.log(max(self.square_sum, np.finfo(float).tiny))) + price
         return self.square_sum + price

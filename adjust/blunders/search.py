@@ -25,6 +25,9 @@ COUPLED = 0.05
 """Correlation of two estimated errors below which neither can stand in for a part of the other."""
 
 
+MOST_PAIRED = 400
+"""Columns that pairs are made of at most: 80,000 pairs, a few milliseconds' work."""
+
 MOST_COUPLED = 30
 """Pairs of members that are looked at together, so that a badly wrecked job does not take minutes."""
 
@@ -106,7 +109,7 @@ class _Search:
 
     def _with(self, allowed: Allowed, gain: float, joining: Sequence[int]) -> Choice:
         chosen = tuple(sorted((*allowed.chosen, *joining)))
-        price = self.criterion.price(map(self.evidence.sort, chosen))
+        price = self.criterion.price(allowed.sorts + self.evidence.sorts_of(joining))
         return Choice(float(self.criterion.worth(allowed.statistic + gain)) + price, chosen)
 
 
@@ -127,14 +130,13 @@ def sound(evidence: Evidence, hypotheses: Sequence[int]) -> tuple[int, ...]:
 
 
 def pair_columns(allowed: Allowed) -> IntArray:
-    """The columns (k,) that pairs are made of: those that fit worst, as many as can be afforded."""
+    """The columns (k,) that pairs are made of: those that fit worst, `MOST_PAIRED` at most."""
     candidates = allowed.testable & (allowed.evidence.owner >= 0)
     candidates[allowed.columns] = False
     columns = np.flatnonzero(candidates)
-    most = allowed.evidence.information.affordable
-    if len(columns) <= most:
+    if len(columns) <= MOST_PAIRED:
         return columns
-    return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:most]])
+    return np.sort(columns[np.argsort(-np.abs(allowed.w[columns]), kind="stable")[:MOST_PAIRED]])
 
 
 def coupled_pairs(allowed: Allowed) -> list[tuple[int, int]]:

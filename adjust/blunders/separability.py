@@ -13,6 +13,7 @@ three say the same.
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterator
 from dataclasses import dataclass
 
@@ -91,14 +92,13 @@ class _Standing:
     def by_one(self) -> Iterator[Replacement]:
         """One other for the one removed: it pays, and explains almost as much, or the one removed would be missed."""
         most = self.allowed.joint_gain(self.removed)
-        kept = [self.evidence.sort(number) for number in self.kept]
-        gone = [self.evidence.sort(number) for number in self.removed]
+        kept, gone = self.allowed.sorts, self.evidence.sorts_of(self.removed)
         for sort, numbers in self.evidence.sorts.items():
             gains = self.allowed.gains[numbers]
-            cost = self.criterion.worth(self.allowed.statistic + gains) + self.criterion.price([*kept, sort])
+            cost = self.criterion.worth(self.allowed.statistic + gains) + self.criterion.price(kept + Counter([sort]))
             alone = self._cost(0.0, ())
             missed = float(self.criterion.worth(self.allowed.statistic + most))
-            enough = (cost < alone) & (cost <= missed + self.criterion.price([*kept, *gone, sort]))
+            enough = (cost < alone) & (cost <= missed + self.criterion.price(kept + gone + Counter([sort])))
             for place in np.flatnonzero(enough & (gains > 0.0) & ~np.isin(numbers, self.removed)).tolist():
                 yield from self._if_standing((int(numbers[place]),), float(gains[place]))
 
@@ -131,5 +131,5 @@ class _Standing:
         return self._cost(after, more) < self._cost(before, fewer)
 
     def _cost(self, gain: float, joined: tuple[int, ...]) -> float:
-        price = self.criterion.price(map(self.evidence.sort, (*self.kept, *joined)))
+        price = self.criterion.price(self.allowed.sorts + self.evidence.sorts_of(joined))
         return float(self.criterion.worth(self.allowed.statistic + gain)) + price

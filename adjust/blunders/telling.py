@@ -45,7 +45,7 @@ def tell(found: Round, folder: str | Path | None = None) -> Findings:
 
 def unchecked(found: Round) -> tuple[str, ...]:
     """Sources of the rows in which a blunder shows in no residual, in the order of the book."""
-    rows = np.flatnonzero(~found.diagnosis.evidence.by_itself.testable[: found.hypotheses.rows])
+    rows = found.hypotheses.untestable_rows
     return tuple(dict.fromkeys(found.system.model.source(int(row)) for row in rows))
 
 

@@ -17,7 +17,7 @@ the significance of a test whose statistic is the odds of any mistake against no
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 
 import numpy as np
@@ -31,6 +31,8 @@ SAMPLES = 500
 """Errors that chance is tried on: a share of 5 % comes out within 1 %."""
 LEAST_SIZE, MOST_SIZE = 0.5, 2.0
 """What "of the same order of size" means, as multiples of the error found."""
+BEYOND = 10.0
+"""Standard deviations from an error at which a mistake adds e⁻⁵⁰ to its likelihood, whatever the prior: nothing."""
 SEED = 1
 
 
@@ -125,11 +127,25 @@ class Weighing:
         generator = np.random.default_rng(SEED)
         directions = generator.standard_normal((SAMPLES, self._size))
         directions /= np.linalg.norm(directions, axis=1)[:, None]
-        radius = float(np.linalg.norm(self._whitening @ self.found))
-        sizes = radius * np.linspace(LEAST_SIZE, MOST_SIZE, SAMPLES)
+        sizes = self._radius * np.linspace(LEAST_SIZE, MOST_SIZE, SAMPLES)
         others = (sizes[:, None] * directions) @ np.linalg.inv(self._whitening).T
-        explained = np.concatenate([self._explained(part) for part in np.array_split(others, self._parts)])
-        return float(np.mean(explained >= self._explained(self.found[None])[0]))
+        near = self._near
+        explained = np.concatenate([near._explained(part) for part in np.array_split(others, near._parts)])
+        return float(np.mean(explained >= near._explained(self.found[None])[0]))
+
+    @cached_property
+    def _radius(self) -> float:
+        """Size of the error found, in standard deviations."""
+        return float(np.linalg.norm(self._whitening @ self.found))
+
+    @property
+    def _near(self) -> Weighing:
+        """Only mistakes that could pass for an error of about the size of the one found, and those that leave
+        something open."""
+        radius = np.linalg.norm(self._away(np.zeros((1, self._size)))[0], axis=1)
+        least, most = LEAST_SIZE * self._radius - BEYOND, MOST_SIZE * self._radius + BEYOND
+        chosen = self._open.any(axis=1) | ((radius >= least) & (radius <= most))
+        return replace(self, errors=self.errors[chosen], loose=self.loose[chosen], priors=self.priors[chosen])
 
     @property
     def _parts(self) -> int:
