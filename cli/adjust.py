@@ -12,12 +12,20 @@ from cli.progress import ProgressLine
 
 if TYPE_CHECKING:
     from adjust import Adjustment
+    from adjust.blunders import Findings
 
 ACCEPTED, DOUBTFUL, UNUSABLE, UNSOLVABLE = 0, 1, 2, 3
 """Exit statuses."""
 
-READ, ADJUSTED = 0.15, 0.85
-"""Shares of the waiting time that lie behind when the job is read, and when it is adjusted."""
+READ, ADJUSTED, SEARCHED = 0.15, 0.6, 0.85
+"""Shares of the waiting time that lie behind when the job is read, adjusted, and searched for blunders."""
+
+decisions_option = click.option(
+    "--decisions",
+    type=click.Path(path_type=Path),
+    metavar="FILE",
+    help="Table of what was decided of single lines, as hubtack blunders --write makes it.",
+)
 
 
 @click.command("adjust", epilog="Example: hubtack adjust field_data/town_traverse --out results")
@@ -32,12 +40,15 @@ READ, ADJUSTED = 0.15, 0.85
     show_default=True,
     help="Order of the observations in the listing: the worst fit first, or as they stand in the field book.",
 )
+@decisions_option
 @click.option(
     "--watch",
     is_flag=True,
     help="Adjust again whenever a file of the job is saved, show what changed, and serve a page that refreshes itself.",
 )
-def adjust_command(job: Path, out: Path | None, order: Literal["worst", "book"], watch: bool) -> int:
+def adjust_command(
+    job: Path, out: Path | None, order: Literal["worst", "book"], decisions: Path | None, watch: bool
+) -> int:
     """Adjust JOB, a job folder or its job.toml.
 
     Writes results.json, coordinates.csv, residuals.csv, listing.txt and the page report.html, all or none of them, and
@@ -56,13 +67,13 @@ def adjust_command(job: Path, out: Path | None, order: Literal["worst", "book"],
     if watch:
         from cli.watch import watch_job
 
-        return watch_job(job, folder, order)
+        return watch_job(job, folder, order, decisions)
     try:
-        adjustment = adjust_and_write(job, folder, order)
+        adjustment, findings = adjust_and_write(job, folder, order, decisions)
     except HubtackError as error:
         click.echo(str(error), err=True)
         return status_of(error)
-    summarise(adjustment, folder)
+    summarise(adjustment, findings, folder)
     return status_of(adjustment)
 
 
@@ -75,29 +86,47 @@ def status_of(outcome: Adjustment | Exception) -> int:
     return ACCEPTED if outcome.accepted else DOUBTFUL
 
 
-def adjust_and_write(job: Path, folder: Path, order: Literal["worst", "book"]) -> Adjustment:
-    """Read, check, adjust and report, with a progress line. Raises HubtackError."""
+def adjust_and_write(
+    job: Path, folder: Path, order: Literal["worst", "book"], decisions: Path | None = None
+) -> tuple[Adjustment, Findings | None]:
+    """Read, check, adjust, search for blunders and report, with a progress line. Raises HubtackError."""
     with ProgressLine(sys.stderr) as progress:
         progress("reading the field book", 0.0)
         from adjust import adjust, read_job
         from adjust.network.closures import check_job
         from adjust.reports import write_reports
 
-        field_book = read_job(job)
+        field_book = read_job(job, decisions)
         progress("closing loops", READ)
         check = check_job(field_book)
         adjustment = adjust(field_book, lambda stage, done: progress(stage, READ + (ADJUSTED - READ) * done))
-        progress("writing the results", ADJUSTED)
-        write_reports(adjustment, folder, order, check)
-    return adjustment
+        progress("looking for blunders", ADJUSTED)
+        findings = _search(adjustment, job)
+        progress("writing the results", SEARCHED)
+        write_reports(adjustment, folder, order, check, findings)
+    return adjustment, findings
 
 
-def summarise(adjustment: Adjustment, folder: Path) -> None:
+def _search(adjustment: Adjustment, job: Path) -> Findings | None:
+    """What a search for blunders finds; None where it cannot be made, for which the results need not wait."""
+    from adjust.blunders import find_blunders
+    from adjust.errors import NetworkError
+
+    try:
+        return find_blunders(adjustment, job)
+    except NetworkError:
+        return None
+
+
+def summarise(adjustment: Adjustment, findings: Findings | None, folder: Path) -> None:
     """The verdict and where the rest is on stdout, what else to bear in mind on stderr."""
     from adjust.reports import REPORTS, cautions, verdict
+    from adjust.reports.blunder_words import findings_verdict
 
     sentence = verdict(adjustment)
     click.echo(sentence)
+    if findings is not None and findings.blunders:
+        click.echo(findings_verdict(findings))
     click.echo(f"Wrote {', '.join(REPORTS[:-1])} and {REPORTS[-1]} into {folder}.")
     for caution in cautions(adjustment):
         if caution not in sentence:

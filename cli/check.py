@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from cli.adjust import ACCEPTED, DOUBTFUL, UNUSABLE
+from cli.adjust import ACCEPTED, DOUBTFUL, UNUSABLE, decisions_option
 from cli.progress import ProgressLine
 
 if TYPE_CHECKING:
@@ -23,7 +23,8 @@ READ, CHECKED = 0.2, 0.8
 @click.option(
     "--out", type=click.Path(path_type=Path), metavar="DIR", help="Folder for the reports.  [default: JOB/out]"
 )
-def check_command(job: Path, out: Path | None) -> int:
+@decisions_option
+def check_command(job: Path, out: Path | None, decisions: Path | None) -> int:
     """Check JOB, a job folder or its job.toml, before it is adjusted.
 
     Closes loops, lines, traverses, angle sums and whatever else comes back to where it began, looks for marks and rows
@@ -39,7 +40,7 @@ def check_command(job: Path, out: Path | None) -> int:
 
     folder = out or (job if job.is_dir() else job.parent) / "out"
     try:
-        check = _check_and_write(job, folder)
+        check = _check_and_write(job, folder, decisions)
     except HubtackError as error:
         click.echo(str(error), err=True)
         return UNUSABLE
@@ -47,14 +48,14 @@ def check_command(job: Path, out: Path | None) -> int:
     return ACCEPTED if check.passed else DOUBTFUL
 
 
-def _check_and_write(job: Path, folder: Path) -> Check:
+def _check_and_write(job: Path, folder: Path, decisions: Path | None) -> Check:
     with ProgressLine(sys.stderr) as progress:
         progress("reading the field book", 0.0)
         from adjust import read_job
         from adjust.network.closures import check_job
         from adjust.reports.check_files import write_check_reports
 
-        field_book = read_job(job)
+        field_book = read_job(job, decisions)
         progress("closing loops", READ)
         check = check_job(field_book)
         progress("writing the reports", CHECKED)

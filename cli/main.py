@@ -9,6 +9,7 @@ from io import TextIOWrapper
 import click
 
 from cli.adjust import adjust_command
+from cli.blunders import blunders_command
 from cli.check import check_command
 from cli.export import export_command
 from cli.grid_sheet import grid_sheet_command
@@ -30,6 +31,7 @@ def hubtack() -> None:
 
 hubtack.add_command(adjust_command)
 hubtack.add_command(check_command)
+hubtack.add_command(blunders_command)
 hubtack.add_command(reduce_command)
 hubtack.add_command(grid_sheet_command)
 hubtack.add_command(export_command)

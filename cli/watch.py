@@ -10,6 +10,7 @@ import click
 
 if TYPE_CHECKING:
     from adjust import Adjustment
+    from adjust.blunders import Findings
     from adjust.reports.served import PageServer
 
 PORT = 8473
@@ -29,19 +30,21 @@ def job_folder(job: Path) -> Path:
     return job if job.is_dir() else job.parent
 
 
-def saves(job: Path, out: Path, stop: Any = None) -> Iterator[None]:
-    """Once at the start, then whenever a file of the job differs from what it was; `out` is no part of the job.
+def saves(job: Path, out: Path, stop: Any = None, decisions: Path | None = None) -> Iterator[None]:
+    """Once at the start, then whenever a file of the job, or the table of `decisions`, differs from what it was.
 
-    Ends with Ctrl-C, or when the event `stop` is set. Raises OutputError where watchfiles is not installed.
+    `out` is no part of the job. Ends with Ctrl-C, or when the event `stop` is set. Raises OutputError where watchfiles
+    is not installed.
     """
     from adjust.reports.libraries import library
 
     watchfiles = library("watchfiles", "watch")
     folder = job_folder(job)
-    seen = signature(folder, out)
+    places = {folder} if decisions is None or not decisions.parent.is_dir() else {folder, decisions.parent}
+    seen = signature(folder, out, decisions)
     yield
     watched = watchfiles.watch(
-        folder,
+        *sorted(places),
         step=SETTLED // 2,
         debounce=SETTLED,
         rust_timeout=LOOK_AGAIN,
@@ -50,18 +53,17 @@ def saves(job: Path, out: Path, stop: Any = None) -> Iterator[None]:
         stop_event=stop,
     )
     for _ in watched:
-        now = signature(folder, out)
+        now = signature(folder, out, decisions)
         if now != seen:
             seen = now
             yield
 
 
-def signature(folder: Path, out: Path) -> Signature:
+def signature(folder: Path, out: Path, decisions: Path | None = None) -> Signature:
     """When each file was written and how long it is, without results, hidden files and what editors leave aside."""
     found = {}
-    for path in folder.rglob("*"):
-        aside = path.name.startswith((".", "~")) or path.name.endswith(("~", ".tmp"))
-        if not aside and not path.resolve().is_relative_to(out.resolve()):
+    for path in (*folder.rglob("*"), *([] if decisions is None else [decisions])):
+        if path == decisions or not _aside(path, out):
             try:
                 stat = path.stat()
             except OSError:
@@ -69,6 +71,12 @@ def signature(folder: Path, out: Path) -> Signature:
             if path.is_file():
                 found[str(path)] = (stat.st_mtime_ns, stat.st_size)
     return found
+
+
+def _aside(path: Path, out: Path) -> bool:
+    """Whether a file of the folder is no part of the job."""
+    hidden = path.name.startswith((".", "~")) or path.name.endswith(("~", ".tmp"))
+    return hidden or path.resolve().is_relative_to(out.resolve())
 
 
 def page_server(folder: Path) -> PageServer:
@@ -81,14 +89,20 @@ def page_server(folder: Path) -> PageServer:
         return PageServer(folder)
 
 
-def watch_job(job: Path, out: Path, order: Literal["worst", "book"], again: Iterable[None] | None = None) -> int:
+def watch_job(
+    job: Path,
+    out: Path,
+    order: Literal["worst", "book"],
+    decisions: Path | None = None,
+    again: Iterable[None] | None = None,
+) -> int:
     """Adjust whenever `again` yields, by default at the start and at every save; returns the status of the last run."""
     from adjust.errors import HubtackError
 
     with page_server(out) as pages:
-        watch = Watch(job, out, order, pages)
+        watch = Watch(job, out, order, decisions, pages)
         try:
-            for _ in saves(job, out) if again is None else again:
+            for _ in saves(job, out, decisions=decisions) if again is None else again:
                 watch.run()
                 if not job_folder(job).is_dir():
                     break
@@ -101,8 +115,10 @@ def watch_job(job: Path, out: Path, order: Literal["worst", "book"], again: Iter
 class Watch:
     """The runs of one watch: the last that could be adjusted, and whether the last one could."""
 
-    def __init__(self, job: Path, out: Path, order: Literal["worst", "book"], pages: PageServer) -> None:
-        self.job, self.out, self.order, self.pages = job, out, order, pages
+    def __init__(
+        self, job: Path, out: Path, order: Literal["worst", "book"], decisions: Path | None, pages: PageServer
+    ) -> None:
+        self.job, self.out, self.order, self.decisions, self.pages = job, out, order, decisions, pages
         self.last: Adjustment | None = None
         self.troubled = False
         self.runs = 0
@@ -115,12 +131,12 @@ class Watch:
 
         self.runs += 1
         try:
-            adjustment = adjust_and_write(self.job, self.out, self.order)
+            adjustment, findings = adjust_and_write(self.job, self.out, self.order, self.decisions)
         except HubtackError as error:
             self._failed(error)
             self.status = status_of(error)
         else:
-            self._adjusted(adjustment)
+            self._adjusted(adjustment, findings)
             self.status = status_of(adjustment)
         if self.runs == 1:
             click.echo(f"Watching {job_folder(self.job)}; open {self.pages.url}, it refreshes itself. Ctrl-C ends.")
@@ -132,7 +148,7 @@ class Watch:
         )
         self.pages.announce(self.pages.live.change, str(error))
 
-    def _adjusted(self, adjustment: Adjustment) -> None:
+    def _adjusted(self, adjustment: Adjustment, findings: Findings | None) -> None:
         from adjust.reports.change import change_between, change_lines
         from cli.adjust import summarise
 
@@ -145,6 +161,6 @@ class Watch:
             lines = [] if last is None else change_lines(change_between(last, adjustment))
             for line in lines:
                 click.echo(line)
-            summarise(adjustment, self.out)
+            summarise(adjustment, findings, self.out)
             self.pages.announce(tuple(lines))
         self.troubled = False

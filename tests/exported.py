@@ -11,6 +11,7 @@ from tempfile import TemporaryDirectory
 from typing import Any
 
 from adjust import Adjustment, adjust, read_job
+from adjust.blunders import find_blunders
 from adjust.network.closures import check_job
 from adjust.reports.check_records import check_record
 from adjust.reports.results import write_results
@@ -40,7 +41,8 @@ def text_of(name: str) -> str:
     adjustment = adjustment_of(name)
     closures = [check_record(judged) for judged in check_job(adjustment.job).closures]
     with TemporaryDirectory() as folder:
-        write_results(adjustment, cautions(adjustment), Path(folder, "results.json"), closures)
+        findings = find_blunders(adjustment)
+        write_results(adjustment, cautions(adjustment), Path(folder, "results.json"), closures, findings)
         return Path(folder, "results.json").read_text("utf-8")
 
 

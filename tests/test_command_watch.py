@@ -54,7 +54,7 @@ def test_each_save_is_adjusted_and_what_changed_is_said(town: Path, capsys: pyte
         yield
         said.append(said_between(capsys))
 
-    assert watch_job(town, town / "out", "worst", again()) == 0
+    assert watch_job(town, town / "out", "worst", again=again()) == 0
     first, mistaken, mended = said
     assert "20 observations are suspect" in first[0]
     assert "http://127.0.0.1:" in first[0]
@@ -90,7 +90,7 @@ def test_the_pages_hear_the_same(town: Path, monkeypatch: pytest.MonkeyPatch) ->
         edit(table, worst + "\n", "")
         yield
 
-    watch_job(town, town / "out", "worst", again())
+    watch_job(town, town / "out", "worst", again=again())
     first, mistaken, undone, mended = told
     assert (first[0], first[1], first[2]) == ((), "", True)
     assert mistaken[0] == ()
@@ -113,7 +113,7 @@ def test_a_job_that_cannot_be_read_at_first_is_watched_until_it_can(
         (town / "job.toml").write_text(job, "utf-8")
         yield
 
-    assert watch_job(town / "job.toml", town / "out", "book", again()) == 1
+    assert watch_job(town / "job.toml", town / "out", "book", again=again()) == 1
     said = capsys.readouterr()
     assert "job.toml" in said.err
     assert "20 observations are suspect" in said.out

@@ -58,7 +58,7 @@ def written(request, tmp_path_factory):
         adjustment, check = adjust(job), check_job(job)
     else:
         adjustment, check = adjusted(request.param), check_job(adjusted(request.param).job)
-    write_reports(adjustment, folder, check=check)
+    write_reports(adjustment, folder, check=check, findings=find_blunders(adjustment))
     page = (folder / "report.html").read_text("utf-8")
     return page, parsed(page), json.loads((folder / "results.json").read_text("utf-8"))
 
@@ -161,10 +161,30 @@ def test_every_other_figure_is_one_of_the_results(written):
 
 
 def _scale(results, key):
+    blunder = re.fullmatch(r"blunders\[(\d+)\]\.(estimated_error|sd)(\.\w+)?", key)
+    if blunder:
+        return {"m": MILLIMETRES, "deg": ARCSECONDS, "1": 1e6}[results["blunders"][int(blunder[1])]["unit"]]
     weight = re.fullmatch(r"weights\[(\d+)\]\.sd_(smallest|median|largest)", key)
     if not weight:
         return 1
     return MILLIMETRES if results["weights"][int(weight[1])]["unit"] == "m" else ARCSECONDS
+
+
+def test_every_blunder_of_the_results_is_on_the_page(written):
+    _, tree, results = written
+    keys = {node.get("data-key") for node in tree.iter(f"{XHTML}data")}
+    section = next(node for node in tree.iter(f"{XHTML}section") if node.get("id") == "suspects")
+    words = " ".join(text_of(section).split())
+    for place, blunder in enumerate(results["blunders"]):
+        several = blunder["estimated_error"] if isinstance(blunder["estimated_error"], dict) else {"": None}
+        for name in several:
+            part = f".{name}" if name else ""
+            assert {f"blunders[{place}].estimated_error{part}", f"blunders[{place}].sd{part}"} <= keys
+        assert {f"blunders[{place}].test", f"blunders[{place}].critical"} <= keys
+        said = [blunder["source"] or blunder["group"], blunder["advice"], *blunder["alternatives"]]
+        said += [cell[key] for cell in blunder["written"] for key in ("text", "expected") if cell[key]]
+        said += [explanation["mistake"][1:] for explanation in blunder["explanations"]]
+        assert all(text in words for text in said), (said, words)
 
 
 def test_rows_in_the_page_are_the_first_of_its_data(written):

@@ -9,7 +9,8 @@ import numpy as np
 
 from adjust.blunders.hypothesis import Hypothesis
 from adjust.field_book.cells import Style, Table
-from adjust.field_book.schema import AXES
+from adjust.field_book.decided_sheet import BLANK
+from adjust.field_book.schema import AXES, TABLES
 from adjust.field_book.writing import VALUE_COLUMNS
 from adjust.field_book.written import Cell, Line, written
 from adjust.job import Job
@@ -31,12 +32,27 @@ def cells_of(job: Job, hypotheses: Sequence[Hypothesis], folder: str | Path | No
     """
     sources = [_lines(job, hypothesis) for hypothesis in hypotheses]
     found = written(folder, (line for lines in sources for line in lines)) if folder is not None else {}
+    found = {line: _as_decided(job, line, cells) for line, cells in found.items()}
     return [
         tuple(found[line] for line in lines)
         if all(line in found for line in lines)
         else (_as_written(job, hypothesis),)
         for lines, hypothesis in zip(sources, hypotheses, strict=True)
     ]
+
+
+def _as_decided(job: Job, line: tuple[str, int], cells: Line) -> Line:
+    """The cells of a line with what the surveyor corrected in it."""
+    decided = dict(cells)
+    for each in job.decisions:
+        if each.decision == "correct" and each.source == f"{line[0]}:{line[1]}":
+            decided[_plain(each.column)] = Cell(each.column, "" if each.value == BLANK else each.value)
+    return {name: cell for name, cell in decided.items() if cell.text}
+
+
+def _plain(title: str) -> str:
+    """The plain name of a column by its title: `target_height` of `target_height_m`."""
+    return next(column.name for table in TABLES.values() for column in table.columns if title in column.titles)
 
 
 def _lines(job: Job, hypothesis: Hypothesis) -> list[tuple[str, int]]:

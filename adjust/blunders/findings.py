@@ -3,11 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 from adjust.arrays import FloatArray
 from adjust.blunders.context import Explanation
 from adjust.blunders.hypothesis import Hypothesis
 from adjust.model import State
+
+if TYPE_CHECKING:
+    from adjust.blunders.booked import Booked
 
 
 @dataclass(frozen=True)
@@ -31,6 +35,10 @@ class Blunder:
     alternatives: tuple[Hypothesis, ...]
     deciding: tuple[str, float] | None
     explanations: tuple[Explanation, ...]
+    booked: tuple[Booked, ...] = ()
+    """The cells of the book that it rests on, and what the network expects there."""
+    advice: str = ""
+    """What to do next."""
 
     @property
     def name(self) -> str:

@@ -16,7 +16,6 @@ from adjust.blunders.deciding import deciding_row
 from adjust.blunders.expectation import Expectation
 from adjust.blunders.findings import Blunder, Findings
 from adjust.blunders.hypothesis import Hypothesis
-from adjust.blunders.mistakes import explain
 from adjust.blunders.round import Round
 from adjust.blunders.system import System
 from adjust.field_book.written import Line
@@ -62,7 +61,11 @@ class _Teller:
         self.expectation = Expectation(self.system, found.state, allowed, columns, self.variance)
 
     def blunder(self, number: int, suspect: Hypothesis, lines: Sequence[Line]) -> Blunder:
-        """All about one of the chosen hypotheses."""
+        """All about one of the chosen hypotheses. What only a suspect needs is imported when there is one."""
+        from adjust.blunders.advice import advice
+        from adjust.blunders.booked import booked
+        from adjust.blunders.mistakes import explain
+
         allowed = self.diagnosis.allowed
         own = allowed.own(number)
         error, covariance = allowed.errors[own], allowed.covariance[own, own] * self.variance
@@ -79,6 +82,8 @@ class _Teller:
             fit_of=self.expectation.misfits,
             further_cells=tuple(lines[1:]),
         )
+        alternatives = tuple(map(self.found.hypotheses.hypothesis, self.diagnosis.alternatives(number)))
+        explanations, deciding = explain(context), self._deciding(number)
         return Blunder(
             hypothesis=suspect,
             sources=sources_of(self.job, suspect),
@@ -87,9 +92,11 @@ class _Teller:
             expected_value=expected_value(self.job, suspect, error),
             test=test,
             critical=critical,
-            alternatives=tuple(map(self.found.hypotheses.hypothesis, self.diagnosis.alternatives(number))),
-            deciding=self._deciding(number),
-            explanations=explain(context),
+            alternatives=alternatives,
+            deciding=deciding,
+            explanations=explanations,
+            booked=booked(context),
+            advice=advice(suspect, explanations, alternatives, None if deciding is None else deciding[0]),
         )
 
     def _test(self, number: int) -> tuple[float, float]:

@@ -99,20 +99,19 @@ def joined(tables: Sequence[Table]) -> Table:
     }
 
 
-def table_text(table: Table, comments: Sequence[str] = ()) -> str:
+def table_text(table: Table, comments: Sequence[str] = (), separator: str = ",") -> str:
     """A table as CSV text, `comments` above the header row."""
-    lines = [*(f"# {comment}" for comment in comments), ",".join(table)]
-    lines += map(",".join, zip(*(_quoted(cells) for cells in table.values()), strict=True))
+    lines = [*(f"# {comment}" for comment in comments), separator.join(table)]
+    lines += map(separator.join, zip(*(_quoted(cells, separator) for cells in table.values()), strict=True))
     return "\n".join(lines) + "\n"
 
 
-def _quoted(cells: list[str]) -> list[str]:
+def _quoted(cells: list[str], separator: str) -> list[str]:
     """Cells in quotation marks where their own characters would cut the row or make it a comment."""
-    if not any(sign in "".join(cells) for sign in ',"#'):
+    signs = {separator, '"', "#"}
+    if signs.isdisjoint("".join(cells)):
         return cells
-    return [
-        '"' + cell.replace('"', '""') + '"' if "," in cell or '"' in cell or "#" in cell else cell for cell in cells
-    ]
+    return [cell if signs.isdisjoint(cell) else '"' + cell.replace('"', '""') + '"' for cell in cells]
 
 
 def names_of(numbers: IntArray, names: Sequence[str]) -> list[str]:

@@ -49,6 +49,15 @@ def written(job: str | Path, lines: Iterable[tuple[str, int]]) -> dict[tuple[str
     }
 
 
+def separator(job: str | Path, file: str) -> str:
+    """What separates the cells of a file of a job: a comma where it cannot be read any more."""
+    try:
+        text = open_folder(job, Mistakes()).text(file)
+    except HubtackError:
+        text = None
+    return "," if text is None else Sheet(file, text, Mistakes()).separator
+
+
 def _tables(folder: Folder) -> dict[str, Table]:
     """The table that each file of a job holds."""
     text = folder.text(folder.job_file)

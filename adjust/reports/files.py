@@ -32,15 +32,16 @@ def write_reports(
     """Write all `REPORTS` into `folder`, or none: earlier files stay as they were when anything fails.
 
     `order` is that of the listing's observations; `check` is what was said of the job before it was adjusted,
-    `findings` what a search for blunders found, for the page. Raises OutputError where the folder cannot be written.
+    `findings` what a search for blunders found (`adjust.blunders.find_blunders`); without it the reports say nothing of
+    blunders. Raises OutputError where the folder cannot be written.
     """
     warned = cautions(adjustment)
     closures = [] if check is None else [check_record(judged) for judged in check.closures]
     writers: dict[str, Writer] = {
-        "results.json": lambda path: write_results(adjustment, warned, path, closures),
+        "results.json": lambda path: write_results(adjustment, warned, path, closures, findings),
         "coordinates.csv": lambda path: write_coordinates(adjustment, warned, path),
         "residuals.csv": lambda path: write_residuals(adjustment, warned, path),
-        "listing.txt": lambda path: write_listing(adjustment, order, path, check),
+        "listing.txt": lambda path: write_listing(adjustment, order, path, check, findings),
         "report.html": lambda path: write_page(adjustment, path, check, findings),
     }
     publish(folder, writers)

@@ -3,20 +3,27 @@
 from __future__ import annotations
 
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame, PlaneFrame
+from adjust.job import Job
 from adjust.network.closures.check import Check
 from adjust.quality import critical_tau, critical_w
 from adjust.reports import listing_marks, listing_observations
+from adjust.reports.blunder_words import blunder_section
 from adjust.reports.check_listing import check_section
+from adjust.reports.decision_words import decision_section
 from adjust.reports.layout import facts, paragraph, title
 from adjust.reports.reduction_text import listed_reduction
 from adjust.reports.selection import Order
 from adjust.reports.verdict import cautions, digits_left, verdict
 from adjust.reports.wording import NAMES, counted
+
+if TYPE_CHECKING:
+    from adjust.blunders import Findings
 
 LISTED = 1000
 """Rows of one table, some twenty printed pages; the tables beside the listing have them all."""
@@ -29,22 +36,36 @@ STANDING_CAUTION = (
 """Ends every listing, whatever the figures."""
 
 
-def write_listing(adjustment: Adjustment, order: Order, path: Path, check: Check | None = None) -> None:
-    """Write the listing; `order` is that of the observations, `check` what was said before the adjustment."""
-    path.write_text("\n".join(listing(adjustment, order, check=check)) + "\n", encoding="utf-8", newline="\n")
+def write_listing(
+    adjustment: Adjustment,
+    order: Order,
+    path: Path,
+    check: Check | None = None,
+    findings: Findings | None = None,
+) -> None:
+    """Write the listing; `order` is that of the observations, `check` what was said before the adjustment, `findings`
+    what a search for blunders found."""
+    lines = listing(adjustment, order, check=check, findings=findings)
+    path.write_text("\n".join(lines) + "\n", encoding="utf-8", newline="\n")
 
 
 def listing(
-    adjustment: Adjustment, order: Order = "worst", most: int = LISTED, check: Check | None = None
+    adjustment: Adjustment,
+    order: Order = "worst",
+    most: int = LISTED,
+    check: Check | None = None,
+    findings: Findings | None = None,
 ) -> list[str]:
     """The lines of the listing; no table has more than `most` rows."""
     return [
         *_opening(adjustment),
         *title("Job"),
         *facts(job_facts(adjustment)),
+        *decision_section(adjustment.job),
         *(check_section(check) if check is not None else ()),
         *listing_marks.control(adjustment, most),
         *listing_marks.coordinates(adjustment, most),
+        *blunder_section(adjustment.job, findings),
         *listing_observations.suspects(adjustment, most),
         *listing_observations.observations(adjustment, order, most),
         *listing_marks.relative(adjustment, most),
@@ -78,7 +99,7 @@ def job_facts(adjustment: Adjustment) -> list[tuple[str, str]]:
         ("Frame", frame_words(adjustment)),
         ("Datum", datum_words(adjustment)),
         ("Observations", _observation_words(adjustment)),
-        ("Left out", f"{counted(left_out, 'observation', 'observations')} marked `use = no`" if left_out else ""),
+        ("Left out", f"{counted(left_out, 'observation', 'observations')} {_left_out_by(job)}" if left_out else ""),
         ("Unknowns", f"{solution.unknowns}: {coordinates}{orientations}"),
         ("Degrees of freedom", str(solution.degrees_of_freedom)),
         ("Estimated σ₀", _sigma_words(adjustment)),
@@ -87,6 +108,11 @@ def job_facts(adjustment: Adjustment) -> list[tuple[str, str]]:
         ("Input", f"sha256 {job.input_sha256}" if job.input_sha256 else ""),
     ]
     return [(name, value) for name, value in pairs if value]
+
+
+def _left_out_by(job: Job) -> str:
+    decided = any(each.decision == "leave_out" for each in job.decisions)
+    return "marked `use = no` or left out by decision" if decided else "marked `use = no`"
 
 
 def frame_words(adjustment: Adjustment) -> str:

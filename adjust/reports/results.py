@@ -5,13 +5,18 @@ from __future__ import annotations
 import json
 from collections.abc import Iterable, Iterator
 from pathlib import Path
-from typing import Any, TextIO
+from typing import TYPE_CHECKING, Any, TextIO
 
 from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame
+from adjust.reports.blunder_records import blunder_records
+from adjust.reports.decision_words import decision_records
 from adjust.reports.records import Figures, Record, line_figures, mark_figures, number, observation_figures
 from adjust.reports.specification import specification_record, specified
 from adjust.reports.weights import weight_records
+
+if TYPE_CHECKING:
+    from adjust.blunders import Findings
 
 SCHEMA = "hubtack-results/1"
 
@@ -19,10 +24,17 @@ _ENCODER = json.JSONEncoder(ensure_ascii=False, allow_nan=False)
 """Floats in the shortest digits that read back as the same number; NaN is refused rather than written."""
 
 
-def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path, closures: Iterable[Record] = ()) -> None:
+def write_results(
+    adjustment: Adjustment,
+    cautions: Iterable[str],
+    path: Path,
+    closures: Iterable[Record] = (),
+    findings: Findings | None = None,
+) -> None:
     """One key a line, and one line for each mark, observation and pair, so that results compare line by line.
 
-    `closures` are the records of the checks before the adjustment, as `check.json` has them. Text is made column by
+    `closures` are the records of the checks before the adjustment, as `check.json` has them; `findings` what a search
+    for blunders found, None where nobody searched. Text is made column by
     column and some rows at a time: a million observations never stand in memory as objects.
     """
     with path.open("w", encoding="utf-8", newline="\n") as file:
@@ -37,7 +49,12 @@ def write_results(adjustment: Adjustment, cautions: Iterable[str], path: Path, c
         write_list(file, "notes", iter(adjustment.notes))
         file.write(f'"specification": {_ENCODER.encode(specification_record(specified(adjustment)))},\n')
         write_list(file, "weights", weight_records(adjustment))
-        write_list(file, "closures", iter(closures), last=True)
+        write_list(file, "closures", iter(closures))
+        if findings is None:
+            file.write('"blunders": null,\n')
+        else:
+            write_list(file, "blunders", blunder_records(adjustment.job, findings))
+        write_list(file, "decisions", decision_records(adjustment.job), last=True)
         file.write("}\n")
 
 

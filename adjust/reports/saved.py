@@ -31,6 +31,7 @@ Kind = Literal[
     "control",
 ]
 Figure = float | None
+Figures = Figure | dict[str, Figure]
 Row = tuple[Figure, Figure, Figure]
 
 
@@ -210,6 +211,68 @@ class ClosureRecord(Saved):
     largest_share: Figure = Field(description="Of what is allowed")
 
 
+class WrittenRecord(Saved):
+    """A cell of the book that a blunder rests on, and what the network expects there, both as the book writes."""
+
+    source: str = Field(description="File and line")
+    column: str
+    text: str
+    expected: str | None
+
+
+class CorrectionRecord(Saved):
+    """What a cell of the book would have to hold."""
+
+    source: str
+    column: str
+    value: str = Field(description="Empty: a blank cell")
+
+
+class ExplanationRecord(Saved):
+    """A mistake that would have made the error."""
+
+    mistake: str
+    names: list[str] = Field([], description="In the catalogue of mistakes")
+    corrected_value: Figures = Field(description="Of the observation; null where another entry changes")
+    corrections: list[CorrectionRecord] = []
+    w_after: Figure = Field(description="Misfit that the correction leaves, in its sds")
+    odds: Figure = Field(description="Against all other explanations together")
+
+
+class BlunderRecord(Saved):
+    """An error that the observations give away, of one row (source) or shared by many (group)."""
+
+    source: str | None
+    group: str | None
+    nature: str = "observation"
+    kind: Kind | None = None
+    component: str | None = None
+    marks: list[str] = []
+    sources: list[str] = Field([], description="Every row that it enters")
+    unit: Literal["m", "deg", "1"]
+    estimated_error: Figures = Field(description="Written minus true; by component where there are several")
+    sd: Figures
+    expected_value: Figures = Field(description="What should have been written")
+    test: Figure
+    critical: Figure
+    alternatives: list[str] = Field(description="Sources or groups that could stand in its place")
+    deciding: str | None = Field(None, description="The observation whose repetition tells these apart")
+    written: list[WrittenRecord] = []
+    explanations: list[ExplanationRecord] = Field(description="The likeliest first; none: no common mistake")
+    advice: str
+
+
+class DecisionRecord(Saved):
+    """What the surveyor decided of one line of the book."""
+
+    source: str
+    decision: Literal["keep", "leave_out", "correct"]
+    column: str | None
+    written: str
+    value: str | None = Field(description="In place of what is written; null unless it is corrected")
+    reason: str
+
+
 class SavedResults(Saved):
     """The results of one adjustment. Numbers are SI unless the key names a unit; null where there is no such figure."""
 
@@ -225,6 +288,8 @@ class SavedResults(Saved):
     specification: SpecificationRecord | None = None
     weights: list[WeightRecord] = []
     closures: list[ClosureRecord] = []
+    blunders: list[BlunderRecord] | None = Field(None, description="The plainest first; null: nobody searched")
+    decisions: list[DecisionRecord] = []
 
 
 def read_results(path: Path) -> SavedResults:

@@ -2,22 +2,33 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from adjust.adjustment import Adjustment
-from adjust.arrays import FloatArray
-from adjust.reports.wording import NAMES, between, decimals, dms
-from adjust.units import ARCSEC
+from adjust.job import Job
+from adjust.reports.blunder_records import blunder_record
+from adjust.reports.blunder_words import LISTED, UNEXPLAINED, explained, marks_of, sources_of, what_of
+from adjust.reports.page.content import Figure
+from adjust.reports.records import Record
+from adjust.reports.wording import decimals
 
 if TYPE_CHECKING:
-    from adjust.blunders import Blunder, Explanation, Findings, Hypothesis
+    from adjust.blunders import Blunder, Findings
 
-SMALL = {"m": (1e-3, "mm"), "rad": (ARCSEC, "″"), "1": (1e-6, "ppm")}
-"""In which errors are printed, by the unit of a hypothesis."""
-RECORD = {"at": None, "from": None, "to": None}
-MOST_SOURCES = 5
-"""Sources that are named of an error that many rows share."""
+SMALL = {"m": (1e3, "mm"), "deg": (3600.0, "″"), "1": (1e6, "ppm")}
+"""By which figures of `results.json` are multiplied to be printed, by their unit."""
+
+
+@dataclass(frozen=True)
+class Error:
+    """One component of an estimated error as printed."""
+
+    component: str
+    size: Figure
+    sd: Figure
+    unit: str
 
 
 @dataclass(frozen=True)
@@ -28,77 +39,63 @@ class BlunderWords:
     name: str
     sources: str
     marks: tuple[int, ...]
-    off_by: str
-    expected: str
-    test: str
-    critical: str
+    errors: tuple[Error, ...]
+    booked: tuple[str, ...]
+    test: Figure
+    critical: Figure
     alternatives: tuple[str, ...]
-    deciding: str
     explanations: tuple[str, ...]
+    advice: str
 
 
 def blunder_words(adjustment: Adjustment, findings: Findings | None) -> list[BlunderWords]:
-    """All blunders, the plainest first; none where nobody searched."""
-    return [] if findings is None else [_words(adjustment, blunder) for blunder in findings.blunders]
+    """The blunders, the plainest first; none where nobody searched."""
+    found = () if findings is None else findings.blunders[:LISTED]
+    return [_words(adjustment.job, place, blunder) for place, blunder in enumerate(found)]
 
 
-def _words(adjustment: Adjustment, blunder: Blunder) -> BlunderWords:
-    hypothesis = blunder.hypothesis
-    others = len(blunder.sources) - MOST_SOURCES
-    sources = ", ".join(blunder.sources[:MOST_SOURCES]) + (f" and {others} more" if others > 0 else "")
+def _words(job: Job, place: int, blunder: Blunder) -> BlunderWords:
+    what = what_of(job, blunder.hypothesis)
+    record, key = blunder_record(job, blunder), f"blunders[{place}]"
+    explanations = tuple(f"{_capital(explained(each))}." for each in blunder.explanations)
     return BlunderWords(
-        what=_what(adjustment, hypothesis),
+        what=what,
         name=blunder.name,
-        sources="" if sources == blunder.name else sources,
-        marks=_marks(adjustment, hypothesis),
-        off_by=_errors(hypothesis, blunder.estimated_error, blunder.sd),
-        expected=_values(hypothesis, blunder.expected_value),
-        test=decimals(blunder.test, 2),
-        critical=decimals(blunder.critical, 2),
+        sources="" if what else sources_of(blunder),
+        marks=marks_of(job, blunder.hypothesis),
+        errors=tuple(_errors(record, key)),
+        booked=tuple(_booked(blunder)),
+        test=Figure(decimals(record["test"], 2), record["test"], f"{key}.test"),
+        critical=Figure(decimals(record["critical"], 2), record["critical"], f"{key}.critical"),
         alternatives=tuple(each.name for each in blunder.alternatives),
-        deciding="" if blunder.deciding is None else blunder.deciding[0],
-        explanations=tuple(map(_explanation, blunder.explanations)),
+        explanations=explanations or (f"{_capital(UNEXPLAINED)}.",),
+        advice=blunder.advice,
     )
 
 
-def _marks(adjustment: Adjustment, hypothesis: Hypothesis) -> tuple[int, ...]:
-    """The mark of a group, or the marks of a single row."""
-    if hypothesis.mark is not None:
-        return (hypothesis.mark,)
-    kind, rows = hypothesis.rows[0]
-    if not hypothesis.single:
-        return ()
-    return tuple(adjustment.job.observations[kind].marks[int(rows[0])].tolist())
+def _errors(record: Record, key: str) -> Iterator[Error]:
+    """The components of an error, each figure with its place in `results.json`."""
+    scale, unit = SMALL[record["unit"]]
+    errors, sds = record["estimated_error"], record["sd"]
+    names = list(errors) if isinstance(errors, dict) else [""]
+    for name in names:
+        part = f".{name}" if name else ""
+        error, sd = (figures[name] if name else figures for figures in (errors, sds))
+        yield Error(
+            name,
+            Figure(decimals(error * scale, 2, signed=True), error * scale, f"{key}.estimated_error{part}"),
+            Figure(decimals(sd * scale, 2), sd * scale, f"{key}.sd{part}"),
+            unit,
+        )
 
 
-def _what(adjustment: Adjustment, hypothesis: Hypothesis) -> str:
-    """The kind and the marks of a single row; "" of a group, whose name says it."""
-    if not hypothesis.single:
-        return ""
-    observations = adjustment.job.observations[hypothesis.rows[0][0]]
-    names = [adjustment.job.marks.names[mark] for mark in _marks(adjustment, hypothesis)]
-    return f"{NAMES[observations.kind][0]} {between(dict(RECORD, **dict(zip(observations.roles, names, strict=True))))}"
+def _booked(blunder: Blunder) -> Iterator[str]:
+    """What stands in the book and what the network expects there."""
+    for each in blunder.booked:
+        where = each.title if each.source == blunder.name else f"{each.source}, {each.title}"
+        expected = f"; the network expects {each.expected}" if each.expected else ""
+        yield f"In the book {each.text} ({where}){expected}."
 
 
-def _errors(hypothesis: Hypothesis, errors: FloatArray, sds: FloatArray) -> str:
-    scale, unit = SMALL[hypothesis.unit]
-    return "; ".join(
-        f"{name} {decimals(error / scale, 2, signed=True)} ± {decimals(sd / scale, 2)} {unit}".strip()
-        for name, error, sd in zip(hypothesis.components, errors.tolist(), sds.tolist(), strict=True)
-    )
-
-
-def _values(hypothesis: Hypothesis, values: FloatArray | None) -> str:
-    if values is None or hypothesis.unit == "1":
-        return ""
-    degrees = 1 / ARCSEC / 3600
-    texts = [f"{decimals(value, 4)} m" if hypothesis.unit == "m" else dms(value * degrees, 1) for value in values.flat]
-    names = hypothesis.components if len(texts) == len(hypothesis.components) else ("",) * len(texts)
-    return "; ".join(f"{name} {text}".strip() for name, text in zip(names, texts, strict=True))
-
-
-def _explanation(explanation: Explanation) -> str:
-    """The mistake, what it leaves, and how it stands against all other explanations."""
-    odds = f"{explanation.odds:.0f} to 1" if explanation.odds >= 1 else f"1 to {1 / max(explanation.odds, 1e-9):.0f}"
-    text = explanation.mistake[:1].upper() + explanation.mistake[1:]
-    return f"{text}; mended, its misfit is {decimals(explanation.w_after, 1)} sd; odds {odds} against all else."
+def _capital(sentence: str) -> str:
+    return sentence[:1].upper() + sentence[1:]

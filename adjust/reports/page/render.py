@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
+from adjust.reports.decision_words import sentence
 from adjust.reports.listing import STANDING_CAUTION, job_facts, numerical_facts
 from adjust.reports.page import content
 from adjust.reports.page.blunders import blunder_words
@@ -68,6 +69,7 @@ def render_page(adjustment: Adjustment, check: Check | None = None, findings: Fi
             weights=content.weight_rows(adjustment),
             facts=job_facts(adjustment),
             numerical=numerical_facts(adjustment),
+            decisions=list(map(sentence, adjustment.job.decisions)),
             notes=adjustment.notes,
             cautions=content.page_cautions(adjustment, STANDING_CAUTION),
             figures={

@@ -1,0 +1,174 @@
+"""Blunders in words: where, by how much, what the network expects, what somebody probably did, what to do next."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from typing import TYPE_CHECKING
+
+from adjust.job import Job
+from adjust.reports.check_words import by_file
+from adjust.reports.layout import facts, paragraph, title
+from adjust.reports.wording import NAMES, between, decimals
+from adjust.units import (
+    ANGLE_ENDINGS,
+    ARCSEC,
+    DEGREE,
+    GON,
+    INTERNATIONAL_FOOT,
+    LENGTH_ENDINGS,
+    US_SURVEY_FOOT,
+    format_dms,
+)
+
+if TYPE_CHECKING:
+    from adjust.blunders import Blunder, Explanation, Findings, Hypothesis
+
+NAMED = 3
+"""Blunders in the sentence of a verdict."""
+LISTED = 100
+"""Blunders told one by one; `results.json` and `blunders.json` have them all."""
+MOST_SOURCES = 8
+"""Lines that are named of an error that many share."""
+NONE_FOUND = "The search for blunders found none."
+UNEXPLAINED = "no common mistake explains it"
+LONG, WIDE = 1.0, DEGREE
+"""Metres and radians from which on an error is told in metres or in degrees, minutes and seconds."""
+
+Small = tuple[float, str, int]
+"""SI value of a unit, its sign, decimals."""
+_MILLIMETRES: Small = (1e-3, "mm", 2)
+_FEET: dict[str, Small] = {"ft": (INTERNATIONAL_FOOT, "ft", 4), "usft": (US_SURVEY_FOOT, "US ft", 4)}
+_SECONDS: Small = (ARCSEC, '"', 2)
+_MILLIGON: Small = (GON / 1000, "mgon", 2)
+_SHARE: Small = (1e-6, "ppm", 2)
+
+
+def findings_verdict(findings: Findings) -> str:
+    """One sentence: what the search names, the plainest first."""
+    found = findings.blunders
+    if not found:
+        return NONE_FOUND
+    names = "; ".join(f"{blunder.name}, {likeliest(blunder)}" for blunder in found[:NAMED])
+    more = f"; and {len(found) - NAMED} more" if len(found) > NAMED else ""
+    return f"The search for blunders names {_number(len(found))}: {names}{more}."
+
+
+def _number(count: int) -> str:
+    return "one error" if count == 1 else f"{count} errors"
+
+
+def likeliest(blunder: Blunder) -> str:
+    """The explanation that ranks first, or that there is none."""
+    if not blunder.explanations:
+        return UNEXPLAINED
+    return f"probably {blunder.explanations[0].mistake}"
+
+
+def blunder_section(job: Job, findings: Findings | None) -> list[str]:
+    """The section of a listing; nothing where nobody searched."""
+    if findings is None:
+        return []
+    if not findings.blunders:
+        return [*title("Blunders"), *paragraph(NONE_FOUND)]
+    return [*title("Blunders"), *blunder_lines(job, findings)]
+
+
+def blunder_lines(job: Job, findings: Findings) -> list[str]:
+    """All blunders one after the other, the plainest first."""
+    lines: list[str] = []
+    for number, blunder in enumerate(findings.blunders[:LISTED], 1):
+        lines += ["", *paragraph(f"{number}. {headline(job, blunder)}"), *facts(list(_facts(blunder)))]
+    hidden = len(findings.blunders) - LISTED
+    more = f"Shown are {LISTED} of {len(findings.blunders)}, the plainest; the file for programs has them all."
+    return lines[1:] + (["", *paragraph(more)] if hidden > 0 else [])
+
+
+def headline(job: Job, blunder: Blunder) -> str:
+    """`horizontal distance 302 → 303 (distances.csv:13)`, or the name of a group and where it enters."""
+    what = what_of(job, blunder.hypothesis)
+    if what:
+        return f"{what} ({blunder.name})"
+    return f"{blunder.name} ({sources_of(blunder)})"
+
+
+def sources_of(blunder: Blunder) -> str:
+    """The lines that an error enters, file by file, at most so many."""
+    others = len(blunder.sources) - MOST_SOURCES
+    return by_file(blunder.sources[:MOST_SOURCES]) + (f" and {others} more" if others > 0 else "")
+
+
+def what_of(job: Job, hypothesis: Hypothesis) -> str:
+    """The kind and the marks of a single row; "" of a group, whose name says it."""
+    if not hypothesis.single:
+        return ""
+    observations = job.observations[hypothesis.rows[0][0]]
+    names = [job.marks.names[mark] for mark in marks_of(job, hypothesis)]
+    roles = dict.fromkeys(("at", "from", "to")) | dict(zip(observations.roles, names, strict=True))
+    component = f" {hypothesis.components[0]}" if hypothesis.components[0] and len(hypothesis.components) == 1 else ""
+    return f"{NAMES[observations.kind][0]}{component} {between(roles)}"
+
+
+def marks_of(job: Job, hypothesis: Hypothesis) -> tuple[int, ...]:
+    """The mark of a group, or the marks of a single row."""
+    if hypothesis.mark is not None:
+        return (hypothesis.mark,)
+    kind, rows = hypothesis.rows[0]
+    return tuple(job.observations[kind].marks[int(rows[0])].tolist()) if hypothesis.single else ()
+
+
+def _facts(blunder: Blunder) -> Iterator[tuple[str, str]]:
+    """Names and what they are, indented below the headline."""
+    yield "   off by", f"{off_by(blunder)}; test {decimals(blunder.test, 2)}, critical {decimals(blunder.critical, 2)}"
+    for each in blunder.booked:
+        where = each.title if each.source == blunder.name else f"{each.source}, {each.title}"
+        expected = f", expected {each.expected}" if each.expected else ""
+        yield "   in the book", f"{each.text}{expected} ({where})"
+    if blunder.alternatives:
+        others = "; or ".join(each.name for each in blunder.alternatives)
+        yield "   or instead", f"{others}: the observations cannot tell"
+    for explanation in blunder.explanations:
+        yield "   explained by", explained(explanation)
+    if not blunder.explanations:
+        yield "   explained by", f"{UNEXPLAINED}"
+    yield "   next", blunder.advice
+
+
+def explained(explanation: Explanation) -> str:
+    """The mistake, what it leaves once it is corrected, and how it stands against all others."""
+    fit = f"corrected, it fits within {decimals(explanation.w_after, 1)} sd"
+    return f"{explanation.mistake}; {fit}; odds {odds_words(explanation.odds)}"
+
+
+def odds_words(odds: float) -> str:
+    """`17 to 1`, `1 to 80`."""
+    return f"{odds:.0f} to 1" if odds >= 1.0 else f"1 to {1.0 / max(odds, 1e-9):.0f}"
+
+
+def off_by(blunder: Blunder) -> str:
+    """The estimated error with its sd, component by component, in the units of the book."""
+    unit = small_unit_of(blunder)
+    return "; ".join(
+        f"{name} {_sized(error, unit, blunder.hypothesis.unit)} ± {decimals(sd / unit[0], unit[2])} {unit[1]}".strip()
+        for name, error, sd in zip(
+            blunder.hypothesis.components, blunder.estimated_error.tolist(), blunder.sd.tolist(), strict=True
+        )
+    )
+
+
+def _sized(error: float, unit: Small, si: str) -> str:
+    """An error in a small unit; one that is none in metres, or in degrees, minutes and seconds."""
+    if si == "rad" and abs(error) >= WIDE and unit is _SECONDS:
+        return f"{'+' if error > 0 else ''}{format_dms(error, 1)}"
+    if si == "m" and abs(error) >= LONG and unit is _MILLIMETRES:
+        return f"{decimals(error, 4, signed=True)} m"
+    return decimals(error / unit[0], unit[2], signed=True)
+
+
+def small_unit_of(blunder: Blunder) -> Small:
+    """In which unit an error is told: that of small things in the unit of the book's column."""
+    ending = blunder.booked[0].title.rpartition("_")[2] if blunder.booked else ""
+    if blunder.hypothesis.unit == "1":
+        return _SHARE
+    if blunder.hypothesis.unit == "m":
+        return _FEET.get(ending, _MILLIMETRES) if ending in LENGTH_ENDINGS else _MILLIMETRES
+    return _MILLIGON if ending in ANGLE_ENDINGS and ending in ("gon", "mgon") else _SECONDS
