@@ -13,6 +13,7 @@ from hypothesis import strategies as st
 
 from adjust import Job, read_job
 from adjust.field_book.cells import EXACT, Style, table_text
+from adjust.field_book.tolerances import OWN_FIGURES
 from adjust.field_book.toml_text import toml_text
 from adjust.field_book.writing import describe_job, write_job
 from adjust.frames import GeoidGrid, PlaneFrame
@@ -20,12 +21,14 @@ from adjust.job import Datum, Statistics
 from adjust.observations import HeightDifferences, Observations
 from adjust.simulate import NETWORKS, observe, true_geometry
 from adjust.simulate.demos import DEMOS
+from adjust.tolerances import STANDARDS
 from adjust.units import ARCSEC, DEGREE
 from tests.building import build_job
 
 FIELD_DATA = Path(__file__).parent.parent / "field_data"
 RADIANS = 1e-14  # rad: a degree value of up to 360 has lost this much by conversion at most
 METRES = 1e-9  # m: millions of metres in double precision
+OWN_QUANTITIES = {figure.quantity for figure in OWN_FIGURES}
 
 
 def measured(name: str, seed: int = 1) -> tuple[Job, Job]:
@@ -251,3 +254,55 @@ def test_lengths_come_back_within_a_unit_in_the_last_place(lengths: list[float])
     values = np.array(lengths)
     read = np.array(EXACT.length("sd", values, "mm")["sd_mm"], dtype=float) * 1e-3
     assert np.all(np.abs(read - values) <= np.spacing(np.abs(values)))
+
+
+TOLERANCES = """
+standard = "ordinary"
+faces_arcsec = 12.5
+level_runs_mm_per_sqrt_km = 4
+level_loops_mm_per_sqrt_km = 7.3
+angles_arcsec_per_sqrt_n = 10
+triangles_arcsec = 9
+station_arcsec = 8
+position_ratio = 15000
+position_mm_per_sqrt_km = 30
+distances_mm = 5
+distances_ppm = 0
+vectors_mm = 0
+vectors_ppm = 2.5
+sd_factor = 2.5
+confidence = 0.99
+instrument_height_m = [0.8, 2.1]
+target_height_m = [0.0, 5]
+same_mark_m = 0.05
+"""
+SPECIFICATION = """
+horizontal_mm = 10
+height_mm = 7.5
+relative_mm = 3
+relative_ppm = 12
+height_difference_ppm = 4
+pairs = "all"
+marks = ["B", "A"]
+"""
+
+
+def test_tolerances_and_specification_come_back(tmp_path: Path) -> None:
+    """The figures agree within the 12 digits that are written."""
+    standard = next(iter(STANDARDS))
+    (tmp_path / "job.toml").write_text(
+        f"[tolerances]{TOLERANCES.replace('ordinary', standard)}\n[specification]{SPECIFICATION}", "utf-8"
+    )
+    (tmp_path / "marks.csv").write_text("mark,height_m,height_control\nA,1,fixed\nB,,\n", "utf-8")
+    (tmp_path / "levels.csv").write_text("from,to,rise_m,sd_mm\nA,B,1,1\n", "utf-8")
+    job = read_job(tmp_path)
+    back = through_a_folder(job, tmp_path / "again")
+    assert back.specification == job.specification
+    assert job.specification.own and job.specification.marks == (1, 0)
+    assert replace(back.tolerances, own={}) == replace(job.tolerances, own={})
+    assert back.tolerances.own.keys() == job.tolerances.own.keys() == OWN_QUANTITIES
+    for quantity, rules in job.tolerances.own.items():
+        for rule, again in zip(rules, back.tolerances.own[quantity], strict=True):
+            assert again.printed == rule.printed
+            for part in ("constant", "per_root", "proportional"):
+                assert getattr(again, part) == pytest.approx(getattr(rule, part), rel=1e-11, abs=0)

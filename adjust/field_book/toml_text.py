@@ -7,7 +7,7 @@ import re
 from collections.abc import Mapping
 from datetime import date
 
-Scalar = str | bool | int | float | date | list[str]
+Scalar = str | bool | int | float | date | list[str] | list[float]
 Section = Mapping[str, "Scalar | Section"]
 
 
@@ -37,10 +37,15 @@ def _value(value: Scalar) -> str:
     if isinstance(value, str):
         return _text(value)
     if isinstance(value, list):
-        return f"[{', '.join(map(_text, value))}]"
+        return f"[{', '.join(map(_value, value))}]"
     return value.isoformat() if isinstance(value, date) else repr(value)
 
 
 def _text(text: str) -> str:
     """A basic string: JSON's escapes are TOML's, but for the delete character, which TOML wants escaped."""
     return json.dumps(text, ensure_ascii=False).replace("\x7f", "\\u007F")
+
+
+def plain(value: float) -> float:
+    """A number in the unit of its key without the last digits that conversion leaves: 5.0 for 5.000000000000001."""
+    return float(f"{value:.12g}")

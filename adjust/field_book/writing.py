@@ -16,6 +16,8 @@ from adjust.field_book.cells import EXACT, Style, Table, joined, names_of, table
 from adjust.field_book.folder import JOB_FILE
 from adjust.field_book.instrument_book import InstrumentBook, InstrumentKeys
 from adjust.field_book.schema import AXES, TABLES
+from adjust.field_book.specification import specification_keys
+from adjust.field_book.tolerances import tolerance_keys
 from adjust.field_book.toml_text import toml_text
 from adjust.frames import EllipsoidFrame, PlaneFrame
 from adjust.job import Control, Job, Statistics
@@ -108,6 +110,8 @@ def _job_file(job: Job, book: InstrumentBook) -> dict[str, Any]:
     levels = {field.name: getattr(job.statistics, field.name) for field in fields(Statistics)}
     content["statistics"] = {key: value for key, value in levels.items() if value != getattr(usual, key)}
     content["datum"] = {key: value for key, value in content["datum"].items() if value}
+    content["tolerances"] = tolerance_keys(job.tolerances)
+    content["specification"] = specification_keys(job.specification, job.marks.names)
     return {key: value for key, value in content.items() if value}
 
 

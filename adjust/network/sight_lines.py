@@ -86,7 +86,7 @@ class SightLines:
         """Trigonometric height differences of the zenith angles whose distance is measured or known by now.
 
         H_to − H_at = S cos z + (1 − k) s²/2R + instrument height − target height, with s cot z for S cos z where no
-        slope distance is measured: the contract of the zenith angle solved for the height difference.
+        slope distance is measured: what a zenith angle is predicted to be, solved for the height difference.
         """
         if not self.zeniths:
             return Rises(np.empty((0, 2), dtype=np.int64), np.empty(0))

@@ -1,4 +1,4 @@
-"""A raw job as a reduced one: the contract's own tables, and what the reduction found."""
+"""A raw job as a reduced one: tables of reduced observations, and what the reduction found."""
 
 from __future__ import annotations
 

@@ -114,7 +114,7 @@ class Lines:
         return lowered
 
     def _chord_zenith(self, zenith: FloatArray, level: FloatArray) -> FloatArray:
-        """Zenith angles (rows,) as a chord would have them at its middle, radians, of the contract's ones over a level
+        """Zenith angles (rows,) as a chord would have them at its middle, radians, of the observed ones over a level
         distance s: in a plane cot z′ = cot z + (1 − k) s / 2R, on the ellipsoid z′ = z + k D / 2R − s / 2R."""
         bending = self.refraction * self.curvature
         if self.plane:
