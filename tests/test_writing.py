@@ -298,7 +298,8 @@ def test_tolerances_and_specification_come_back(tmp_path: Path) -> None:
     job = read_job(tmp_path)
     back = through_a_folder(job, tmp_path / "again")
     assert back.specification == job.specification
-    assert job.specification.own and job.specification.marks == (1, 0)
+    assert job.specification.own
+    assert job.specification.marks == (1, 0)
     assert replace(back.tolerances, own={}) == replace(job.tolerances, own={})
     assert back.tolerances.own.keys() == job.tolerances.own.keys() == OWN_QUANTITIES
     for quantity, rules in job.tolerances.own.items():

@@ -16,6 +16,8 @@ from adjust.units import ARCSEC
 
 MILLIMETRE = 1e-3
 PART_PER_MILLION = 1e-6
+PARTS = ("constant", "per_root", "proportional")
+"""Fields of a rule that make up the allowance, in their order."""
 MM_PER_ROOT_KM = per_root_kilometre(MILLIMETRE)
 
 
@@ -35,14 +37,13 @@ class OwnFigure:
 
     def rule(self, *figures: float) -> Rule:
         """The rule of figures as the keys have them."""
-        values = [
-            1.0 / figure if self.ratio else figure * unit for figure, unit in zip(figures, self.units, strict=True)
-        ]
-        return Rule(self.printed.format(*figures), **dict(zip(self.parts, values, strict=True)))
+        values = [figure * unit for figure, unit in zip(figures, self.units, strict=True)]
+        parts = dict(zip(self.parts, [1.0 / value for value in values] if self.ratio else values, strict=True))
+        return Rule(self.printed.format(*figures), *(parts.get(name, 0.0) for name in PARTS))
 
     def keys_of(self, rule: Rule) -> dict[str, float]:
         """The keys of a rule that has no other parts than these; none of another."""
-        if any(getattr(rule, part) for part in {"constant", "per_root", "proportional"} - set(self.parts)):
+        if any(getattr(rule, part) for part in PARTS if part not in self.parts):
             return {}
         values = [getattr(rule, part) for part in self.parts]
         return {
