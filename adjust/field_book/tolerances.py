@@ -39,7 +39,8 @@ class OwnFigure:
         """The rule of figures as the keys have them."""
         values = [figure * unit for figure, unit in zip(figures, self.units, strict=True)]
         parts = dict(zip(self.parts, [1.0 / value for value in values] if self.ratio else values, strict=True))
-        return Rule(self.printed.format(*figures), *(parts.get(name, 0.0) for name in PARTS))
+        constant, per_root, proportional = (parts.get(name, 0.0) for name in PARTS)
+        return Rule(self.printed.format(*figures), constant, per_root, proportional)
 
     def keys_of(self, rule: Rule) -> dict[str, float]:
         """The keys of a rule that has no other parts than these; none of another."""
