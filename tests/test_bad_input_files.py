@@ -27,6 +27,8 @@ CONTENTS: dict[str, tuple[bytes, int | None, tuple[str, ...]]] = {
     "NUL bytes": (LEVELS.replace("0.5", "0.\x005").encode(), 3, ("NUL",)),
     "a picture": (b"\x89PNG\r\n\x1a\n\0\0\0\rIHDR", 3, ("NUL",)),
     "random bytes": (bytes(range(128, 256)) * 9, 1, ("0x80", "not UTF-8")),
+    "a bell": (LEVELS.replace("0.5", "0.\x075").encode(), 3, ("U+0007", "control character", "take it out")),
+    "a next line of another computer": (ACCENTED.replace("é", "\x85").encode(), 4, ("character 8 ", "U+0085")),
     "one endless line": (b"x" * 3_000_000, 1, ("unknown column",)),
     "a web page": (b"<!DOCTYPE html>\n<html><body>503</body></html>\n", 1, ("unknown column",)),
 }
@@ -50,6 +52,13 @@ def test_a_table_that_is_none(name: str, tmp_path: Path) -> None:
 @pytest.mark.parametrize("name", ["no bytes", "a byte-order mark alone", "blank lines alone"])
 def test_an_empty_table_is_one_mistake(name: str, tmp_path: Path) -> None:
     assert len(mistakes_of(tmp_path, PLANE, {"levels.csv": CONTENTS[name][0]})) == 1
+
+
+def test_control_characters_that_an_escape_smuggles_in(tmp_path: Path) -> None:
+    job_file = 'title = "A\\u0007B"\n[frame]\nkind = "plane"\n["instruments"."T\\u0001"]\nlevel_mm_per_setup = 1\n'
+    found = mistakes_of(tmp_path, PLANE, {"job.toml": job_file.encode()})
+    assert {(mistake.line, mistake.column) for mistake in found} == {(1, "title"), (None, "instruments")}
+    assert all("control character" in mistake.message for mistake in found)
 
 
 def test_a_job_file_in_the_wrong_encoding(tmp_path: Path) -> None:

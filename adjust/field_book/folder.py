@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import re
 from pathlib import Path
 
 from adjust.field_book.mistakes import Mistakes
@@ -12,6 +13,10 @@ JOB_FILE = "job.toml"
 _WRITTEN = {"coordinates.csv", "residuals.csv"}
 _SMALLEST_JOB = 'the smallest one is the two lines `[frame]` and `kind = "plane"`'
 _BINARY = "there are NUL bytes in it: it is no text file; export the table as CSV in UTF-8"
+
+CONTROL_CHARACTER = re.compile(r"[\x01-\x08\x0b\x0c\x0e-\x1f\x7f-\x9f]")
+"""All but tabs and ends of lines: they show on no screen, make two names of one, and pages that no browser reads."""
+NOT_PRINTABLE = "is the control character U+{:04X}, which is no text; take it out"
 
 
 class Folder:
@@ -54,7 +59,7 @@ class Folder:
             self._mistakes.add(name, _line_at(content, nul), None, _BINARY)
             return None
         try:
-            return content.decode("utf-8-sig")
+            text = content.decode("utf-8-sig")
         except UnicodeDecodeError as error:
             self._mistakes.add(
                 name,
@@ -64,6 +69,16 @@ class Folder:
                 "save the file again as UTF-8",
             )
             return None
+        return self._printable(name, text)
+
+    def _printable(self, name: str, text: str) -> str | None:
+        found = CONTROL_CHARACTER.search(text)
+        if found is None:
+            return text
+        line = text.count("\n", 0, found.start()) + 1
+        place = found.start() - text.rfind("\n", 0, found.start())
+        self._mistakes.add(name, line, None, f"character {place} {NOT_PRINTABLE.format(ord(found[0]))}")
+        return None
 
     def text_of_another(self, path: Path) -> str | None:
         """The text of a file that may lie anywhere, or None as above; the fingerprint covers it under its bare name."""

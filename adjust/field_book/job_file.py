@@ -5,12 +5,13 @@ from __future__ import annotations
 import datetime
 import re
 import tomllib
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from typing import Annotated, Any, Literal
 
 from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, ValidationError
 from pydantic_core import ErrorDetails
 
+from adjust.field_book.folder import CONTROL_CHARACTER, NOT_PRINTABLE
 from adjust.field_book.mistakes import Likeness, Mistakes
 from adjust.field_book.schema import TABLES
 from adjust.units import shown
@@ -190,6 +191,8 @@ class JobFileReader:
         except (ValueError, RecursionError) as error:
             self._not_toml(error)
             return None
+        for path, code in _control_characters(content, ()):
+            self.complain(path, f"there {NOT_PRINTABLE.format(code)}")
         return self._checked(content)
 
     def _not_toml(self, error: Exception) -> None:
@@ -214,6 +217,19 @@ class JobFileReader:
             return JobFile.model_validate(content)
         except ValidationError:
             return None
+
+
+def _control_characters(content: object, path: tuple[str, ...]) -> Iterator[tuple[tuple[str, ...], int]]:
+    """Keys and values with a control character, which TOML lets an escape smuggle in: where, and its code."""
+    if isinstance(content, dict):
+        for key, value in content.items():
+            yield from _control_characters(key, path)
+            yield from _control_characters(value, (*path, key))
+    elif isinstance(content, list):
+        for entry in content:
+            yield from _control_characters(entry, path)
+    elif isinstance(content, str) and (found := CONTROL_CHARACTER.search(content)):
+        yield path, ord(found[0])
 
 
 def _remove(content: dict[str, Any], path: tuple[int | str, ...]) -> None:
