@@ -11,8 +11,10 @@ import pytest
 
 from adjust import adjust, read_job
 from adjust.blunders import find_blunders
+from adjust.job import Decision
 from adjust.network.closures import check_job
 from adjust.reports import write_reports
+from adjust.reports.blunder_words import MOST_ALTERNATIVES, UNSETTLED
 from adjust.reports.page import render_page
 from adjust.reports.wording import ARCSECONDS, MILLIMETRES
 from tests.adjusted_networks import JOBS, adjusted
@@ -181,7 +183,7 @@ def test_every_blunder_of_the_results_is_on_the_page(written):
             part = f".{name}" if name else ""
             assert {f"blunders[{place}].estimated_error{part}", f"blunders[{place}].sd{part}"} <= keys
         assert {f"blunders[{place}].test", f"blunders[{place}].critical"} <= keys
-        said = [blunder["source"] or blunder["group"], blunder["advice"], *blunder["alternatives"]]
+        said = [blunder["source"] or blunder["group"], blunder["advice"], *blunder["alternatives"][:MOST_ALTERNATIVES]]
         said += [cell[key] for cell in blunder["written"] for key in ("text", "expected") if cell[key]]
         said += [explanation["mistake"][1:] for explanation in blunder["explanations"]]
         assert all(text in words for text in said), (said, words)
@@ -247,7 +249,7 @@ def test_blunders_are_shown_with_their_explanations(searched):
         assert f"test {blunder.test:.2f}, critical {blunder.critical:.2f}" in words
         for explanation in blunder.explanations:
             assert explanation.mistake[1:] in words
-        for alternative in blunder.alternatives:
+        for alternative in blunder.alternatives[:MOST_ALTERNATIVES]:
             assert alternative.name in words
     shown = len([node for node in section.iter(f"{XHTML}li") if node.get("data-source")])
     assert shown == sum(int(table.suspect.sum()) for table in adjustment.residuals)
@@ -257,6 +259,24 @@ def test_a_search_that_finds_nothing_says_so():
     adjustment = adjusted("levelling")
     assert "The search for blunders found none." in render_page(adjustment, findings=find_blunders(adjustment))
     assert "The search for blunders" not in render_page(adjustment)
+
+
+def test_a_search_that_did_not_come_to_rest_says_so(searched):
+    adjustment, findings = searched
+    assert UNSETTLED not in render_page(adjustment, findings=findings)
+    assert UNSETTLED in render_page(adjustment, findings=replace(findings, settled=False))
+
+
+def test_decisions_are_on_the_page(searched):
+    adjustment, _ = searched
+    decision = Decision("distances.csv:13", "correct", "horizontal_m", "168.561", "168.651", HOSTILE)
+    decided = replace(adjustment, job=replace(adjustment.job, decisions=(decision,)))
+    page = render_page(decided)
+    tree = parsed(page)
+    assert HOSTILE not in page
+    said = [text_of(node) for node in tree.iter(f"{XHTML}li")]
+    assert f"distances.csv:13: horizontal_m 168.561 corrected to 168.651. Reason: {HOSTILE}." in said
+    assert "Decisions on the field book" not in render_page(adjustment)
 
 
 def test_same_job_gives_the_same_bytes(tmp_path):

@@ -27,9 +27,10 @@ def advice(
     deciding: str | None,
 ) -> str:
     """One sentence; `deciding` is the source of the observation whose repetition tells the alternatives apart."""
-    if alternatives and deciding:
+    others = [other for other in alternatives if other.name != suspect.name]
+    if others and deciding:
         return f"Measure {deciding} again: that tells which of these it is."
-    if alternatives:
+    if others:
         return (
             "No single repetition tells which of these it is: compare each with the book, and measure them all again."
         )

@@ -53,5 +53,6 @@ def _expected(suspect: Suspect, entry: Entry) -> str:
     if not np.isfinite(effect).all() or not effect.any():
         return ""
     value = written - float(suspect.context.estimated_error @ effect / (effect @ effect))
-    round_trip = angular and entry.name in ("direction", "angle", "azimuth", "circle")
-    return entry.notation.write(value % FULL_TURN if round_trip else value)
+    if angular and entry.name in ("direction", "angle", "azimuth", "circle"):
+        return entry.notation.write(value % FULL_TURN)
+    return "" if entry.name in ("slope", "horizontal") and value <= 0.0 else entry.notation.write(value)

@@ -65,3 +65,6 @@ class Findings:
     estimated: bool
     """Whether σ₀ was estimated, not taken as known."""
     state: State
+    settled: bool = True
+    """Whether the network stands where it was linearised: if not, so gross are the errors that what is named may be
+    wrong in part."""

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import numpy as np
 
-from adjust.angles import FULL_TURN
+from adjust.angles import FULL_TURN, wrapped
 from adjust.arrays import FloatArray
 from adjust.blunders.cells import cells_of
 from adjust.blunders.context import Context
@@ -39,6 +39,7 @@ def tell(found: Round, folder: str | Path | None = None) -> Findings:
         significance=diagnosis.criterion.significance,
         estimated=diagnosis.criterion.estimated,
         state=found.state,
+        settled=found.settled,
     )
 
 
@@ -87,7 +88,7 @@ class _Teller:
         return Blunder(
             hypothesis=suspect,
             sources=sources_of(self.job, suspect),
-            estimated_error=error,
+            estimated_error=wrapped(error) if suspect.unit == "rad" else error,
             sd=np.sqrt(np.diagonal(covariance)),
             expected_value=expected_value(self.job, suspect, error),
             test=test,

@@ -99,7 +99,8 @@ def _summary(job: Job, findings: Findings, adjustment: Adjustment | None) -> Rec
             "input_sha256": job.input_sha256,
             "date": job.date,
         },
-        "settled": adjustment is not None,
+        "adjusted": adjustment is not None,
+        "settled": findings.settled,
         "significance": findings.significance,
         "sd_basis": "posterior" if findings.estimated else "prior",
     }

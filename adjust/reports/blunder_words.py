@@ -27,8 +27,16 @@ NAMED = 3
 """Blunders in the sentence of a verdict."""
 LISTED = 100
 """Blunders told one by one; `results.json` and `blunders.json` have them all."""
+MOST_BOOKED = 6
+"""Cells of the book that are told of one blunder."""
+MOST_ALTERNATIVES = 8
+"""Alternatives that are named of one blunder."""
 MOST_SOURCES = 8
 """Lines that are named of an error that many share."""
+UNSETTLED = (
+    "The search did not come to rest: so gross are the errors that what is named here may be wrong in part. Mend what "
+    "is plain, look at the closures (hubtack check), and search again."
+)
 NONE_FOUND = "The search for blunders found none."
 UNEXPLAINED = "no common mistake explains it"
 LONG, WIDE = 1.0, DEGREE
@@ -80,7 +88,8 @@ def blunder_lines(job: Job, findings: Findings) -> list[str]:
         lines += ["", *paragraph(f"{number}. {headline(job, blunder)}"), *facts(list(_facts(blunder)))]
     hidden = len(findings.blunders) - LISTED
     more = f"Shown are {LISTED} of {len(findings.blunders)}, the plainest; the file for programs has them all."
-    return lines[1:] + (["", *paragraph(more)] if hidden > 0 else [])
+    ahead = [] if findings.settled else [*paragraph(UNSETTLED), ""]
+    return ahead + lines[1:] + (["", *paragraph(more)] if hidden > 0 else [])
 
 
 def headline(job: Job, blunder: Blunder) -> str:
@@ -119,18 +128,41 @@ def marks_of(job: Job, hypothesis: Hypothesis) -> tuple[int, ...]:
 def _facts(blunder: Blunder) -> Iterator[tuple[str, str]]:
     """Names and what they are, indented below the headline."""
     yield "   off by", f"{off_by(blunder)}; test {decimals(blunder.test, 2)}, critical {decimals(blunder.critical, 2)}"
-    for each in blunder.booked:
-        where = each.title if each.source == blunder.name else f"{each.source}, {each.title}"
-        expected = f", expected {each.expected}" if each.expected else ""
-        yield "   in the book", f"{each.text}{expected} ({where})"
+    yield from (("   in the book", words) for words in booked_words(blunder))
     if blunder.alternatives:
-        others = "; or ".join(each.name for each in blunder.alternatives)
-        yield "   or instead", f"{others}: the observations cannot tell"
+        yield "   or instead", f"{'; or '.join(instead_words(blunder))}: the observations cannot tell"
     for explanation in blunder.explanations:
         yield "   explained by", explained(explanation)
     if not blunder.explanations:
         yield "   explained by", f"{UNEXPLAINED}"
     yield "   next", blunder.advice
+
+
+def booked_words(blunder: Blunder) -> list[str]:
+    """What stands in the book and what the network expects there; of many readings the first ones."""
+    alone = " if it alone is wrong" if len({each.source for each in blunder.booked}) > 1 else ""
+    lines = []
+    for each in blunder.booked[:MOST_BOOKED]:
+        where = each.title if each.source == blunder.name else f"{each.source}, {each.title}"
+        expected = f", expected {each.expected}{alone}" if each.expected else ""
+        lines.append(f"{each.text}{expected} ({where})")
+    more = len(blunder.booked) - MOST_BOOKED
+    return [*lines, f"and {more} more readings"] if more > 0 else lines
+
+
+def instead_words(blunder: Blunder) -> list[str]:
+    """The names of what could stand in its place, of many the first ones."""
+    named = list(map(_instead, blunder.alternatives[:MOST_ALTERNATIVES]))
+    more = len(blunder.alternatives) - MOST_ALTERNATIVES
+    return [*named, f"one of {more} more"] if more > 0 else named
+
+
+def _instead(hypothesis: Hypothesis) -> str:
+    """What could stand in the place of a blunder: its name, and the component where it is a vector's."""
+    if hypothesis.nature == "vector":
+        return f"all of {hypothesis.name}"
+    component = hypothesis.components[0] if hypothesis.single else ""
+    return f"{hypothesis.name} {component}".strip()
 
 
 def explained(explanation: Explanation) -> str:
@@ -147,8 +179,9 @@ def odds_words(odds: float) -> str:
 def off_by(blunder: Blunder) -> str:
     """The estimated error with its sd, component by component, in the units of the book."""
     unit = small_unit_of(blunder)
+    sign = unit[1] if unit is _SECONDS else f" {unit[1]}"
     return "; ".join(
-        f"{name} {_sized(error, unit, blunder.hypothesis.unit)} ± {decimals(sd / unit[0], unit[2])} {unit[1]}".strip()
+        f"{name} {_sized(error, unit, blunder.hypothesis.unit)} ± {decimals(sd / unit[0], unit[2])}{sign}".strip()
         for name, error, sd in zip(
             blunder.hypothesis.components, blunder.estimated_error.tolist(), blunder.sd.tolist(), strict=True
         )

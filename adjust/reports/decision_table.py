@@ -9,17 +9,27 @@ from pathlib import Path
 from adjust.blunders import Blunder, Findings, Hypothesis
 from adjust.errors import OutputError
 from adjust.field_book.cells import table_text
-from adjust.field_book.decided_sheet import BLANK, OBSERVED
+from adjust.field_book.decided_sheet import BLANK
 from adjust.field_book.schema import AXES
 from adjust.field_book.written import Line, separator, written
 from adjust.job import Job
-from adjust.reports.blunder_words import likeliest, off_by, what_of
+from adjust.reports.blunder_words import MOST_ALTERNATIVES, likeliest, off_by, what_of
 from adjust.reports.publish import publish
 
 HEIGHTS = {"instrument height": "instrument_height", "target height": "target_height"}
 COORDINATES = {"east": ("easting", "longitude"), "north": ("northing", "latitude"), "up": ("height",)}
 HELD = {"east": "plan_control", "north": "plan_control", "up": "height_control"}
 FREE = "free"
+READINGS = {
+    "direction": {"direction", "circle"},
+    "angle": {"angle"},
+    "azimuth": {"azimuth"},
+    "slope_distance": {"slope"},
+    "horizontal_distance": {"horizontal"},
+    "zenith": {"zenith"},
+    "height_difference": {"rise", "backsight", "intermediate", "foresight"},
+}
+"""The columns that hold the observed value of each kind, or the readings it was made of."""
 COMMENTS = (
     "decision: keep, leave_out or correct (then value stands in place of what is written). Both need a reason.",
     "A value beside keep is a proposal and counts for nothing. Apply: hubtack adjust JOB --decisions THIS FILE",
@@ -97,7 +107,8 @@ def decision_rows(job: Job, findings: Findings, folder: Path) -> Iterator[Row]:
 
 def _instead(blunder: Blunder) -> Iterable[Hypothesis]:
     """Alternatives that are few enough rows to be decided one by one."""
-    return (each for each in blunder.alternatives if each.single or each.nature in ("control", *HEIGHTS))
+    some = blunder.alternatives[:MOST_ALTERNATIVES]
+    return (each for each in some if each.single or each.nature in ("control", *HEIGHTS))
 
 
 def _lines(job: Job, suspect: Hypothesis) -> Iterator[Place]:
@@ -158,7 +169,7 @@ def _names(job: Job, suspect: Hypothesis) -> set[str]:
         return {name for each in along for name in (*COORDINATES[each], HELD[each])}
     if observations.kind == "vector":
         return {f"d{component}" for component in suspect.components if component in AXES}
-    return {name for names in OBSERVED.values() for name in names}
+    return READINGS[observations.kind]
 
 
 def _proposals(blunder: Blunder, suspect: Hypothesis, lines: Mapping[Place, Line]) -> dict[tuple[str, str], str]:

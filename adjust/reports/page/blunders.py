@@ -9,7 +9,16 @@ from typing import TYPE_CHECKING
 from adjust.adjustment import Adjustment
 from adjust.job import Job
 from adjust.reports.blunder_records import blunder_record
-from adjust.reports.blunder_words import LISTED, UNEXPLAINED, explained, marks_of, sources_of, what_of
+from adjust.reports.blunder_words import (
+    LISTED,
+    UNEXPLAINED,
+    booked_words,
+    explained,
+    instead_words,
+    marks_of,
+    sources_of,
+    what_of,
+)
 from adjust.reports.page.content import Figure
 from adjust.reports.records import Record
 from adjust.reports.wording import decimals
@@ -64,10 +73,10 @@ def _words(job: Job, place: int, blunder: Blunder) -> BlunderWords:
         sources="" if what else sources_of(blunder),
         marks=marks_of(job, blunder.hypothesis),
         errors=tuple(_errors(record, key)),
-        booked=tuple(_booked(blunder)),
+        booked=tuple(f"In the book {words}." for words in booked_words(blunder)),
         test=Figure(decimals(record["test"], 2), record["test"], f"{key}.test"),
         critical=Figure(decimals(record["critical"], 2), record["critical"], f"{key}.critical"),
-        alternatives=tuple(each.name for each in blunder.alternatives),
+        alternatives=tuple(instead_words(blunder)),
         explanations=explanations or (f"{_capital(UNEXPLAINED)}.",),
         advice=blunder.advice,
     )
@@ -87,14 +96,6 @@ def _errors(record: Record, key: str) -> Iterator[Error]:
             Figure(decimals(sd * scale, 2), sd * scale, f"{key}.sd{part}"),
             unit,
         )
-
-
-def _booked(blunder: Blunder) -> Iterator[str]:
-    """What stands in the book and what the network expects there."""
-    for each in blunder.booked:
-        where = each.title if each.source == blunder.name else f"{each.source}, {each.title}"
-        expected = f"; the network expects {each.expected}" if each.expected else ""
-        yield f"In the book {each.text} ({where}){expected}."
 
 
 def _capital(sentence: str) -> str:

@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
+from adjust.reports.blunder_words import UNSETTLED
 from adjust.reports.decision_words import sentence
 from adjust.reports.listing import STANDING_CAUTION, job_facts, numerical_facts
 from adjust.reports.page import content
@@ -56,6 +57,7 @@ def render_page(adjustment: Adjustment, check: Check | None = None, findings: Fi
             percent=f"{100 * adjustment.job.statistics.confidence:g} %",
             suspects=content.suspects(adjustment),
             searched=findings is not None,
+            unsettled="" if findings is None or findings.settled else UNSETTLED,
             blunders=blunder_words(adjustment, findings),
             suspect_count=len(adjustment.suspects),
             test_words=content.test_words(adjustment),
