@@ -28,10 +28,11 @@ def _unwatched(stage: str, done: float) -> None:
     """Nobody watches."""
 
 
-def adjust(job: Job, progress: Progress = _unwatched) -> Adjustment:
+def adjust(job: Job, progress: Progress = _unwatched, start: Start | None = None) -> Adjustment:
     """Adjust a job by least squares.
 
-    `progress` is told the stage at work and how much of the whole is done. Raises NetworkError where the network
+    `progress` is told the stage at work and how much of the whole is done; `start` is what `find_start` found of the
+    job, if somebody asked before. Raises NetworkError where the network
     cannot be solved as given, ConvergenceError where the iteration does not settle.
     """
     unknowns = find_unknowns(job)
@@ -40,14 +41,14 @@ def adjust(job: Job, progress: Progress = _unwatched) -> Adjustment:
     progress("checking the network", 0.0)
     check_solvable(job, unknowns)
     progress("finding start coordinates", 0.05)
-    converged, notes = _converge(job, unknowns, lambda stage, done: progress(stage, 0.1 + 0.5 * done))
+    start = find_start(job, unknowns) if start is None else start
+    converged, notes = _converge(job, unknowns, start, lambda stage, done: progress(stage, 0.1 + 0.5 * done))
     progress("finding the covariance", 0.6)
     return _Assessment(job, unknowns, converged).result((*job.notes, *notes))
 
 
-def _converge(job: Job, unknowns: Unknowns, progress: Progress) -> tuple[Converged, tuple[str, ...]]:
-    """Iterate from the start coordinates given; where they lead nowhere, from others."""
-    start = find_start(job, unknowns)
+def _converge(job: Job, unknowns: Unknowns, start: Start, progress: Progress) -> tuple[Converged, tuple[str, ...]]:
+    """Iterate from the start; where that leads nowhere, from others."""
     try:
         return iterate(job, unknowns, start, progress), start.notes
     except NetworkError as failure:

@@ -99,7 +99,8 @@ def adjust_and_write(
         field_book = read_job(job, decisions)
         progress("closing loops", READ)
         check = check_job(field_book)
-        adjustment = adjust(field_book, lambda stage, done: progress(stage, READ + (ADJUSTED - READ) * done))
+        share = ADJUSTED - READ
+        adjustment = adjust(field_book, lambda stage, done: progress(stage, READ + share * done), check.start)
         progress("looking for blunders", ADJUSTED)
         findings = _search(adjustment, job)
         progress("writing the results", SEARCHED)

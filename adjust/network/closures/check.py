@@ -29,7 +29,7 @@ from adjust.network.closures.stations import Stations, station_closures
 from adjust.network.closures.suspicion import SharedLine, Suspicion, shared_lines, suspicions
 from adjust.network.closures.traverse import Traverse, traverse_at, traverse_closures
 from adjust.network.closures.vectors import vector_closures
-from adjust.network.start import find_start
+from adjust.network.start import Start, find_start
 from adjust.unknowns import find_unknowns
 
 
@@ -50,6 +50,8 @@ class Check:
     clues: tuple[Clue, ...]
     suspicions: tuple[Suspicion, ...]
     notes: tuple[str, ...]
+    start: Start | None = None
+    """The start coordinates that it was checked at, None where the observations lead to none."""
 
     @property
     def job(self) -> Job:
@@ -76,7 +78,7 @@ def check_job(job: Job) -> Check:
 
 
 def _checked(job: Job) -> Check:
-    geometry, notes = _geometry(job)
+    start, geometry, notes = _geometry(job)
     observed = Observed(job, geometry)
     lines, stations = Lines(observed), Stations(observed)
     orientations = Orientations(observed, stations)
@@ -96,6 +98,7 @@ def _checked(job: Job) -> Check:
         clues,
         tuple(narrowed(suspicion, clues) for suspicion in suspicions(checks, observed)),
         notes,
+        start,
     )
 
 
@@ -129,13 +132,14 @@ def narrowed(suspicion: Suspicion, clues: Sequence[Clue]) -> Suspicion:
     return suspicion if rows == suspicion.rows else replace(suspicion, rows=rows, marks=())
 
 
-def _geometry(job: Job) -> tuple[Geometry, tuple[str, ...]]:
+def _geometry(job: Job) -> tuple[Start | None, Geometry, tuple[str, ...]]:
     """Where the marks lie: start coordinates if the observations lead to them, else only those given."""
     try:
-        return find_start(job, find_unknowns(job)).geometry, ()
+        start = find_start(job, find_unknowns(job))
+        return start, start.geometry, ()
     except NetworkError as error:
         marks = job.marks
         given = Geometry(
             job.frame, marks.given, marks.geoid, marks.deflection, job.orthometric, job.refraction_coefficient
         )
-        return given, (f"No start coordinates, so that only given ones could be checked: {error}",)
+        return None, given, (f"No start coordinates, so that only given ones could be checked: {error}",)

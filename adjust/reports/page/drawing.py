@@ -13,6 +13,8 @@ from adjust.quality import Ellipse
 from adjust.reports.page.labels import Label, place_labels
 from adjust.reports.page.places import WIDTH, Places, find_places
 
+FEW = 1000
+"""Marks of which all pairs are compared: 24 MB for a moment."""
 LARGEST_ELLIPSE = 45.0
 """Units of the drawing that the largest semi-axis first has."""
 OF_SPACING = 0.6
@@ -150,12 +152,24 @@ def _exaggeration(places: Places, semi_major: FloatArray, heights: FloatArray) -
 
 def _spacing(places: Places) -> float:
     """The usual distance from a mark to its nearest neighbour, units."""
-    from scipy.spatial import cKDTree
-
     points = np.unique(places.positions[places.drawn], axis=0)
     if len(points) < 2:
         return WIDTH
-    return float(np.median(cKDTree(points).query(points, k=2)[0][:, 1]))
+    return float(np.median(_nearest(points)))
+
+
+def _nearest(points: FloatArray) -> FloatArray:
+    """Distance (n,) from each point to the nearest other one. Among few all are compared, sooner than a library for
+    many is loaded."""
+    if len(points) <= FEW:
+        distances = np.hypot(*(points[:, None] - points).transpose(2, 0, 1))
+        np.fill_diagonal(distances, np.inf)
+        nearest: FloatArray = distances.min(axis=1)
+        return nearest
+    from scipy.spatial import cKDTree
+
+    nearest = cKDTree(points).query(points, k=2)[0][:, 1]
+    return nearest
 
 
 def nice_below(value: float) -> float:

@@ -107,8 +107,11 @@ def _map_data(drawing: Drawing) -> dict[str, Any]:
 def _environment() -> jinja2.Environment:
     import jinja2
 
+    from adjust.reports.page.compiled import CompiledTemplates
+
     environment = jinja2.Environment(
         loader=jinja2.FileSystemLoader(TEMPLATES),
+        bytecode_cache=CompiledTemplates(TEMPLATES),
         autoescape=True,
         undefined=jinja2.StrictUndefined,
         trim_blocks=True,
