@@ -153,7 +153,9 @@ class _Finder:
             rows = self.kinds[place]
             files = rows.provenance.files
             here = np.flatnonzero(rows.provenance.file == files.index(file)) if file in files else np.arange(0)
-            effect = np.ones((len(here), 1, 1)) if nature == "distance constant" else rows.observed[here, :, None]
+            # Not the values observed: with a blunder among them, a scale would explain it.
+            expected = rows.take(here).predict(self.system.state.geometry)[:, :, None]
+            effect = np.ones((len(here), 1, 1)) if nature == "distance constant" else expected
             entries.append(Entries(place, here, np.zeros(len(here), dtype=np.int64), effect))
         for _, parts in self._gathered(entries):
             yield self._group(nature, name, parts, ("",), None)
