@@ -9,6 +9,7 @@ from adjust.observations.height_difference import HeightDifferences
 from adjust.observations.horizontal_distance import HorizontalDistances
 from adjust.observations.slope_distance import SlopeDistances
 from adjust.observations.vector import Vectors
+from adjust.observations.words import KIND_NAMES
 from adjust.observations.zenith import ZenithAngles
 
 KINDS: tuple[type[Observations], ...] = (
@@ -26,6 +27,7 @@ KINDS: tuple[type[Observations], ...] = (
 
 __all__ = [
     "KINDS",
+    "KIND_NAMES",
     "Angles",
     "Azimuths",
     "ControlCoordinates",

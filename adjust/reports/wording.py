@@ -4,20 +4,11 @@ from __future__ import annotations
 
 import math
 
+from adjust.observations import KIND_NAMES
 from adjust.reports.records import Record
 from adjust.units import format_dms
 
-NAMES = {
-    "direction": ("direction", "directions"),
-    "angle": ("angle", "angles"),
-    "azimuth": ("azimuth", "azimuths"),
-    "slope_distance": ("slope distance", "slope distances"),
-    "horizontal_distance": ("horizontal distance", "horizontal distances"),
-    "zenith": ("zenith angle", "zenith angles"),
-    "height_difference": ("height difference", "height differences"),
-    "vector": ("vector", "vectors"),
-    "control": ("control coordinate", "control coordinates"),
-}
+NAMES = KIND_NAMES
 """Of each kind: one, and many."""
 
 SHORT_NAMES = {

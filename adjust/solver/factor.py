@@ -48,6 +48,12 @@ class Factor:
         """(AᵀA)⁻¹ times a block (columns, k)."""
         return self.apply_inverse(self.apply_inverse_transposed(block))
 
+    def reweighted(self, weights: FloatArray) -> Factor:
+        """The factor of the same system with its rows multiplied by `weights` (rows,). Raises RankDefect."""
+        matrix = self.matrix.copy()
+        matrix.data = matrix.data * np.repeat(weights, np.diff(matrix.indptr))
+        return factorise(self.layout, matrix, self.right_side * weights)
+
     def selected_covariance(self, first: IntArray, second: IntArray) -> SelectedCovariance:
         """Entries C[first, second] of C = (AᵀA)⁻¹, and diag(A C Aᵀ).
 
