@@ -20,6 +20,10 @@ ACCEPTED, DOUBTFUL, UNUSABLE, UNSOLVABLE = 0, 1, 2, 3
 READ, ADJUSTED, SEARCHED = 0.15, 0.6, 0.85
 """Shares of the waiting time that lie behind when the job is read, adjusted, and searched for blunders."""
 
+MOST_SEARCHED = 100_000
+"""Observations of a job that is searched for blunders whenever it is adjusted: a search of so many takes some five
+times as long as the adjustment, and of more, longer still."""
+
 decisions_option = click.option(
     "--decisions",
     type=click.Path(path_type=Path),
@@ -109,10 +113,12 @@ def adjust_and_write(
 
 
 def _search(adjustment: Adjustment, job: Path) -> Findings | None:
-    """What a search for blunders finds; None where it cannot be made, for which the results need not wait."""
+    """What a search for blunders finds; None where it cannot be made, or would take too long."""
     from adjust.blunders import find_blunders
     from adjust.errors import NetworkError
 
+    if adjustment.solution.observations > MOST_SEARCHED:
+        return None
     try:
         return find_blunders(adjustment, job)
     except NetworkError:
@@ -129,6 +135,8 @@ def summarise(adjustment: Adjustment, findings: Findings | None, folder: Path) -
     if findings is not None and findings.blunders:
         click.echo(findings_verdict(findings))
     click.echo(f"Wrote {', '.join(REPORTS[:-1])} and {REPORTS[-1]} into {folder}.")
+    if adjustment.solution.observations > MOST_SEARCHED:
+        click.echo("Note: no blunders were searched for in so large a job; hubtack blunders searches.", err=True)
     for caution in cautions(adjustment):
         if caution not in sentence:
             click.echo(f"Caution: {caution}", err=True)

@@ -56,12 +56,33 @@ def test_the_demo_names_the_planted_blunder(tmp_path: Path) -> None:
     assert printed(3) in check.stdout
 
 
+def test_the_blunder_is_found_explained_and_decided(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    shutil.copytree(DEMO, tmp_path / "field_data" / "town_traverse")
+    monkeypatch.chdir(tmp_path)
+    commands = [line.split()[1:] for line in re.findall(r"^hubtack .*decisions\.csv$", GUIDE.read_text("utf-8"), re.M)]
+    assert [command[0] for command in commands] == ["blunders", "adjust"]
+    found = CliRunner().invoke(hubtack, commands[0], standalone_mode=False)
+    assert found.return_value == 1
+    assert printed(4) in found.stdout
+    table = Path("decisions.csv")
+    shown, edited = printed(5).splitlines(), printed(6).splitlines()
+    lines = [line for line in table.read_text("utf-8").splitlines() if not line.startswith("#")]
+    assert len(lines) == len(shown)
+    assert all(line.startswith(f"{start},") for line, start in zip(lines, shown, strict=True))
+    table.write_text("\n".join(edited) + "\n", "utf-8")
+    decided = CliRunner().invoke(hubtack, commands[1], standalone_mode=False)
+    assert decided.return_value == 0
+    assert printed(7) in decided.stdout
+    assert printed(8) in Path("field_data/town_traverse/out/listing.txt").read_text("utf-8")
+    assert Path("field_data/town_traverse/distances.csv").read_bytes() == (DEMO / "distances.csv").read_bytes()
+
+
 def test_a_letter_in_a_number_is_named_as_the_guide_says(ridge: Path) -> None:
     table = ridge / "distances.csv"
     table.write_text(table.read_text("utf-8").replace("377.623", "37a.623"), "utf-8")
     result = CliRunner().invoke(hubtack, ["adjust", str(ridge)], standalone_mode=False)
     assert result.return_value == 2
-    assert printed(4) in result.stderr
+    assert printed(9) in result.stderr
 
 
 def test_the_notebook_lines_answer(ridge: Path) -> None:

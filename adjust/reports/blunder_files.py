@@ -19,6 +19,8 @@ from adjust.reports.records import Record
 from adjust.reports.results import write_list
 
 BLUNDER_REPORTS = ("blunders.json", "blunders.txt")
+SCREEN = 20
+"""Blunders told on the screen; `blunders.txt` goes on."""
 SCHEMA = "hubtack-blunders/1"
 UNSETTLED = (
     "The adjustment does not settle with these errors in it: the search began where most observations agree, and how "
@@ -63,7 +65,7 @@ def _write_listing(job: Job, findings: Findings, adjustment: Adjustment | None, 
 
 def told(job: Job, findings: Findings, adjustment: Adjustment | None) -> list[str]:
     """What goes to the screen: what would show at all, then what was found."""
-    found = blunder_lines(job, findings) if findings.blunders else [NONE_FOUND]
+    found = blunder_lines(job, findings, SCREEN) if findings.blunders else [NONE_FOUND]
     return [*checked_lines(findings, adjustment), "", *found]
 
 

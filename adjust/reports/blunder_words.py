@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 from adjust.job import Job
 from adjust.reports.check_words import by_file
 from adjust.reports.layout import facts, paragraph, title
-from adjust.reports.wording import NAMES, between, decimals
+from adjust.reports.wording import NAMES, between, counted, decimals
 from adjust.units import (
     ANGLE_ENDINGS,
     ARCSEC,
@@ -39,6 +39,10 @@ UNSETTLED = (
 )
 NONE_FOUND = "The search for blunders found none."
 UNEXPLAINED = "no common mistake explains it"
+NARROW = 1.5
+"""A test within so many times its critical value may be chance: one sound observation in a million passes 4.9."""
+WORTH_SAYING = 0.5
+"""Sound observations that would be named, below which chance is not worth a word."""
 LONG, WIDE = 1.0, DEGREE
 """Metres and radians from which on an error is told in metres or in degrees, minutes and seconds."""
 
@@ -81,15 +85,33 @@ def blunder_section(job: Job, findings: Findings | None) -> list[str]:
     return [*title("Blunders"), *blunder_lines(job, findings)]
 
 
-def blunder_lines(job: Job, findings: Findings) -> list[str]:
-    """All blunders one after the other, the plainest first."""
+def blunder_lines(job: Job, findings: Findings, most: int = LISTED) -> list[str]:
+    """The blunders one after the other, the plainest first, `most` of them."""
     lines: list[str] = []
-    for number, blunder in enumerate(findings.blunders[:LISTED], 1):
+    for number, blunder in enumerate(findings.blunders[:most], 1):
         lines += ["", *paragraph(f"{number}. {headline(job, blunder)}"), *facts(list(_facts(blunder)))]
-    hidden = len(findings.blunders) - LISTED
-    more = f"Shown are {LISTED} of {len(findings.blunders)}, the plainest; the file for programs has them all."
-    ahead = [] if findings.settled else [*paragraph(UNSETTLED), ""]
-    return ahead + lines[1:] + (["", *paragraph(more)] if hidden > 0 else [])
+    more = f"Shown are the {most} plainest of {len(findings.blunders)}; the file for programs has them all."
+    return [
+        *([] if findings.settled else [*paragraph(UNSETTLED), ""]),
+        *lines[1:],
+        *(["", *paragraph(more)] if len(findings.blunders) > most else []),
+        *(["", *paragraph(words)] if (words := by_chance(job, findings)) else []),
+    ]
+
+
+def by_chance(job: Job, findings: Findings) -> str:
+    """How many sound observations would be named in a job of that size; "" where all that was found is far beyond."""
+    narrow = sum(blunder.test < NARROW * blunder.critical for blunder in findings.blunders)
+    observations = sum(rows.observed.size for rows in job.observations)
+    expected = findings.significance * observations
+    if not narrow or expected < WORTH_SAYING:
+        return ""
+    sound = f"about {max(expected, 1.0):.0f}"
+    return (
+        f"{counted(narrow, 'error passes its', 'errors pass their')} critical value narrowly. At a significance of "
+        f"{findings.significance:g} {sound} of {observations} observations would do so although nothing is wrong with "
+        "them: measure again before leaving one out."
+    )
 
 
 def headline(job: Job, blunder: Blunder) -> str:
