@@ -17,8 +17,9 @@ from adjust.blunders.mistakes.priors import PRIORS
 from adjust.blunders.mistakes.suspect import Suspect
 from adjust.blunders.mistakes.weighing import Weighing
 
-MOST_CHANCE = 0.05
-"""A suspect is explained when at most that share of random errors would be: the usual level of a test."""
+MOST_CHANCE = 0.04
+"""A suspect is explained when at most that share of random errors would be: the usual 5 % of a test, less the 1 % by
+which a share of the trial errors is uncertain."""
 MOST_EXPLANATIONS = 5
 """More are no help to a surveyor."""
 LEAST_ODDS = 1e-3
