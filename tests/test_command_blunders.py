@@ -337,6 +337,16 @@ def test_adjust_names_what_the_search_found(town: Path, capsys: Said) -> None:
     assert "The search for blunders names one error: distances.csv:13, probably digits 6 and 5 exchanged" in said
 
 
+def test_a_large_job_is_adjusted_without_a_search(town: Path, monkeypatch: pytest.MonkeyPatch, capsys: Said) -> None:
+    monkeypatch.setattr("cli.adjust.MOST_SEARCHED", 50)
+    assert run(["adjust", str(town)]) == 1
+    said = capsys.readouterr()
+    assert "hubtack blunders searches" in said.err
+    assert "The search for blunders" not in said.out
+    assert json.loads((town / "out" / "results.json").read_text("utf-8"))["blunders"] is None
+    assert "\nBlunders\n" not in (town / "out" / "listing.txt").read_text("utf-8")
+
+
 def test_a_watch_hears_of_the_table_of_decisions(town: Path, tmp_path: Path, capsys: Said) -> None:
     from cli.watch import signature, watch_job
 

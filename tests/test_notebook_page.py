@@ -29,7 +29,8 @@ def _lines(text: str | None) -> list[str]:
 
 
 def test_examples_print_what_the_page_shows(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    shutil.copytree(ROOT / "field_data" / "dam_control", tmp_path / "field_data" / "dam_control")
+    for name in ("dam_control", "town_traverse"):
+        shutil.copytree(ROOT / "field_data" / name, tmp_path / "field_data" / name)
     monkeypatch.chdir(tmp_path)
     examples = EXAMPLE.findall(PAGE.read_text("utf-8"))
     assert len(examples) >= 8

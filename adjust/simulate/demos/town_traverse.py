@@ -85,8 +85,8 @@ What to notice:
   part of it. Minus the residual divided by the redundancy estimates the error, here about {size:+.2f} m: two digits
   changed over, {right} written {read}.
 - `hubtack blunders field_data/town_traverse` names this one error, and what somebody probably did.
-- Nobody may mend a number that was booked, however plain the mistake. What is decided of it is kept beside the book, with
-  the reason (`--decisions`): the global test passes and no suspect is left. The user's guide goes through it. Then
+- Nobody may mend a number that was booked, however plain the mistake. What is decided of it is kept beside the book,
+  with the reason (`--decisions`): the global test passes and no suspect is left. The user's guide goes through it. Then
   measure the line again.
 """
 
