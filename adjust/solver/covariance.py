@@ -14,7 +14,7 @@ import numpy as np
 from adjust.arrays import FloatArray, IntArray
 from adjust.solver.layout import Layout
 from adjust.solver.row_variances import LOSS, careful_row_variances, quick_row_variances
-from adjust.solver.workers import one_blas_thread, side_by_side
+from adjust.solver.workers import one_blas_thread
 
 if TYPE_CHECKING:
     from adjust.solver.factor import Factor
@@ -42,15 +42,15 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
             held[number] = covariance
         pairs = wanted.of_batch(number)
         entries[wanted.order[pairs]] = covariance[wanted.slot[pairs], wanted.row[pairs], wanted.column[pairs]]
-        for run in layout.batches[number].runs:
-            rows = layout.rows[run.rows]
-            variances[rows], rounding[rows] = quick_row_variances(
-                layout.batches[number], run, factor.elements, covariance
-            )
+        batch = layout.batches[number]
+        if batch.runs:
+            rows = layout.rows[batch.rows_here]
+            found = quick_row_variances(batch, factor.elements[batch.elements_here], covariance)
+            variances[rows], rounding[rows] = found
 
     with one_blas_thread() as workers:
         for level, served in zip(reversed(layout.shapes.levels), reversed(layout.served), strict=True):
-            side_by_side(work, level, workers)
+            workers.each(work, level)
             for number in served:
                 del held[number]
         doubtful = np.flatnonzero(rounding > LOSS)
@@ -87,23 +87,27 @@ def find_pairs(layout: Layout, first: IntArray, second: IntArray) -> Pairs:
 def front_covariance(factor: Factor, number: int, held: dict[int, FloatArray]) -> FloatArray:
     """C (fronts, own + border, own + border) of the columns of each front of a batch.
 
-    With W = R_oo⁻¹ R_ob and the border's C_bb from the parents: C_ob = −W C_bb, C_oo = R_oo⁻¹ R_oo⁻ᵀ − C_ob Wᵀ.
+    With W = −R_oo⁻¹ R_ob and the border's C_bb from the parents: C_ob = W C_bb, C_oo = R_oo⁻¹ R_oo⁻ᵀ + C_ob Wᵀ.
     """
     count, own, border = factor.layout.batches[number].shape
     inverse = factor.inverses[number]
-    inside = inverse @ inverse.transpose(0, 2, 1)
-    if not border:
-        return inside
     covariance = np.empty((count, own + border, own + border))
-    outer = covariance[:, own:, own:]
-    for hand in factor.layout.to_parents[number]:
-        parents = held[hand.target]
-        at = np.minimum(hand.columns[:, :-1], parents.shape[1] - 1)
-        rows = parents[hand.into[:, None], at].transpose(0, 2, 1)  # C is symmetric: whole rows first, then columns
-        outer[hand.members] = rows[np.arange(len(at))[:, None], at]
-    reach = inverse @ factor.blocks[number][:, :, own:-1]
-    cross = reach @ outer
-    covariance[:, :own, :own] = inside + cross @ reach.transpose(0, 2, 1)
-    covariance[:, :own, own:] = -cross
-    covariance[:, own:, :own] = -cross.transpose(0, 2, 1)
+    inside, cross, outer = covariance[:, :own, :own], covariance[:, :own, own:], covariance[:, own:, own:]
+    np.matmul(inverse, inverse.transpose(0, 2, 1), out=inside)
+    if border:
+        for hand in factor.layout.to_parents[number]:
+            outer[hand.members] = taken(held[hand.target], hand.into, hand.columns[:, :-1])
+        reach = -(inverse @ factor.blocks[number][:, :, own:-1])
+        np.matmul(reach, outer, out=cross)
+        inside += cross @ reach.transpose(0, 2, 1)
+        covariance[:, own:, :own] = cross.transpose(0, 2, 1)
     return covariance
+
+
+def taken(stack: FloatArray, slots: IntArray, columns: IntArray) -> FloatArray:
+    """Rows and columns (fronts, border, border) of a stack of square blocks; columns past the last one are clipped."""
+    size = stack.shape[1]
+    columns = np.minimum(columns, size - 1)
+    rows = (slots[:, None] * size + columns) * size
+    block: FloatArray = stack.ravel().take(rows[:, :, None] + columns[:, None, :], mode="clip")
+    return block

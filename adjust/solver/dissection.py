@@ -13,7 +13,7 @@ import scipy.sparse
 
 from adjust.arrays import BoolArray, FloatArray, IntArray
 
-LEAF_COLUMNS = 40  # parts of at most this many columns are not cut: measured, see docs/performance.md
+LEAF_COLUMNS = 60  # parts of at most this many columns are not cut: measured, see docs/performance.md
 IMBALANCE_PRICE = 0.5  # × √columns: what a wholly one-sided cut would have to save in separator columns
 MOST_LOPSIDED = 0.5  # a cut leaves at least a quarter on either side, which bounds the depth of the tree
 POOR = 4.0  # × √columns: twice the separator of a plane network; beyond it hubs are looked for

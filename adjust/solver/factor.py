@@ -8,6 +8,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
+from math import prod
+from threading import local
 
 import numpy as np
 import scipy.sparse
@@ -15,12 +17,12 @@ import scipy.sparse
 from adjust.arrays import FloatArray, IntArray
 from adjust.solver.condition import condition_number
 from adjust.solver.covariance import SelectedCovariance, selected_covariance
-from adjust.solver.layout import Batch, Layout
+from adjust.solver.layout import Layout
 from adjust.solver.opinion import SecondOpinion, second_opinion
 from adjust.solver.rank import rank_defect, rank_tolerance, vanishing
 from adjust.solver.substitution import multiply_inverse, multiply_inverse_transposed, solve_down
-from adjust.solver.triangle import triangularise
-from adjust.solver.workers import one_blas_thread, side_by_side
+from adjust.solver.triangle import absorb, inverted, own_triangles
+from adjust.solver.workers import one_blas_thread
 
 
 @dataclass(frozen=True)
@@ -74,7 +76,7 @@ class Factor:
     def inverses(self) -> tuple[FloatArray, ...]:
         """Inverse (fronts, own, own) of each block's own triangle."""
         with one_blas_thread() as workers:
-            return tuple(side_by_side(invert_own, self.blocks, workers))
+            return tuple(workers.each(invert_own, self.blocks))
 
     def apply_inverse(self, right: FloatArray) -> FloatArray:
         """R⁻¹ times a block (columns, k) in the order of elimination; the result in the caller's columns."""
@@ -92,6 +94,11 @@ class Factor:
         return (inside[self.layout.tree.place].T * self.scale).T
 
 
+def invert_own(block: FloatArray) -> FloatArray:
+    """Inverse (fronts, own, own) of each front's own triangle."""
+    return inverted(own_triangles(block)).transpose(0, 2, 1)
+
+
 def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatArray) -> Factor:
     """Decompose front by front; each keeps its own rows of R and hands the rest up. Raises RankDefect."""
     scale = powers_of_two(matrix)
@@ -101,16 +108,20 @@ def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatA
     tolerance = rank_tolerance(*matrix.shape)
     blocks: list[FloatArray] = []
     left: dict[int, FloatArray] = {}
+    thread = local()
 
     def work(number: int) -> tuple[FloatArray, FloatArray]:
         batch = layout.batches[number]
+        if not hasattr(thread, "memory"):
+            thread.memory = np.empty(max(prod(batch.stack) for batch in layout.batches))
+        stack = fill(thread.memory, layout, number, elements, right, left)
+        absorb(stack, batch.piles, batch.wedges)
         _, own, border = batch.shape
-        triangle = triangularise(fill(layout, number, elements, right, left), batch.reach)
-        return triangle[:, :own].copy(), triangle[:, own : own + border, own:].copy()
+        return stack[:, :, :own].copy().transpose(0, 2, 1), stack[:, own:, own : own + border].copy()
 
     with one_blas_thread() as workers:
         for level, consumed in zip(layout.shapes.levels, layout.consumed, strict=True):
-            for number, (block, rest) in zip(level, side_by_side(work, level, workers), strict=True):
+            for number, (block, rest) in zip(level, workers.each(work, level), strict=True):
                 blocks.append(block)
                 left[number] = rest
                 place = vanishing(block, tolerance)
@@ -121,29 +132,29 @@ def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatA
     return Factor(layout, matrix, right_side, scale, elements, tuple(blocks))
 
 
-def invert_own(block: FloatArray) -> FloatArray:
-    """Inverse of the own triangle of each front of a block."""
-    return np.asarray(np.linalg.inv(block[:, :, : block.shape[1]]), dtype=float)
+def fill(
+    memory: FloatArray,
+    layout: Layout,
+    number: int,
+    elements: FloatArray,
+    right: FloatArray,
+    left: dict[int, FloatArray],
+) -> FloatArray:
+    """The stack of a batch, in `memory`: its rows of the matrix, what children left over, ones in padded columns."""
+    batch = layout.batches[number]
+    flat = memory[: prod(batch.stack)]
+    flat[:] = 0.0
+    flat[batch.targets] = elements[batch.elements_here]
+    flat[batch.right_targets] = right[batch.rows_here]
+    flat[batch.units] = 1.0
+    _, width, depth = batch.stack
+    for hand in layout.from_children[number]:
+        first = (hand.into[:, None] * width + hand.columns) * depth
+        flat[first[:, :, None] + hand.rows[:, None]] = left[hand.source][hand.members]
+    return flat.reshape(batch.stack)
 
 
 def powers_of_two(matrix: scipy.sparse.csr_array) -> FloatArray:
     """Scale (columns,) that brings column norms between 1 and 2 and rounds nothing; 1 for empty columns."""
     norms = np.sqrt(np.bincount(matrix.indices, matrix.data**2, matrix.shape[1]))
     return np.where(norms > 0, np.exp2(1.0 - np.frexp(norms)[1]), 1.0)
-
-
-def fill(
-    layout: Layout, number: int, elements: FloatArray, right: FloatArray, left: dict[int, FloatArray]
-) -> FloatArray:
-    """The stacked fronts of a batch: rows of the matrix, rows left over by children, and the ones of padded columns."""
-    batch: Batch = layout.batches[number]
-    count, own, border = batch.shape
-    width = own + border + 1
-    flat = np.zeros((count * batch.rows + 1) * width)
-    flat[batch.targets] = elements[batch.elements_here]
-    flat[batch.row_targets * width + width - 1] = right[batch.rows_here]
-    flat[batch.units] = 1.0
-    for hand in layout.from_children[number]:
-        rows = left[hand.source][hand.members]
-        flat[hand.rows[:, : rows.shape[1], None] * width + hand.columns[:, None, :]] = rows
-    return flat[:-width].reshape(count, batch.rows, width)

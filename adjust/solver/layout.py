@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import pairwise
@@ -21,14 +20,14 @@ from adjust.solver.tree import Tree
 class Handover:
     """Fronts of batch `source` that leave rows and border columns over to fronts of batch `target`.
 
-    Front `members[i]` of the source goes into front `into[i]` of the target: its row r to row `rows[i, r]` of the whole
-    stack (the one behind the last where it has no row r), its border column c to column `columns[i, c]`; the last of
+    Front `members[i]` of the source goes into front `into[i]` of the target: its row r to row `rows[i, r]` (the last
+    one, which counts for nothing, where it has no row r), its border column c to column `columns[i, c]`; the last of
     the columns is the right-hand side, and so are those that only pad the source.
     """
 
     source: int
     target: int
-    members: IntArray
+    members: IntArray | slice
     into: IntArray
     rows: IntArray
     columns: IntArray
@@ -36,7 +35,7 @@ class Handover:
 
 @dataclass(frozen=True)
 class Run:
-    """Matrix rows of one batch that have the same number of elements, in the order of the layout."""
+    """Rows of the matrix in one batch that have the same number of elements, counted within the batch."""
 
     rows: slice
     elements: slice
@@ -45,22 +44,29 @@ class Run:
 
 @dataclass(frozen=True)
 class Batch:
-    """Fronts stacked in one array (fronts, rows, own + border + 1): own columns, border columns, right-hand side.
+    """Fronts stacked in one array (fronts, columns, depth), column by column as LAPACK wants them.
 
-    `own` and `border` (fronts, …) are new column numbers, the number of columns where padded. `runs` are the batch's
-    rows and elements of the matrix in the order of the layout, `row_targets` and `targets` their places in the stack
-    and in the flat stack; `units` are the places of the ones of padded columns; `reach` (columns,) is how many rows of
-    a front begin at or before each column, at most.
+    The columns are own columns, border columns, right-hand side. Each front holds a triangle of as many rows, then the
+    rows below it (see Staircases: `piles` and `wedges` (fronts,)), and a last one for what counts for nothing. `own`
+    and `border` (fronts, …) are new column numbers, the number of columns where padded. `rows_here` and `elements_here`
+    are the batch's share of the layout's rows and elements, `runs` the same by width. `slots` (rows,) is the front of
+    each row, `columns` (elements,) the column of each element in its front; `targets` and `right_targets` are their
+    places, and those of the rows' right-hand sides, in the flat stack; `units` those of the ones of padded columns.
     """
 
     own: IntArray
     border: IntArray
-    rows: int
+    depth: int
+    piles: IntArray
+    wedges: IntArray
+    rows_here: slice
+    elements_here: slice
     runs: tuple[Run, ...]
-    row_targets: IntArray
+    slots: IntArray
+    columns: IntArray
     targets: IntArray
+    right_targets: IntArray
     units: IntArray
-    reach: IntArray
 
     @property
     def shape(self) -> tuple[int, int, int]:
@@ -68,14 +74,25 @@ class Batch:
         return len(self.own), self.own.shape[1], self.border.shape[1]
 
     @property
-    def rows_here(self) -> slice:
-        """The batch's share of the layout's rows."""
-        return slice(self.runs[0].rows.start, self.runs[-1].rows.stop) if self.runs else slice(0, 0)
+    def stack(self) -> tuple[int, int, int]:
+        """Shape of the stack: fronts, columns, depth."""
+        count, own, border = self.shape
+        return count, own + border + 1, self.depth
+
+    @cached_property
+    def row_of_element(self) -> IntArray:
+        """Row, counted within the batch, of each of its elements."""
+        return np.repeat(np.arange(len(self.slots)), self.row_sizes)
+
+    @cached_property
+    def row_starts(self) -> IntArray:
+        """First element of each row."""
+        return np.cumsum(self.row_sizes) - self.row_sizes
 
     @property
-    def elements_here(self) -> slice:
-        """The batch's share of the layout's elements."""
-        return slice(self.runs[0].elements.start, self.runs[-1].elements.stop) if self.runs else slice(0, 0)
+    def row_sizes(self) -> IntArray:
+        """Elements of each row."""
+        return np.concatenate([np.full(run.rows.stop - run.rows.start, run.width) for run in self.runs])
 
 
 @dataclass(frozen=True)
@@ -131,103 +148,107 @@ def lay_out(tree: Tree, matrix: scipy.sparse.csr_array) -> Layout:
     offsets = offsets_of(width)
     elements = np.repeat(matrix.indptr[rows] - offsets[:-1], width) + np.arange(offsets[-1])
     column = tree.position(np.repeat(front, width), tree.place[matrix.indices[elements]], shapes.own)
-    stairs = build_staircases(tree, shapes, rows, np.minimum.reduceat(column, offsets[:-1]) if len(rows) else rows)
-    height = np.zeros(len(shapes.members), dtype=np.int64)
-    np.maximum.at(height, shapes.home, np.maximum(stairs.rows, shapes.own))
-    targets = shapes.slot[front] * height[shapes.home[front]] + stairs.row_slot
-    share = Share(shapes.home[front], width, offsets, targets, np.repeat(targets * shapes.width[front], width) + column)
-    batches = build_batches(tree, shapes, stairs, height, share)
-    return Layout(tree, shapes, batches, build_handovers(tree, shapes, stairs, height), rows, elements)
+    lead = np.minimum.reduceat(column, offsets[:-1]) if len(rows) else rows
+    stairs = build_staircases(tree, shapes, front, lead)
+    share = Share(front, stairs.matrix_row, width, offsets, column)
+    depth = depths(shapes, stairs)
+    batches = build_batches(tree, shapes, stairs, depth, share)
+    return Layout(tree, shapes, batches, build_handovers(tree, shapes, stairs, depth), rows, elements)
 
 
 @dataclass(frozen=True)
 class Share:
-    """Rows of the matrix in the order of the layout: batch, width, first element, row in the stack; element targets."""
+    """Rows of the matrix in the order of the layout: front, row in it, width, first element; elements: column."""
 
-    home: IntArray
+    front: IntArray
+    row: IntArray
     width: IntArray
     offsets: IntArray
-    row_targets: IntArray
-    targets: IntArray
+    column: IntArray
 
-    def runs(self, batches: int) -> list[tuple[Run, ...]]:
-        """The rows of every batch in runs of equal width."""
-        found: list[list[Run]] = [[] for _ in range(batches)]
-        new = (np.diff(self.home, prepend=-1) != 0) | (np.diff(self.width, prepend=-1) != 0)
-        start = np.flatnonzero(new)
-        bounds = np.append(start, len(new))
-        for home, width, rows, elements in zip(
-            self.home[start].tolist(),
-            self.width[start].tolist(),
-            pairwise(bounds.tolist()),
-            pairwise(self.offsets[bounds].tolist()),
-            strict=True,
-        ):
-            found[home].append(Run(slice(*rows), slice(*elements), width))
-        return list(map(tuple, found))
+    def cuts(self, shapes: Shapes) -> tuple[IntArray, IntArray]:
+        """Where the rows and the elements of each batch begin, and behind them where the last ones end."""
+        rows = np.searchsorted(shapes.home[self.front], np.arange(len(shapes.members) + 1))
+        return rows, self.offsets[rows]
+
+    def runs(self, rows: slice) -> tuple[Run, ...]:
+        """The rows of one batch in runs of equal width."""
+        width = self.width[rows]
+        bounds = np.append(np.flatnonzero(np.diff(width, prepend=-1)), len(width))
+        ends = (offsets_of(width)[bounds]).tolist()
+        sizes = width[bounds[:-1]].tolist()
+        pieces = zip(pairwise(bounds.tolist()), pairwise(ends), sizes, strict=True)
+        return tuple(Run(slice(*down), slice(*across), size) for down, across, size in pieces)
 
 
-def build_batches(tree: Tree, shapes: Shapes, stairs: Staircases, height: IntArray, share: Share) -> tuple[Batch, ...]:
+def build_batches(tree: Tree, shapes: Shapes, stairs: Staircases, depth: IntArray, share: Share) -> tuple[Batch, ...]:
     """Cut what was laid out for all fronts into batches."""
-    count, order, none = len(shapes.members), shapes.in_order, tree.columns
+    order, none = shapes.in_order, tree.columns
     bounds, sizes, outside = offsets_of(shapes.fronts), shapes.own[order], shapes.border[order]
     own = stacked(padded_runs(tree.start, np.arange(none), order, sizes, none), bounds, sizes)
     border = stacked(padded_runs(tree.edge, tree.border, order, outside, none), bounds, outside)
-    reach = stacked(stairs.reach, bounds, shapes.width[order])
-    units = place_units(shapes, stairs, height)
-    runs = share.runs(count)
+    units = place_units(tree, shapes, depth)
+    slots = shapes.slot[share.front]
+    first = slots * shapes.width[share.front] * depth[share.front] + share.row
+    right = first + (shapes.width[share.front] - 1) * depth[share.front]
+    targets = np.repeat(first, share.width) + share.column * np.repeat(depth[share.front], share.width)
     batches = []
-    for number in range(count):
-        rows, elements = whole(run.rows for run in runs[number]), whole(run.elements for run in runs[number])
+    row_cuts, element_cuts = share.cuts(shapes)
+    for number, fronts in enumerate(shapes.members):
+        rows = slice(int(row_cuts[number]), int(row_cuts[number + 1]))
+        elements = slice(int(element_cuts[number]), int(element_cuts[number + 1]))
         batch = Batch(
             own=own[number],
             border=border[number],
-            rows=int(height[number]),
-            runs=runs[number],
-            row_targets=share.row_targets[rows],
-            targets=share.targets[elements],
+            depth=int(depth[fronts[0]]),
+            piles=stairs.piles[fronts],
+            wedges=stairs.wedges[fronts],
+            rows_here=rows,
+            elements_here=elements,
+            runs=share.runs(rows),
+            slots=slots[rows],
+            columns=share.column[elements],
+            targets=targets[elements],
+            right_targets=right[rows],
             units=units[number],
-            reach=reach[number].max(axis=0),
         )
         batches.append(batch)
     return tuple(batches)
 
 
-def whole(slices: Iterable[slice]) -> slice:
-    """One slice from adjoining ones."""
-    joined = list(slices)
-    return slice(joined[0].start, joined[-1].stop) if joined else slice(0, 0)
+def depths(shapes: Shapes, stairs: Staircases) -> IntArray:
+    """Rows held for each front: the columns' triangle, the largest pile of the batch, and one for nothing."""
+    highest = np.zeros(len(shapes.members), dtype=np.int64)
+    np.maximum.at(highest, shapes.home, stairs.piles)
+    return shapes.width + highest[shapes.home] + 1
 
 
-def place_units(shapes: Shapes, stairs: Staircases, height: IntArray) -> list[IntArray]:
-    """Places in the flat stack of each batch of the ones of padded columns."""
-    front = stairs.unit_front
-    home = shapes.home[front]
-    place = (shapes.slot[front] * height[home] + stairs.unit_slot) * shapes.width[front] + stairs.unit_column
-    order = rising(home)
-    return np.split(place[order], np.searchsorted(home[order], np.arange(1, len(height))))
+def place_units(tree: Tree, shapes: Shapes, depth: IntArray) -> list[IntArray]:
+    """Places in the flat stack of each batch of the ones of padded own columns: on the diagonals of the triangles."""
+    padding = (shapes.own - tree.own_sizes)[shapes.in_order]
+    front = np.repeat(shapes.in_order, padding)
+    column = tree.own_sizes[front] + counted(padding)
+    place = (shapes.slot[front] * shapes.width[front] + column) * depth[front] + column
+    return np.split(place, np.searchsorted(shapes.home[front], np.arange(1, len(shapes.members))))
 
 
-def build_handovers(tree: Tree, shapes: Shapes, stairs: Staircases, height: IntArray) -> tuple[Handover, ...]:
+def build_handovers(tree: Tree, shapes: Shapes, stairs: Staircases, depth: IntArray) -> tuple[Handover, ...]:
     """Every pair of batches of which one has children of the other."""
     child = np.flatnonzero((tree.parent >= 0) & (tree.border_sizes > 0))
-    pair = shapes.home[tree.parent[child]] * (len(height) + 1) + shapes.home[child]
+    pair = shapes.home[tree.parent[child]] * (len(shapes.members) + 1) + shapes.home[child]
     order = rising(pair)
     child, pair = child[order], pair[order]
     parent, border = tree.parent[child], shapes.border[child]
-    target = shapes.home[parent]
-    slots = padded_runs(tree.edge, stairs.hand_slot, child, border, -1)
-    base, behind = np.repeat(
-        [shapes.slot[parent] * height[target], shapes.fronts[target] * height[target]], border, axis=1
-    )
-    rows = np.where(slots >= 0, base + slots, behind)
+    rows = padded_runs(tree.edge, stairs.hand_row, child, border, depth[parent] - 1)
     columns = padded_runs(tree.edge, stairs.hand_column, child, border + 1, shapes.width[parent] - 1)
     bounds = np.append(np.flatnonzero(np.diff(pair, prepend=-1)), len(child))
     stacks = zip(stacked(rows, bounds, border), stacked(columns, bounds, border + 1), strict=True)
-    return tuple(
-        Handover(int(shapes.home[child[a]]), int(target[a]), shapes.slot[child[a:b]], shapes.slot[parent[a:b]], *stack)
-        for (a, b), stack in zip(pairwise(bounds.tolist()), stacks, strict=True)
-    )
+    handovers = []
+    for (a, b), (down, across) in zip(pairwise(bounds.tolist()), stacks, strict=True):
+        source, target = int(shapes.home[child[a]]), int(shapes.home[parent[a]])
+        members = slice(None) if b - a == len(shapes.members[source]) else shapes.slot[child[a:b]]
+        handovers.append(Handover(source, target, members, shapes.slot[parent[a:b]], down, across))
+    return tuple(handovers)
 
 
 def padded_runs(

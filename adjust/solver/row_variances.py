@@ -7,13 +7,15 @@ the squared norm of R⁻ᵀaᵀ, which loses the condition number only once.
 
 from __future__ import annotations
 
+from functools import cache
 from typing import TYPE_CHECKING
 
 import numpy as np
 import scipy.sparse
 
 from adjust.arrays import FloatArray, IntArray
-from adjust.solver.layout import Batch, Run
+from adjust.solver.layout import Batch
+from adjust.solver.sorting import distinct
 
 if TYPE_CHECKING:
     from adjust.solver.factor import Factor
@@ -22,26 +24,45 @@ WIDE = 24  # elements: a row with more is multiplied by the whole front, one wit
 LOSS = 1e-9  # of a row variance, which is at most 1: rounding that no redundancy number or test can feel
 
 
-def quick_row_variances(
-    batch: Batch, run: Run, elements: FloatArray, covariance: FloatArray
-) -> tuple[FloatArray, FloatArray]:
-    """a C aᵀ (rows,) of one run of a batch from the covariance of its fronts, and the rounding to expect in it."""
-    count, size, _ = covariance.shape
-    first = batch.elements_here.start
-    targets = batch.targets[run.elements.start - first : run.elements.stop - first].reshape(-1, run.width)
-    row, column = np.divmod(targets, size + 1)
-    values = elements[run.elements].reshape(-1, run.width)
-    diagonal = np.diagonal(covariance, axis1=1, axis2=2)[row // batch.rows, column]
-    terms = np.abs(values) * np.sqrt(np.maximum(diagonal, 0.0))
-    rounding = np.finfo(float).eps * terms.sum(axis=1) ** 2
-    if run.width > WIDE:
-        dense = np.zeros((count * batch.rows, size))
-        dense[row, column] = values
-        dense = dense.reshape(count, batch.rows, size)
-        return np.einsum("frc,frc->fr", dense @ covariance, dense).ravel()[row[:, 0]], rounding
-    base = row[:, :1] // batch.rows * size
-    picked = covariance.ravel()[((base + column) * size)[:, :, None] + column[:, None, :]]
-    return np.einsum("ri,rij,rj->r", values, picked, values), rounding
+def quick_row_variances(batch: Batch, elements: FloatArray, covariance: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """a C aᵀ (rows,) of the rows of a batch from the covariance of its fronts, and the rounding to expect in it.
+
+    `elements` are those of the rows, `covariance` (fronts, columns, columns).
+    """
+    size, flat = covariance.shape[1], covariance.ravel()
+    base = (batch.slots * size)[batch.row_of_element] + batch.columns
+    base *= size
+    squares = elements**2 * flat.take(base + batch.columns)
+    start = batch.row_starts
+    variances = np.add.reduceat(squares, start)
+    rounding = np.finfo(float).eps * np.add.reduceat(np.sqrt(np.maximum(squares, 0.0)), start) ** 2
+    for run in batch.runs:
+        each, column = elements[run.elements].reshape(-1, run.width), batch.columns[run.elements].reshape(-1, run.width)
+        if run.width > WIDE:
+            variances[run.rows] = wide_rows(batch.slots[run.rows], column, each, covariance)
+        else:
+            first, second = pairs_within(run.width)
+            place = base[run.elements].reshape(-1, run.width)[:, first] + column[:, second]
+            variances[run.rows] += 2.0 * (each[:, first] * each[:, second] * flat.take(place)).sum(axis=1)
+    return variances, rounding
+
+
+@cache
+def pairs_within(width: int) -> tuple[IntArray, IntArray]:
+    """All pairs of different elements of a row."""
+    first, second = np.triu_indices(width, 1)
+    return first, second
+
+
+def wide_rows(slots: IntArray, columns: IntArray, values: FloatArray, covariance: FloatArray) -> FloatArray:
+    """a C aᵀ (rows,) of rows with many elements (rows, elements), front by front."""
+    variances = np.empty(len(slots))
+    for slot in distinct(slots):
+        here = np.flatnonzero(slots == slot)
+        dense = np.zeros((len(here), covariance.shape[1]))
+        dense[np.arange(len(here))[:, None], columns[here]] = values[here]
+        variances[here] = np.einsum("rc,rc->r", dense @ covariance[slot], dense)
+    return variances
 
 
 def careful_row_variances(factor: Factor, rows: IntArray) -> FloatArray:

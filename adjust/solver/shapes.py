@@ -11,9 +11,11 @@ import numpy as np
 from adjust.arrays import IntArray
 from adjust.solver.tree import Tree
 
-STACK_ELEMENTS = 1 << 17  # in one stack of fronts: a megabyte stays near the processor; see docs/performance.md
-ALONE = 160  # columns: a front this large keeps the processor busy by itself, so that padding could only cost
-STEP = 8  # columns: fronts whose sizes differ by less are padded to the same shape
+STACK_ELEMENTS = (
+    1 << 19
+)  # in one stack of fronts: many fronts to a call of NumPy, and four megabytes that a cache holds
+ALONE = 300  # columns: a front this large keeps the processor busy by itself, so that padding could only cost
+STEP = 16  # columns: fronts whose sizes differ by less are padded to the same shape; see docs/performance.md
 
 
 @dataclass(frozen=True)

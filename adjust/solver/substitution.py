@@ -8,6 +8,7 @@ import numpy as np
 
 from adjust.arrays import FloatArray
 from adjust.solver.layout import Layout
+from adjust.solver.triangle import own_triangles, solved
 
 
 def solve_down(layout: Layout, blocks: Sequence[FloatArray]) -> FloatArray:
@@ -15,8 +16,8 @@ def solve_down(layout: Layout, blocks: Sequence[FloatArray]) -> FloatArray:
     x = np.zeros(layout.tree.columns + 1)
     for batch, block in zip(reversed(layout.batches), reversed(blocks), strict=True):
         own = batch.own.shape[1]
-        rest = block[:, :, -1:] - block[:, :, own:-1] @ x[batch.border][:, :, None]
-        x[batch.own] = np.linalg.solve(block[:, :, :own], rest)[:, :, 0]
+        rest = block[:, :, -1] - (block[:, :, own:-1] @ x[batch.border][:, :, None])[:, :, 0]
+        x[batch.own] = solved(own_triangles(block), rest)
         x[-1] = 0.0
     return x[:-1]
 

@@ -1,51 +1,46 @@
-"""Upper triangles of stacked staircase blocks by Householder reflections."""
+"""Stacks of upper triangles, column by column as LAPACK wants them: how they absorb rows, inverses, solutions."""
 
 from __future__ import annotations
 
 import numpy as np
 
 from adjust.arrays import FloatArray, IntArray
+from adjust.solver.lapack import for_each_block
 
-SMALL = 32_000  # elements: LAPACK's unblocked steps work from the processor's cache, and skip the zeros of a staircase
-PANEL = 32  # columns reflected at a time in larger blocks: measured, see docs/performance.md
-BELOW = np.tri(PANEL, k=-1)  # what a panel keeps of its reflection vectors beneath their leading ones
-DIAGONAL = np.arange(PANEL)
+PANEL = 16  # columns reflected at a time: measured, see docs/performance.md
 
 
-def triangularise(stack: FloatArray, reach: IntArray) -> FloatArray:
-    """R (blocks, columns, columns) of each block (blocks, rows, columns) of a stack, which is overwritten.
+def absorb(stack: FloatArray, piles: IntArray, wedges: IntArray) -> None:
+    """Reduce each upper triangle and the rows below it to one upper triangle by Householder reflections, in place.
 
-    Rows are sorted by first non-zero column; `reach` (columns,) is how many begin at or before each column.
+    `stack` (blocks, columns, rows) holds the blocks column by column, each with a triangle in its first rows. Of the
+    rows below that, block b has the first `piles[b]`, and the last `wedges[b]` of these begin at least one column after
+    each other, as those of an upper triangle do: their zeros are not worked on. What stands below the triangles
+    afterwards has no meaning.
     """
-    _, rows, columns = stack.shape
-    if rows * columns <= SMALL:
-        return np.asarray(np.linalg.qr(stack, mode="r"))
-    for start in range(0, min(rows, columns), PANEL):
-        end = min(start + PANEL, columns)
-        active = min(max(int(reach[end - 1]), end), rows)
-        reflect_panel(stack[:, start:active, start:], end - start)
-    return np.triu(stack[:, :columns])
+    blocks, columns, rows = stack.shape
+    panel = min(PANEL, columns)
+    factors, work = np.empty((2, panel * columns))
+    below = stack[:, :, columns:]
+    for_each_block("dtpqrt", blocks, piles, columns, wedges, panel, stack, rows, below, rows, factors, panel, work, 0)
 
 
-def reflect_panel(block: FloatArray, width: int) -> None:
-    """Triangularise the first `width` columns of each block and apply the reflections to the others, in place.
+def inverted(triangles: FloatArray) -> FloatArray:
+    """Inverse of each upper triangle (blocks, size, size), column by column as they are."""
+    blocks, size, _ = triangles.shape
+    inverses = triangles.copy()
+    for_each_block("dtrtri", blocks, "U", "N", size, inverses, size, 0)
+    return inverses
 
-    The product of the reflections is I − V T Vᵀ with T⁻¹ the upper triangle of VᵀV, 1/τ on its diagonal (Joffrain, Low,
-    Quintana-Ortí, van de Geijn & Van Zee 2006, *ACM Transactions on Mathematical Software* 32, 169–179).
-    """
-    packed, tau = np.linalg.qr(block[:, :, :width], mode="raw")
-    steps = tau.shape[1]
-    vectors, diagonal = packed.transpose(0, 2, 1)[:, :, :steps], DIAGONAL[:steps]
-    block[:, :steps, :width] = packed.transpose(0, 2, 1)[:, :steps]
-    if block.shape[2] == width:
-        return
-    vectors[:, :steps] *= BELOW[:steps, :steps]
-    vectors[:, diagonal, diagonal] = 1.0
-    if not tau.all():  # a column of zeros needs no reflection
-        vectors *= (tau != 0)[:, None, :]
-        tau = np.where(tau == 0, 1.0, tau)
-    inverse = vectors.transpose(0, 2, 1) @ vectors
-    inverse *= BELOW[:steps, :steps]
-    inverse[:, diagonal, diagonal] = 1.0 / tau
-    rest = block[:, :, width:]
-    rest -= vectors @ (np.linalg.inv(inverse) @ (vectors.transpose(0, 2, 1) @ rest))
+
+def solved(triangles: FloatArray, right: FloatArray) -> FloatArray:
+    """x (blocks, size) with R x = right (blocks, size) for each upper triangle R (blocks, size, size) by columns."""
+    blocks, size, _ = triangles.shape
+    x = right.copy()
+    for_each_block("dtrtrs", blocks, "U", "N", "N", size, 1, triangles, size, x, size, 0)
+    return x
+
+
+def own_triangles(block: FloatArray) -> FloatArray:
+    """The own triangles (fronts, own, own), column by column, of a block (fronts, own, own + border + 1) of R."""
+    return block.transpose(0, 2, 1)[:, : block.shape[1]]

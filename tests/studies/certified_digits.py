@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from fractions import Fraction
 from typing import Any
 
 import numpy as np
@@ -92,7 +93,7 @@ def by_normal_equations(matrix: FloatArray, observed: FloatArray) -> tuple[Float
 def fit(regression: Regression, solver: Solver) -> Fit:
     """All certified quantities by one method."""
     coefficients, cofactors = solver(regression.matrix, regression.observed)
-    residuals = regression.observed - regression.matrix @ coefficients
+    residuals = exact_residuals(regression, coefficients)
     squares = residuals @ residuals
     variance = squares / (len(residuals) - len(coefficients))
     about = regression.observed - (regression.observed.mean() if has_constant(regression.matrix) else 0.0)
@@ -104,6 +105,13 @@ def fit(regression: Regression, solver: Solver) -> Fit:
         "residual_sum_of_squares": squares,
     }
     return Fit({name: np.atleast_1d(value) for name, value in found.items()})
+
+
+def exact_residuals(regression: Regression, coefficients: FloatArray) -> FloatArray:
+    """Observed minus fitted, rounded once: the terms of Filip's polynomial are ten orders larger than its residuals."""
+    known = [Fraction(value) for value in coefficients.tolist()]
+    fitted = [sum(Fraction(a) * x for a, x in zip(row, known, strict=True)) for row in regression.matrix.tolist()]
+    return np.array([float(Fraction(y) - f) for y, f in zip(regression.observed.tolist(), fitted, strict=True)])
 
 
 def has_constant(matrix: FloatArray) -> bool:
