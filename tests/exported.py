@@ -17,6 +17,7 @@ from adjust.reports.check_records import check_record
 from adjust.reports.results import write_results
 from adjust.reports.saved import SavedResults
 from adjust.reports.verdict import cautions
+from adjust.reports.weights import components_of
 from adjust.standards import Specification
 from tests.adjusted_networks import JOBS, adjusted
 
@@ -42,7 +43,8 @@ def text_of(name: str) -> str:
     closures = [check_record(judged) for judged in check_job(adjustment.job).closures]
     with TemporaryDirectory() as folder:
         findings = find_blunders(adjustment)
-        write_results(adjustment, cautions(adjustment), Path(folder, "results.json"), closures, findings)
+        components = components_of(adjustment, findings)
+        write_results(adjustment, cautions(adjustment), Path(folder, "results.json"), closures, findings, components)
         return Path(folder, "results.json").read_text("utf-8")
 
 

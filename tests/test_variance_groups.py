@@ -159,7 +159,7 @@ def test_sentences() -> None:
         (nothing, {"lower": 0.01, "upper": 0.9}),
         (
             "The zenith angles behave as 12 × worse than stated (factor between 10 and 15). "
-            "Judged together, being too few each: a, b. Without 1 zenith angle too far off: zeniths.csv:7.",
+            "Judged together, being too few each: a; b. Without 1 zenith angle too far off: zeniths.csv:7.",
             {"factor": 12.2, "lower": 10.1, "upper": 15.4, "merged": ("a", "b"), "left_out": ("zeniths.csv:7",)},
         ),
     ):

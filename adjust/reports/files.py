@@ -15,6 +15,7 @@ from adjust.reports.results import write_results
 from adjust.reports.selection import Order
 from adjust.reports.tables import write_coordinates, write_residuals
 from adjust.reports.verdict import cautions
+from adjust.reports.weights import components_of
 
 if TYPE_CHECKING:
     from adjust.blunders import Findings
@@ -36,12 +37,13 @@ def write_reports(
     blunders. Raises OutputError where the folder cannot be written.
     """
     warned = cautions(adjustment)
+    components = components_of(adjustment, findings)
     closures = [] if check is None else [check_record(judged) for judged in check.closures]
     writers: dict[str, Writer] = {
-        "results.json": lambda path: write_results(adjustment, warned, path, closures, findings),
+        "results.json": lambda path: write_results(adjustment, warned, path, closures, findings, components),
         "coordinates.csv": lambda path: write_coordinates(adjustment, warned, path),
         "residuals.csv": lambda path: write_residuals(adjustment, warned, path),
-        "listing.txt": lambda path: write_listing(adjustment, order, path, check, findings),
-        "report.html": lambda path: write_page(adjustment, path, check, findings),
+        "listing.txt": lambda path: write_listing(adjustment, order, path, check, findings, components),
+        "report.html": lambda path: write_page(adjustment, path, check, findings, components),
     }
     publish(folder, writers)

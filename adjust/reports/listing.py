@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -20,10 +21,12 @@ from adjust.reports.layout import facts, paragraph, title
 from adjust.reports.reduction_text import listed_reduction
 from adjust.reports.selection import Order
 from adjust.reports.verdict import cautions, digits_left, verdict
+from adjust.reports.weights import component_section
 from adjust.reports.wording import NAMES, counted
 
 if TYPE_CHECKING:
     from adjust.blunders import Findings
+    from adjust.variance_components import VarianceComponent
 
 LISTED = 1000
 """Rows of one table, some twenty printed pages; the tables beside the listing have them all."""
@@ -42,10 +45,11 @@ def write_listing(
     path: Path,
     check: Check | None = None,
     findings: Findings | None = None,
+    components: Sequence[VarianceComponent] | None = None,
 ) -> None:
     """Write the listing; `order` is that of the observations, `check` what was said before the adjustment, `findings`
-    what a search for blunders found."""
-    lines = listing(adjustment, order, check=check, findings=findings)
+    what a search for blunders found, `components` are the variance components."""
+    lines = listing(adjustment, order, check=check, findings=findings, components=components)
     path.write_text("\n".join(lines) + "\n", encoding="utf-8", newline="\n")
 
 
@@ -55,6 +59,7 @@ def listing(
     most: int = LISTED,
     check: Check | None = None,
     findings: Findings | None = None,
+    components: Sequence[VarianceComponent] | None = None,
 ) -> list[str]:
     """The lines of the listing; no table has more than `most` rows."""
     return [
@@ -69,6 +74,7 @@ def listing(
         *listing_observations.suspects(adjustment, most),
         *listing_observations.observations(adjustment, order, most),
         *listing_marks.relative(adjustment, most),
+        *component_section(components),
         *listed_reduction(adjustment.job),
         *title("Numerical health"),
         *facts(numerical_facts(adjustment)),

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
 
@@ -13,10 +13,11 @@ from adjust.reports.blunder_records import blunder_records
 from adjust.reports.decision_words import decision_records
 from adjust.reports.records import Figures, Record, line_figures, mark_figures, number, observation_figures
 from adjust.reports.specification import specification_record, specified
-from adjust.reports.weights import weight_records
+from adjust.reports.weights import component_records, weight_records
 
 if TYPE_CHECKING:
     from adjust.blunders import Findings
+    from adjust.variance_components import VarianceComponent
 
 SCHEMA = "hubtack-results/1"
 
@@ -30,12 +31,14 @@ def write_results(
     path: Path,
     closures: Iterable[Record] = (),
     findings: Findings | None = None,
+    components: Sequence[VarianceComponent] | None = None,
 ) -> None:
     """One key a line, and one line for each mark, observation and pair, so that results compare line by line.
 
     `closures` are the records of the checks before the adjustment, as `check.json` has them; `findings` what a search
-    for blunders found, None where nobody searched. Text is made column by
-    column and some rows at a time: a million observations never stand in memory as objects.
+    for blunders found, None where nobody searched; `components` are the variance components, None where nobody asked
+    for them. Text is made column by column and some rows at a time: a million observations never stand in memory as
+    objects.
     """
     with path.open("w", encoding="utf-8", newline="\n") as file:
         file.write(f'{{\n"schema": {_ENCODER.encode(SCHEMA)},\n')
@@ -49,11 +52,9 @@ def write_results(
         write_list(file, "notes", iter(adjustment.notes))
         file.write(f'"specification": {_ENCODER.encode(specification_record(specified(adjustment)))},\n')
         write_list(file, "weights", weight_records(adjustment))
+        _write_list_or_null(file, "variance_components", None if components is None else component_records(components))
         write_list(file, "closures", iter(closures))
-        if findings is None:
-            file.write('"blunders": null,\n')
-        else:
-            write_list(file, "blunders", blunder_records(adjustment.job, findings))
+        _write_list_or_null(file, "blunders", None if findings is None else blunder_records(adjustment.job, findings))
         write_list(file, "decisions", decision_records(adjustment.job), last=True)
         file.write("}\n")
 
@@ -61,6 +62,13 @@ def write_results(
 def write_list(file: TextIO, key: str, entries: Iterator[Record] | Iterator[str], *, last: bool = False) -> None:
     """Write a list under `key`, one entry a line."""
     _write_lines(file, key, ([_ENCODER.encode(entry)] for entry in entries), last)
+
+
+def _write_list_or_null(file: TextIO, key: str, entries: Iterator[Record] | None) -> None:
+    if entries is None:
+        file.write(f'"{key}": null,\n')
+    else:
+        write_list(file, key, entries)
 
 
 def _write_records(file: TextIO, key: str, chunks: Iterator[Figures]) -> None:

@@ -199,7 +199,28 @@ class WeightRecord(Saved):
     sd_largest: Figure
     weighted_square_sum: Figure
     redundancy: Figure
-    sd_factor: Figure = Field(description="By which the sds would agree with the residuals")
+    sd_factor: Figure = Field(description="By which the sds would agree with the residuals as they stand")
+
+
+class VarianceComponentRecord(Saved):
+    """How well the sds of one group of observations were stated. None of it is applied."""
+
+    name: str
+    kind: Kind
+    instrument: str | None
+    file: str | None
+    group: str | None
+    merged: list[str] = Field(description="Groups too small by themselves that were put together here")
+    observations: int = Field(ge=0, description="Scalars that took part")
+    redundancy: Figure = Field(description="Sum of redundancy numbers, at the weights estimated")
+    factor: Figure = Field(description="Of the sds; null where too little checks the group")
+    sd: Figure = Field(description="Of the factor")
+    lower: Figure
+    upper: Figure
+    confidence: float = Field(gt=0, lt=1, description="That the limits of all groups hold together")
+    differs: bool | None = Field(description="Whether 1 lies outside the limits")
+    left_out: list[str] = Field(description="Sources of observations that took no part")
+    sentence: str
 
 
 class ClosureRecord(Saved):
@@ -287,6 +308,7 @@ class SavedResults(Saved):
     notes: list[str] = []
     specification: SpecificationRecord | None = None
     weights: list[WeightRecord] = []
+    variance_components: list[VarianceComponentRecord] | None = Field(None, description="Null: nobody asked for them")
     closures: list[ClosureRecord] = []
     blunders: list[BlunderRecord] | None = Field(None, description="The plainest first; null: nobody searched")
     decisions: list[DecisionRecord] = []

@@ -88,4 +88,4 @@ def _digits(factor: float) -> str:
 
 def _listed(names: tuple[str, ...]) -> str:
     more = f" and {len(names) - SHOWN} more" if len(names) > SHOWN else ""
-    return ", ".join(names[:SHOWN]) + more
+    return "; ".join(names[:SHOWN]) + more

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -17,7 +17,7 @@ from adjust.reports.records import Record
 from adjust.reports.selection import listed_observations
 from adjust.reports.specification import EDITION, Specified, specification_record
 from adjust.reports.verdict import cautions, verdict
-from adjust.reports.weights import weight_records
+from adjust.reports.weights import component_records, weight_records
 from adjust.reports.wording import (
     ARCSECONDS,
     MILLIMETRES,
@@ -30,6 +30,7 @@ from adjust.reports.wording import (
     small_unit,
     what,
 )
+from adjust.variance_components import VarianceComponent
 
 MOST_SUSPECTS = 200
 """Suspects of the page's own section, the worst; the table of observations has the others."""
@@ -248,9 +249,32 @@ def weight_rows(adjustment: Adjustment) -> list[WeightRow]:
         ]
         cells += [
             Figure(decimals(record[key], 2) or "–", record[key], f"weights[{place}].{key}")
-            for key in ("redundancy", "weighted_square_sum", "sd_factor")
+            for key in ("redundancy", "weighted_square_sum")
         ]
         rows.append(WeightRow(NAMES[record["kind"]][1], record, tuple(cells), unit))
+    return rows
+
+
+@dataclass(frozen=True)
+class ComponentRow:
+    """How well the sds of one group were stated, as printed."""
+
+    name: str
+    cells: tuple[Figure, ...]
+    differs: bool
+
+
+def component_rows(components: Sequence[VarianceComponent]) -> list[ComponentRow]:
+    """The variance components."""
+    rows = []
+    for place, record in enumerate(component_records(components)):
+        key = f"variance_components[{place}]"
+        cells = [Figure(str(record["observations"]), record["observations"], f"{key}.observations")]
+        cells += [
+            Figure(decimals(record[name], 2) or "–", record[name], f"{key}.{name}")
+            for name in ("redundancy", "factor", "sd", "lower", "upper")
+        ]
+        rows.append(ComponentRow(record["name"], tuple(cells), record["differs"] is True))
     return rows
 
 

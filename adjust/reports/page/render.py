@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import base64
 import hashlib
+from collections.abc import Sequence
 from functools import cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
-from adjust.reports.blunder_words import UNSETTLED
+from adjust.reports.blunder_words import UNSETTLED, none_found
 from adjust.reports.decision_words import sentence
 from adjust.reports.listing import STANDING_CAUTION, job_facts, numerical_facts
 from adjust.reports.page import content
@@ -21,24 +22,35 @@ from adjust.reports.page.observations import observations_table
 from adjust.reports.page.table import packed
 from adjust.reports.page.tables import lines_table, marks_table
 from adjust.reports.specification import specified
+from adjust.reports.weights import component_sentences
 
 if TYPE_CHECKING:
     import jinja2
 
     from adjust.blunders import Findings
+    from adjust.variance_components import VarianceComponent
 
 TEMPLATES = Path(__file__).parent / "templates"
 
 
 def write_page(
-    adjustment: Adjustment, path: Path, check: Check | None = None, findings: Findings | None = None
+    adjustment: Adjustment,
+    path: Path,
+    check: Check | None = None,
+    findings: Findings | None = None,
+    components: Sequence[VarianceComponent] | None = None,
 ) -> None:
     """Write the page of an adjustment; `check` is what was said of the job before it was adjusted, `findings` what a
-    search for blunders found."""
-    path.write_text(render_page(adjustment, check, findings), encoding="utf-8", newline="\n")
+    search for blunders found, `components` are the variance components."""
+    path.write_text(render_page(adjustment, check, findings, components), encoding="utf-8", newline="\n")
 
 
-def render_page(adjustment: Adjustment, check: Check | None = None, findings: Findings | None = None) -> str:
+def render_page(
+    adjustment: Adjustment,
+    check: Check | None = None,
+    findings: Findings | None = None,
+    components: Sequence[VarianceComponent] | None = None,
+) -> str:
     """The page as text. It holds every figure it shows and loads nothing."""
     held, drawing = specified(adjustment), draw(adjustment)
     tables = [marks_table(adjustment), observations_table(adjustment), lines_table(adjustment)]
@@ -57,6 +69,7 @@ def render_page(adjustment: Adjustment, check: Check | None = None, findings: Fi
             percent=f"{100 * adjustment.job.statistics.confidence:g} %",
             suspects=content.suspects(adjustment),
             searched=findings is not None,
+            none_found="" if findings is None else none_found(adjustment.job, findings),
             unsettled="" if findings is None or findings.settled else UNSETTLED,
             blunders=blunder_words(adjustment, findings),
             suspect_count=len(adjustment.suspects),
@@ -69,6 +82,8 @@ def render_page(adjustment: Adjustment, check: Check | None = None, findings: Fi
             closures=[] if check is None else content.closure_rows(check),
             closure_words=content.closure_words(check),
             weights=content.weight_rows(adjustment),
+            components=content.component_rows(components or ()),
+            component_words=component_sentences(components or ()),
             facts=job_facts(adjustment),
             numerical=numerical_facts(adjustment),
             decisions=list(map(sentence, adjustment.job.decisions)),
