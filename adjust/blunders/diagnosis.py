@@ -50,9 +50,9 @@ def diagnose(evidence: Evidence, criterion: Criterion, rows: int, start: tuple[i
 
     The search begins with `start`. Without one it begins with nothing and with what a robust estimate proposes.
     """
-    beginnings = [sound(evidence, start)]
+    best = find_errors(evidence, criterion, sound(evidence, start))
     if not start:
-        beginnings.append(proposal(evidence, criterion, rows))
-    choices = [find_errors(evidence, criterion, beginning) for beginning in dict.fromkeys(beginnings)]
-    best = min(choices, key=lambda choice: (choice.cost, choice.chosen))
+        other = proposal(evidence, criterion, rows, evidence.allowing(best.chosen))
+        if other != best.chosen:
+            best = min(best, find_errors(evidence, criterion, other), key=lambda choice: (choice.cost, choice.chosen))
     return Diagnosis(evidence, criterion, best.chosen)

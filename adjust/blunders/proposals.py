@@ -24,15 +24,21 @@ STEPS = 100
 """Gradient steps: errors are needed to tell large from small, not to many digits."""
 
 
-def robust_errors(evidence: Evidence, rows: int) -> FloatArray:
-    """Huber's γ (rows,) for the columns of the `rows` single components, in units of their sds; needs all of G."""
+def robust_errors(evidence: Evidence, rows: int, known: Allowed) -> FloatArray:
+    """Huber's γ (rows,) for the columns of the `rows` single components, in units of their sds; needs all of G.
+
+    The steps begin with the errors that are `known`: to gross ones they would not come in time.
+    """
     assert isinstance(evidence.information, DenseInformation)
     unit = 1.0 / np.sqrt(evidence.weight[:rows])
     matrix = evidence.information.matrix[:rows, :rows] * np.outer(unit, unit)
     score = evidence.score[:rows] * unit
     # M is a projector and correlated rows come by threes, so that no eigenvalue passes 3.
     step = 1.0 / max(3 * (3 in evidence.members), 1)
-    errors = momentum = np.zeros(rows)
+    errors = np.zeros(rows)
+    single = known.columns < rows
+    errors[known.columns[single]] = known.errors[single] / unit[known.columns[single]]
+    momentum = errors
     weight = 1.0
     for _ in range(STEPS):
         moved = momentum + step * (score - matrix @ momentum)
@@ -43,9 +49,12 @@ def robust_errors(evidence: Evidence, rows: int) -> FloatArray:
     return errors
 
 
-def proposal(evidence: Evidence, criterion: Criterion, rows: int) -> tuple[int, ...]:
-    """A set to begin with: the largest robust errors, as many as half the degrees of freedom, thinned out."""
-    errors = np.abs(robust_errors(evidence, rows))
+def proposal(evidence: Evidence, criterion: Criterion, rows: int, known: Allowed) -> tuple[int, ...]:
+    """A set to begin with: the largest robust errors, as many as half the degrees of freedom, thinned out.
+
+    What is `known` already helps to find the robust errors; they do not depend on it.
+    """
+    errors = np.abs(robust_errors(evidence, rows, known))
     order = np.argsort(-errors, kind="stable")[: evidence.freedom]
     chosen = sound(evidence, order[errors[order] > 0.0].tolist())
     return thinned(evidence.allowing(chosen), criterion)
