@@ -133,7 +133,7 @@ def summarise(adjustment: Adjustment, findings: Findings | None, folder: Path) -
     sentence = verdict(adjustment)
     click.echo(sentence)
     if findings is not None and findings.blunders:
-        click.echo(findings_verdict(findings))
+        click.echo(findings_verdict(adjustment.job, findings))
     click.echo(f"Wrote {', '.join(REPORTS[:-1])} and {REPORTS[-1]} into {folder}.")
     if adjustment.solution.observations > MOST_SEARCHED:
         click.echo("Note: no blunders were searched for in so large a job; hubtack blunders searches.", err=True)

@@ -76,6 +76,21 @@ def test_a_sound_job_is_status_0(tmp_path: Path, capsys: Said) -> None:
     assert sorted(path.name for path in (folder / "out").iterdir()) == sorted(BLUNDER_REPORTS)
 
 
+def test_a_job_without_any_check_does_not_pass_for_a_sound_one(tmp_path: Path, capsys: Said) -> None:
+    fen = tmp_path / "fen"
+    shutil.copytree(FIELD_DATA / "fen_levels", fen)
+    (fen / "levels_day1.csv").write_text("from,to,rise_m,length_km\nBM17,F1,-0.5686,0.82\n", "utf-8")
+    (fen / "levels_day2.csv").write_text("from,to,rise_m,length_km\nF1,F2,0.1,0.5\n", "utf-8")
+    marks = (fen / "marks.csv").read_text("utf-8").splitlines()
+    kept = [line for line in marks if line.startswith(("#", "mark", "BM17,", "F1,", "F2,"))]
+    (fen / "marks.csv").write_text("\n".join(kept) + "\n", "utf-8")
+    assert run(["blunders", str(fen)]) == 0
+    said = capsys.readouterr().out
+    assert "Nothing checks 2 observations, a blunder there goes unseen: levels_day1.csv:2; levels_day2.csv:2." in said
+    assert "No blunder can be found: nothing checks these observations." in said
+    assert "found none" not in said
+
+
 def test_a_blunder_is_told_as_the_book_writes_it(town: Path, capsys: Said) -> None:
     assert run(["blunders", str(town)]) == 1
     said = re.sub(r"\s+", " ", capsys.readouterr().out)

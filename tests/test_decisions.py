@@ -2,11 +2,16 @@
 
 from __future__ import annotations
 
+import csv
 import hashlib
+import io
+from contextlib import suppress
 from pathlib import Path
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from adjust import FieldDataError, Job, read_job
 from adjust.errors import Mistake
@@ -276,6 +281,40 @@ def test_a_correction_mends_a_cell_that_could_not_be_read(tmp_path: Path) -> Non
     job = decided(tmp_path, base, "distances.csv:3,correct,slope_m,316.2346,an l for a 1")
     assert job.decisions[0].written == "3l6.2346"
     assert same_job(tmp_path, job, read_job(write_folder(tmp_path / "sound", PLANE)))
+
+
+@settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(
+    rows=st.lists(
+        st.tuples(
+            st.sampled_from(["distances.csv:3", "levels.csv:2", "marks.csv:3", "x.csv:1", "distances.csv", ":", ""]),
+            st.sampled_from(["keep", "leave_out", "correct", "no", ""]),
+            st.sampled_from(["", "slope_m", "to", "use", "rise_m", "plan_control", "sd_mm", "x"]),
+            st.one_of(st.sampled_from(["1.0", "free", "A", "no", "(blank)", "", "-1"]), st.text(max_size=8)),
+            st.sampled_from(["", "because"]),
+        ),
+        max_size=4,
+    )
+)
+def test_any_table_is_carried_out_or_refused_in_words(tmp_path: Path, rows: list[tuple[str, ...]]) -> None:
+    table = io.StringIO()
+    csv.writer(table, lineterminator="\n").writerows([HEADER.split(","), *rows])
+    folder = write_folder(tmp_path / "job", PLANE)
+    before = digests(folder)
+    (tmp_path / "decisions.csv").write_text(table.getvalue(), "utf-8", newline="")
+    with suppress(FieldDataError):
+        job = read_job(folder, tmp_path / "decisions.csv")
+        assert all(decision.reason or decision.decision == "keep" for decision in job.decisions)
+    assert digests(folder) == before
+
+
+@settings(max_examples=60, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(content=st.binary(max_size=200))
+def test_what_is_no_table_is_refused_in_words(tmp_path: Path, content: bytes) -> None:
+    folder = write_folder(tmp_path / "job", PLANE)
+    (tmp_path / "decisions.csv").write_bytes(content)
+    with pytest.raises(FieldDataError):
+        read_job(folder, tmp_path / "decisions.csv")
 
 
 def test_the_table_itself_is_no_unread_table_of_the_job(tmp_path: Path) -> None:

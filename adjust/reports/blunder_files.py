@@ -10,7 +10,7 @@ from adjust.blunders import Findings
 from adjust.frames import EllipsoidFrame
 from adjust.job import Job
 from adjust.reports.blunder_records import blunder_records
-from adjust.reports.blunder_words import NONE_FOUND, blunder_lines, findings_verdict
+from adjust.reports.blunder_words import blunder_lines, findings_verdict, none_found
 from adjust.reports.decision_words import decision_records, decision_section
 from adjust.reports.detectability import detectability, detectability_lines, unchecked_words
 from adjust.reports.layout import paragraph, title
@@ -52,7 +52,7 @@ def _write_listing(job: Job, findings: Findings, adjustment: Adjustment | None, 
     lines = [
         *paragraph(heading),
         "",
-        *paragraph(findings_verdict(findings)),
+        *paragraph(findings_verdict(job, findings)),
         *decision_section(job),
         *title("What would show"),
         *checked_lines(findings, adjustment),
@@ -65,7 +65,7 @@ def _write_listing(job: Job, findings: Findings, adjustment: Adjustment | None, 
 
 def told(job: Job, findings: Findings, adjustment: Adjustment | None) -> list[str]:
     """What goes to the screen: what would show at all, then what was found."""
-    found = blunder_lines(job, findings, SCREEN) if findings.blunders else [NONE_FOUND]
+    found = blunder_lines(job, findings, SCREEN) if findings.blunders else [none_found(job, findings)]
     return [*checked_lines(findings, adjustment), "", *found]
 
 

@@ -38,6 +38,7 @@ UNSETTLED = (
     "is plain, look at the closures (hubtack check), and search again."
 )
 NONE_FOUND = "The search for blunders found none."
+NONE_CHECKED = "No blunder can be found: nothing checks these observations."
 UNEXPLAINED = "no common mistake explains it"
 NARROW = 1.5
 """A test within so many times its critical value may be chance: one sound observation in a million passes 4.9."""
@@ -55,11 +56,17 @@ _MILLIGON: Small = (GON / 1000, "mgon", 2)
 _SHARE: Small = (1e-6, "ppm", 2)
 
 
-def findings_verdict(findings: Findings) -> str:
+def none_found(job: Job, findings: Findings) -> str:
+    """That nothing was found, or that nothing could be."""
+    unchecked = len(findings.unchecked)
+    return NONE_CHECKED if unchecked and unchecked == sum(map(len, job.observations)) else NONE_FOUND
+
+
+def findings_verdict(job: Job, findings: Findings) -> str:
     """One sentence: what the search names, the plainest first."""
     found = findings.blunders
     if not found:
-        return NONE_FOUND
+        return none_found(job, findings)
     names = "; ".join(f"{blunder.name}, {likeliest(blunder)}" for blunder in found[:NAMED])
     more = f"; and {len(found) - NAMED} more" if len(found) > NAMED else ""
     return f"The search for blunders names {_number(len(found))}: {names}{more}."
@@ -81,7 +88,7 @@ def blunder_section(job: Job, findings: Findings | None) -> list[str]:
     if findings is None:
         return []
     if not findings.blunders:
-        return [*title("Blunders"), *paragraph(NONE_FOUND)]
+        return [*title("Blunders"), *paragraph(none_found(job, findings))]
     return [*title("Blunders"), *blunder_lines(job, findings)]
 
 
