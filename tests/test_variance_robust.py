@@ -10,10 +10,13 @@ from scipy.integrate import quad
 from scipy.stats import chi2
 
 from adjust import Job, adjust
-from adjust.simulate import gnss_net, levelling_net, observe, total_station_net
+from adjust.arrays import FloatArray
+from adjust.simulate import NETWORKS, gnss_net, levelling_net, observe, total_station_net
+from adjust.solver import Factor, RankDefect
 from adjust.variance_components import variance_components
 from adjust.variance_components.estimation import estimate
 from adjust.variance_components.scale import bound, bounded_scales, consistency, inefficiency
+from tests.building import exact
 from tests.planted_variances import claimed, factors, struck
 
 PLANS = {
@@ -90,6 +93,34 @@ def test_sources_named_take_no_part() -> None:
     assert next(each for each in named if each.kind == "slope_distance").left_out == (source,)
     for name, factor in factors(named).items():
         assert factor == pytest.approx(dropped[name], rel=0.01), name  # both stop within a hundredth
+
+
+def test_a_mark_that_hangs_on_rows_left_out_stays() -> None:
+    """All rows of a mark left out: the network stays determined, and the others are judged without them."""
+    job, _ = jobs("height_difference", 2, {})
+    rows = job.observations[0]
+    here = [rows.provenance.label(row) for row in np.flatnonzero((rows.marks == 5).any(axis=1)).tolist()]
+    found = variance_components(adjust(job), here)
+    assert found[0].left_out == tuple(here)
+    assert found[0].redundancy == pytest.approx(19 - len(here) + 1, abs=1e-6)
+
+
+def test_a_network_that_other_weights_leave_undetermined_is_not_judged(monkeypatch: pytest.MonkeyPatch) -> None:
+    adjustment = adjust(jobs("height_difference", 2, {})[0])
+
+    def refuse(self: Factor, weights: FloatArray) -> Factor:
+        raise RankDefect(np.array([0]), np.ones(1))
+
+    monkeypatch.setattr(Factor, "reweighted", refuse)
+    assert variance_components(adjustment) == ()
+
+
+@pytest.mark.parametrize("name", ["levelling", "mixed"])
+def test_exact_data_leave_nothing_out(name: str) -> None:
+    plan = NETWORKS[name](np.random.default_rng(1))
+    for found in variance_components(adjust(exact(plan, plan.marks.given))):
+        assert found.left_out == ()
+        assert not found.factor > 0.1
 
 
 @pytest.mark.parametrize("components", [1, 2, 3])

@@ -8,6 +8,7 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.quality import chi_square_quantile
+from adjust.solver import RankDefect
 from adjust.variance_components.component import VarianceComponent
 from adjust.variance_components.estimation import Estimate, estimate, sources
 
@@ -15,7 +16,8 @@ from adjust.variance_components.estimation import Estimate, estimate, sources
 def variance_components(
     adjustment: Adjustment, without: Collection[str] = (), *, robust: bool = True
 ) -> tuple[VarianceComponent, ...]:
-    """What the residuals say of the stated sds, group by group; empty where nothing is checked at all.
+    """What the residuals say of the stated sds, group by group; empty where nothing is checked at all, or where under
+    other weights the network is not determined to the last digits.
 
     `without` are sources of observations to leave out (`levels.csv:3`), for instance those found to be blunders. With
     `robust`, others that stand far off are left out too, and none has much influence; without, the estimate is that of
@@ -23,7 +25,10 @@ def variance_components(
     """
     if adjustment.solution.degrees_of_freedom < 1:
         return ()
-    found = estimate(adjustment, without, robust=robust)
+    try:
+        found = estimate(adjustment, without, robust=robust)
+    except RankDefect:
+        return ()
     confidence = adjustment.job.statistics.confidence
     estimated = int(np.count_nonzero(~np.isnan(found.logarithm)))
     joint = 1.0 - (1.0 - confidence) / max(estimated, 1)

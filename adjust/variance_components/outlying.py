@@ -25,7 +25,7 @@ BY_CHANCE = float(2 * ndtr(-FAR))
 """One in sixteen thousand."""
 
 LEAST_SHARE = 1e-3
-"""Of a group's variance that is left without its worst: exact data must not make every residual infinite."""
+"""Of the variance of a group that is left to judge by: exact data must not make every residual infinite."""
 
 
 @dataclass(frozen=True)
@@ -61,8 +61,8 @@ def smallest_square(fit: Fit, square: FloatArray, group: IntArray) -> FloatArray
     energy = np.bincount(group, fit.energy, len(square))[group]
     with np.errstate(invalid="ignore", divide="ignore"):
         others = np.where(freedom >= 1.0, (energy - fit.test) / freedom, np.inf)
-    known = np.minimum(square, _by_median(fit, group, len(square)))[group]
-    return np.minimum(known, np.maximum(others, LEAST_SHARE * known))
+    smallest = np.minimum(np.minimum(square, _by_median(fit, group, len(square)))[group], others)
+    return np.maximum(smallest, LEAST_SHARE * square[group])
 
 
 def _by_median(fit: Fit, group: IntArray, groups: int) -> FloatArray:
