@@ -17,8 +17,8 @@ from adjust.blunders.mistakes.priors import PRIORS
 from adjust.blunders.mistakes.suspect import Suspect
 from adjust.blunders.mistakes.weighing import Weighing
 
-MOST_CHANCE = 0.04
-"""A suspect is explained when at most that share of random errors would be: the usual 5 % of a test, less the 1 % by
+MOST_CHANCE = 0.045
+"""A suspect is explained when at most that share of random errors would be: the usual 5 % of a test, less the 0.5 % by
 which a share of the trial errors is uncertain."""
 MOST_EXPLANATIONS = 5
 """More are no help to a surveyor."""
