@@ -30,8 +30,11 @@ SETTLED = 0.1
 SETTLED_AT_LEAST = 0.01
 """Nor does a step matter that changes a factor by less than half a per cent, whatever its sd."""
 
-NEAR = 1.0
-"""Of ln σ²: farther from the solution the plain step is the safer one."""
+NEAR = 2.0
+"""Of ln σ²: farther from the solution, where sds are wrong by a factor of three, the plain step is the safer one."""
+
+SLIGHT = 1e-3
+"""Of the observations of a group: so few that change sides move its factor by less than half a per cent."""
 
 FARTHEST = 2 * np.log(100.0)
 """Of ln σ²: sds wrong by a factor of a hundred are another unit."""
@@ -84,10 +87,11 @@ class _Iteration:
             self._refit()
         for steps in range(1, MOST_STEPS + 1):
             square = self._squares()
-            if steps == MOST_STEPS or not self._change_sides(square):
+            out, back = self._change_sides(square)
+            if steps == MOST_STEPS or self._is_slight(out | back):
                 step = self._step(square)
                 self.logarithm = np.clip(self.logarithm + step, -FARTHEST, FARTHEST)
-                if steps == MOST_STEPS or self._is_small(step):
+                if steps == MOST_STEPS or (self._is_small(step) and not out.any()):
                     break
             self._refit()
         return self._estimate(steps)
@@ -111,15 +115,21 @@ class _Iteration:
             found = plain_scales(fit.energy, fit.redundancy, self.group, count)
         return np.where(self.free & np.isfinite(found), found, 1.0)
 
-    def _change_sides(self, square: FloatArray) -> bool:
-        """Set aside what stands too far off, take back what does not; whether anything changed."""
+    def _change_sides(self, square: FloatArray) -> tuple[BoolArray, BoolArray]:
+        """Set aside what stands too far off, take back what does not: which observations that were."""
         if not self.robust:
-            return False
+            return np.zeros_like(self.aside), np.zeros_like(self.aside)
         out = set_aside(self.fit, square, self.group, ~(self.aside | self.returned), self.neighbours)
         back = taken_back(self.fit, square, self.group, self.aside & ~self.named)
         self.returned |= back
         self.aside = (self.aside | out) & ~back
-        return bool(out.any() or back.any())
+        return out, back
+
+    def _is_slight(self, changed: BoolArray) -> bool:
+        """Whether few observations changed sides in every group; where many did, s² is not yet that of the others."""
+        count = len(self.groups)
+        share = np.bincount(self.group[changed], minlength=count) / np.bincount(self.group, minlength=count)
+        return bool(np.all(share <= SLIGHT))
 
     def _redundancy(self) -> FloatArray:
         """Σr (groups,)."""
