@@ -55,11 +55,10 @@ def table(columns: Sequence[Column], rows: Sequence[Sequence[str]]) -> list[str]
     """
     kept = [index for index in range(len(columns)) if any(row[index] for row in rows)]
     chosen = [columns[index] for index in kept]
-    cells = [[row[index] for index in kept] for row in rows]
-    heads = [[column.heading for column in chosen], [column.unit for column in chosen]]
-    widths = _fit(chosen, [max(len(line[place]) for line in heads + cells) for place in range(len(chosen))])
-    lines = [_line(chosen, widths, head) for head in heads if any(head)]
-    return lines + [_line(chosen, widths, row) for row in cells]
+    heads = [head for head in zip(*((column.heading, column.unit) for column in chosen), strict=True) if any(head)]
+    cells = [[*(head[place] for head in heads), *(row[index] for row in rows)] for place, index in enumerate(kept)]
+    widths = _fit(chosen, [max(map(len, column)) for column in cells])
+    return [GAP.join(line).rstrip() for line in zip(*map(_aligned, chosen, widths, cells), strict=True)]
 
 
 def _fit(columns: Sequence[Column], widths: list[int]) -> list[int]:
@@ -73,12 +72,11 @@ def _fit(columns: Sequence[Column], widths: list[int]) -> list[int]:
     return widths
 
 
-def _line(columns: Sequence[Column], widths: Sequence[int], cells: Sequence[str]) -> str:
-    parts = [
-        shortened(cell, width, column.ending).ljust(width) if column.text else cell.rjust(width)
-        for column, width, cell in zip(columns, widths, cells, strict=True)
-    ]
-    return GAP.join(parts).rstrip()
+def _aligned(column: Column, width: int, cells: Sequence[str]) -> list[str]:
+    """The cells of a column in its width."""
+    if column.text:
+        return [shortened(cell, width, column.ending).ljust(width) for cell in cells]
+    return [cell.rjust(width) for cell in cells]
 
 
 def shortened(text: str, width: int, ending: bool = False) -> str:

@@ -34,7 +34,10 @@ CONTROL_COMPONENTS = ("easting", "northing", "height")
 
 def plain(values: FloatArray) -> list[Any]:
     """Numbers of an array (n,) as Python floats, None where there is none; nothing is printed as −0."""
-    return [value if math.isfinite(value) else None for value in (values + 0.0).tolist()]
+    numbers: list[Any] = (values + 0.0).tolist()
+    if np.isfinite(values).all():
+        return numbers
+    return [value if math.isfinite(value) else None for value in numbers]
 
 
 def number(value: float | None) -> float | None:

@@ -32,8 +32,10 @@ def decimals(value: float | None, places: int, *, signed: bool = False) -> str:
     """A number with so many decimals, "" where there is none; what rounds to nothing has no sign."""
     if value is None or not math.isfinite(value):
         return ""
-    rounded = round(value, places) + 0.0
-    return f"{rounded:+.{places}f}" if signed and rounded else f"{rounded:.{places}f}"
+    text = f"{value:.{places}f}"
+    if not text.strip("-0."):
+        return text.lstrip("-")
+    return f"+{text}" if signed and value > 0.0 else text
 
 
 def dms(degrees: float | None, places: int) -> str:

@@ -30,6 +30,11 @@ class Heading:
     nature: Nature = "number"
     formula: str = ""
 
+    @property
+    def style(self) -> str:
+        """Its class in the page: figures stand right."""
+        return "c n" if self.nature in ("number", "dms") else "c"
+
 
 @dataclass(frozen=True)
 class PageTable:
@@ -67,10 +72,12 @@ class PageTable:
         return [self.headings[place] for place in self.kept]
 
     @property
-    def first_rows(self) -> list[tuple[int, list[str]]]:
-        """The rows that stand in the page itself: their number and their cells."""
+    def first_rows(self) -> list[tuple[int, list[tuple[str, str]]]]:
+        """The rows that stand in the page itself: their number, and the style and text of their cells."""
         most = len(self) if len(self) <= ROWS_IN_PAGE else ROWS_AT_ONCE
-        return [(row, [self.columns[place][row] for place in self.kept]) for row in range(most)]
+        styles = [heading.style for heading in self.shown]
+        rows = zip(*(self.columns[place][:most] for place in self.kept), strict=True)
+        return [(row, list(zip(styles, cells, strict=True))) for row, cells in enumerate(rows)]
 
     def data(self) -> dict[str, Any]:
         """The whole table for the script."""
