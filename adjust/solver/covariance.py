@@ -14,6 +14,7 @@ import numpy as np
 from adjust.arrays import FloatArray, IntArray
 from adjust.solver.layout import Layout
 from adjust.solver.row_variances import LOSS, careful_row_variances, quick_row_variances
+from adjust.solver.sorting import rising
 from adjust.solver.workers import one_blas_thread
 
 if TYPE_CHECKING:
@@ -41,7 +42,7 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
         if layout.from_children[number]:
             held[number] = covariance
         pairs = wanted.of_batch(number)
-        entries[wanted.order[pairs]] = covariance[wanted.slot[pairs], wanted.row[pairs], wanted.column[pairs]]
+        entries[wanted.order[pairs]] = covariance.ravel().take(wanted.place[pairs])
         batch = layout.batches[number]
         if batch.runs:
             rows = layout.rows[batch.rows_here]
@@ -60,12 +61,10 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
 
 @dataclass(frozen=True)
 class Pairs:
-    """Pairs of columns sorted by batch (`order`): the front's `slot`, `row` and `column` of each, `cuts` by batch."""
+    """Pairs of columns sorted by batch (`order`), the `place` of each in the flat covariances, `cuts` by batch."""
 
     order: IntArray
-    slot: IntArray
-    row: IntArray
-    column: IntArray
+    place: IntArray
     cuts: IntArray
 
     def of_batch(self, number: int) -> slice:
@@ -76,12 +75,14 @@ class Pairs:
 def find_pairs(layout: Layout, first: IntArray, second: IntArray) -> Pairs:
     """The front that holds each pair of columns: that of the column eliminated first."""
     tree, shapes = layout.tree, layout.shapes
-    front = np.minimum(tree.owner[tree.place[first]], tree.owner[tree.place[second]])
-    order = np.argsort(shapes.home[front], kind="stable")
+    first, second = tree.place[first], tree.place[second]
+    front = tree.owner[np.minimum(first, second)]
+    order = rising(shapes.home[front])
     front = front[order]
-    row, column = (tree.position(front, tree.place[end[order]], shapes.own) for end in (first, second))
+    row, column = (tree.position(front, end[order], shapes.own) for end in (first, second))
+    size = (shapes.own + shapes.border)[front]
     cuts = np.searchsorted(shapes.home[front], np.arange(len(layout.batches) + 1))
-    return Pairs(order, shapes.slot[front], row, column, cuts)
+    return Pairs(order, (shapes.slot[front] * size + row) * size + column, cuts)
 
 
 def front_covariance(factor: Factor, number: int, held: dict[int, FloatArray]) -> FloatArray:
@@ -90,24 +91,16 @@ def front_covariance(factor: Factor, number: int, held: dict[int, FloatArray]) -
     With W = −R_oo⁻¹ R_ob and the border's C_bb from the parents: C_ob = W C_bb, C_oo = R_oo⁻¹ R_oo⁻ᵀ + C_ob Wᵀ.
     """
     count, own, border = factor.layout.batches[number].shape
-    inverse = factor.inverses[number]
+    inverse = factor.inverse(number)
     covariance = np.empty((count, own + border, own + border))
     inside, cross, outer = covariance[:, :own, :own], covariance[:, :own, own:], covariance[:, own:, own:]
     np.matmul(inverse, inverse.transpose(0, 2, 1), out=inside)
     if border:
         for hand in factor.layout.to_parents[number]:
-            outer[hand.members] = taken(held[hand.target], hand.into, hand.columns[:, :-1])
+            places = hand.corners[:, :, None] + hand.columns[:, None, :]
+            outer[hand.members] = held[hand.target].ravel().take(places, mode="clip")
         reach = -(inverse @ factor.blocks[number][:, :, own:-1])
         np.matmul(reach, outer, out=cross)
         inside += cross @ reach.transpose(0, 2, 1)
         covariance[:, own:, :own] = cross.transpose(0, 2, 1)
     return covariance
-
-
-def taken(stack: FloatArray, slots: IntArray, columns: IntArray) -> FloatArray:
-    """Rows and columns (fronts, border, border) of a stack of square blocks; columns past the last one are clipped."""
-    size = stack.shape[1]
-    columns = np.minimum(columns, size - 1)
-    rows = (slots[:, None] * size + columns) * size
-    block: FloatArray = stack.ravel().take(rows[:, :, None] + columns[:, None, :], mode="clip")
-    return block

@@ -12,8 +12,9 @@ import numpy as np
 import scipy.sparse
 
 from adjust.arrays import BoolArray, FloatArray, IntArray
+from adjust.solver.sorting import rising
 
-LEAF_COLUMNS = 60  # parts of at most this many columns are not cut: measured, see docs/performance.md
+LEAF_COLUMNS = 48  # parts of at most this many columns are not cut: measured, see docs/performance.md
 IMBALANCE_PRICE = 0.5  # × √columns: what a wholly one-sided cut would have to save in separator columns
 MOST_LOPSIDED = 0.5  # a cut leaves at least a quarter on either side, which bounds the depth of the tree
 POOR = 4.0  # × √columns: twice the separator of a plane network; beyond it hubs are looked for
@@ -38,58 +39,71 @@ def dissect(pairs: IntArray, sizes: IntArray, positions: FloatArray | None, tied
     `tied` groups are put into the root. No pair ever joins two nodes of which neither is an ancestor of the other.
     """
     node = np.where(sizes > 0, 1, 0)
-    if positions is None:
-        positions = np.full((len(sizes), 2), np.nan)
+    lie = np.full((2, len(sizes)), np.nan) if positions is None else np.ascontiguousarray(positions.T)
+    turns = np.array([ranks(np.argsort(along, kind="stable")) for along in lie])
     moving = np.flatnonzero((sizes > 0) & ~tied)
+    part, ends = np.zeros_like(moving), np.ascontiguousarray(pairs.T)
     while True:
-        level = open_level(node, moving, pairs, sizes)
+        level = open_level(moving, part, ends, sizes)
         if not len(level.members):
             return node
-        pairs = level.members[level.ends]
-        moving = cut_level(node, level, positions[level.members])
+        ends = level.members.take(level.ends.T)
+        order = line_up(level, lie.take(level.members, axis=1), turns.take(level.members, axis=1))
+        moving, part = cut_level(node, level, order)
 
 
-def open_level(node: IntArray, moving: IntArray, pairs: IntArray, sizes: IntArray) -> Level:
-    """The parts still to be cut, and the pairs within them."""
-    order = moving[np.argsort(node[moving], kind="stable")]
-    part = np.cumsum(np.diff(node[order], prepend=0) > 0) - 1
-    large = np.bincount(part, sizes[order]) > LEAF_COLUMNS
-    kept = large[part]
-    members = order[kept]
-    number = np.full(len(node), -1)
-    number[members] = np.arange(len(members))
-    ends = number[pairs]
-    inside = (ends.min(axis=1, initial=0) >= 0) & (node[pairs[:, 0]] == node[pairs[:, 1]])
-    part = (np.cumsum(large) - 1)[part[kept]]
-    return Level(members, part, int(np.count_nonzero(large)), ends[inside], sizes[members])
+def ranks(order: IntArray) -> IntArray:
+    """Place of each member in an order."""
+    place = np.empty_like(order)
+    place[order] = np.arange(len(order))
+    return place
 
 
-def cut_level(node: IntArray, level: Level, positions: FloatArray) -> IntArray:
-    """Cut every part once. Separators and parts not worth cutting stay; returns the groups moved on to child nodes."""
-    above, separator = best_cuts(level, line_up(level, positions))
+def open_level(moving: IntArray, part: IntArray, ends: IntArray, sizes: IntArray) -> Level:
+    """The parts still to be cut, given the groups `moving`, a number for the `part` of each, and ends (2, pairs)."""
+    order = rising(part)
+    members, part = moving[order], part[order]
+    part = np.cumsum(np.diff(part, prepend=-1) > 0) - 1
+    large = np.bincount(part, sizes[members]) > LEAF_COLUMNS
+    kept = np.flatnonzero(large[part])
+    members, part = members[kept], (np.cumsum(large) - 1)[part[kept]]
+    number, home = np.full((2, len(sizes)), -1)
+    number[members], home[members] = np.arange(len(members)), part
+    first, second = home.take(ends)
+    inside = np.flatnonzero((first == second) & (first >= 0))
+    return Level(members, part, int(np.count_nonzero(large)), number.take(ends.take(inside, axis=1)).T, sizes[members])
+
+
+def cut_level(node: IntArray, level: Level, order: IntArray) -> tuple[IntArray, IntArray]:
+    """Cut every part once along `order`. Separators and parts not worth cutting stay.
+
+    Returns the groups moved on to child nodes and a number for the part that each of them is in.
+    """
+    above, separator = best_cuts(level, order)
     total = np.bincount(level.part, level.weight)
     poor = np.bincount(level.part, level.weight * separator) > POOR * np.sqrt(total)
     if poor.any():
         separator = np.where(poor[level.part], smallest_cover(level, above), separator)
     split = np.bincount(level.part, above & ~separator) * np.bincount(level.part, ~above & ~separator) > 0
     worth = split & (np.bincount(level.part, level.weight * separator) <= SEPARATOR_SHARE * total)
-    moves = ~separator & worth[level.part]
+    moves = np.flatnonzero(~separator & worth[level.part])
     moved = level.members[moves]
     node[moved] = 2 * node[moved] + above[moves]
-    return np.asarray(moved)
+    return moved, 2 * level.part[moves] + above[moves]
 
 
-def line_up(level: Level, positions: FloatArray) -> IntArray:
-    """Order in which to cut each part: along its longer extent, or breadth first where a position is unknown."""
+def line_up(level: Level, lie: FloatArray, turns: IntArray) -> IntArray:
+    """Order in which to cut each part: along its longer extent, or breadth first where a position is unknown.
+
+    `lie` (2, members) are the coordinates along two axes, `turns` (2, members) the members' turns in their order.
+    """
     first = np.searchsorted(level.part, np.arange(level.parts))
-    extent = np.maximum.reduceat(positions, first) - np.minimum.reduceat(positions, first)
-    along = np.where(extent[:, 0] >= extent[:, 1], 0, 1)[level.part]
-    key = positions[np.arange(len(positions)), along]
-    unknown = np.isnan(extent).any(axis=1)
+    extent = np.maximum.reduceat(lie, first, axis=1) - np.minimum.reduceat(lie, first, axis=1)
+    turn = np.where((extent[0] >= extent[1])[level.part], turns[0], turns[1])
+    unknown = np.isnan(extent).any(axis=0)
     if unknown.any():
-        key = np.where(unknown[level.part], breadth_first_places(level), key)
-    order = np.argsort(key, kind="stable")
-    return order[np.argsort(level.part[order], kind="stable")]
+        turn = np.where(unknown[level.part], ranks(rising(breadth_first_places(level))), turn)
+    return rising(level.part * (turn.max() + 1) + turn)
 
 
 def best_cuts(level: Level, order: IntArray) -> tuple[BoolArray, BoolArray]:
@@ -99,9 +113,7 @@ def best_cuts(level: Level, order: IntArray) -> tuple[BoolArray, BoolArray]:
     on its lower separator when a neighbour lies at or above the cut, so it counts for the cuts from its own place to
     its farthest neighbour's: a running sum over those intervals gives the size for every cut.
     """
-    count, part = len(level.members), level.part
-    place = np.empty(count, dtype=np.int64)
-    place[order] = np.arange(count)
+    count, part, place = len(level.members), level.part, ranks(order)
     ahead, back = farthest_neighbours(place, level.ends)
     low, high = running_weight(place, ahead, level.weight), running_weight(back, place, level.weight)
     first = np.searchsorted(part, np.arange(level.parts))
@@ -170,9 +182,7 @@ def breadth_first_places(level: Level) -> IntArray:
         everything = np.concatenate([level.ends, np.column_stack([start, np.full(pieces, count)])])
         order = breadth_first_order(joined(everything, count + 1), count, directed=False, return_predecessors=False)[1:]
         start[piece[order]] = order
-    place = np.empty(count, dtype=np.int64)
-    place[order] = np.arange(count)
-    return np.asarray(piece * np.int64(count) + place)
+    return np.asarray(piece * np.int64(count) + ranks(order))
 
 
 def joined(ends: IntArray, count: int) -> scipy.sparse.csr_array:

@@ -73,38 +73,38 @@ class Factor:
         return second_opinion(self)
 
     @cached_property
-    def inverses(self) -> tuple[FloatArray, ...]:
-        """Inverse (fronts, own, own) of each block's own triangle."""
-        with one_blas_thread() as workers:
-            return tuple(workers.each(invert_own, self.blocks))
+    def inverses(self) -> dict[int, FloatArray]:
+        """Those inverses of the batches' own triangles that were asked for so far."""
+        return {}
+
+    def inverse(self, number: int) -> FloatArray:
+        """Inverse (fronts, own, own) of the own triangles of a batch."""
+        if number not in self.inverses:
+            self.inverses[number] = inverted(own_triangles(self.blocks[number])).transpose(0, 2, 1)
+        return self.inverses[number]
 
     def apply_inverse(self, right: FloatArray) -> FloatArray:
         """R⁻¹ times a block (columns, k) in the order of elimination; the result in the caller's columns."""
         with one_blas_thread():
-            return self.in_callers_columns(multiply_inverse(self.layout, self.blocks, self.inverses, right))
+            return self.in_callers_columns(multiply_inverse(self, right))
 
     def apply_inverse_transposed(self, right: FloatArray) -> FloatArray:
         """R⁻ᵀ times a block (columns, k) of the caller's columns; the result in the order of elimination."""
         scaled = (np.asarray(right, dtype=float) * self.scale[:, None])[self.layout.tree.order]
         with one_blas_thread():
-            return multiply_inverse_transposed(self.layout, self.blocks, self.inverses, scaled)
+            return multiply_inverse_transposed(self, scaled)
 
     def in_callers_columns(self, inside: FloatArray) -> FloatArray:
         """Values (columns, …) put back from the order of elimination and from the scaling."""
         return (inside[self.layout.tree.place].T * self.scale).T
 
 
-def invert_own(block: FloatArray) -> FloatArray:
-    """Inverse (fronts, own, own) of each front's own triangle."""
-    return inverted(own_triangles(block)).transpose(0, 2, 1)
-
-
 def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatArray) -> Factor:
     """Decompose front by front; each keeps its own rows of R and hands the rest up. Raises RankDefect."""
     scale = powers_of_two(matrix)
-    elements = (matrix.data * scale[matrix.indices])[layout.elements]
+    elements = (matrix.data * scale.take(matrix.indices)).take(layout.elements)
     right_side = np.asarray(right_side, dtype=float)
-    right = right_side[layout.rows]
+    right = right_side.take(layout.rows)
     tolerance = rank_tolerance(*matrix.shape)
     blocks: list[FloatArray] = []
     left: dict[int, FloatArray] = {}
@@ -147,10 +147,9 @@ def fill(
     flat[batch.targets] = elements[batch.elements_here]
     flat[batch.right_targets] = right[batch.rows_here]
     flat[batch.units] = 1.0
-    _, width, depth = batch.stack
     for hand in layout.from_children[number]:
-        first = (hand.into[:, None] * width + hand.columns) * depth
-        flat[first[:, :, None] + hand.rows[:, None]] = left[hand.source][hand.members]
+        places = hand.starts[:, :, None] + hand.rows[:, None, :]
+        flat[places.ravel()] = hand.given(left[hand.source]).ravel()
     return flat.reshape(batch.stack)
 
 

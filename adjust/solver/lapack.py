@@ -30,8 +30,8 @@ def for_each_block(name: str, blocks: int, *arguments: Argument) -> None:
     stepping = [isinstance(each, np.ndarray) and (each.ndim > 1 or each.dtype.kind == "i") for each in arguments]
     first = np.array([each.ctypes.data for each in memory])
     step = np.array([each.strides[0] if steps else 0 for each, steps in zip(memory, stepping, strict=True)])
-    for addresses in (first + np.arange(blocks)[:, None] * step).tolist():
-        call(*addresses)
+    for addresses in first + np.arange(blocks)[:, None] * step:
+        call(*addresses.tolist())
 
 
 def as_memory(argument: Argument, whole: type[np.signedinteger[Any]]) -> np.ndarray[Any, Any]:

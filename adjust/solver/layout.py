@@ -9,7 +9,7 @@ from itertools import pairwise
 import numpy as np
 import scipy.sparse
 
-from adjust.arrays import IntArray
+from adjust.arrays import FloatArray, IntArray
 from adjust.solver.shapes import Shapes, gather_alike
 from adjust.solver.sorting import counted, offsets_of, rising
 from adjust.solver.staircases import Staircases, build_staircases
@@ -20,17 +20,24 @@ from adjust.solver.tree import Tree
 class Handover:
     """Fronts of batch `source` that leave rows and border columns over to fronts of batch `target`.
 
-    Front `members[i]` of the source goes into front `into[i]` of the target: its row r to row `rows[i, r]` (the last
-    one, which counts for nothing, where it has no row r), its border column c to column `columns[i, c]`; the last of
-    the columns is the right-hand side, and so are those that only pad the source.
+    The source's fronts `members` give their border columns and right-hand side to the columns that begin at `starts`
+    (fronts, border + 1) in the flat stack of the target, and their border's rows to `rows` (fronts, border) of these;
+    they find the covariances of their border in rows that begin at `corners` (fronts, border) of the target's flat
+    covariances, at `columns` (fronts, border). What only pads the source goes to the last row, which counts for
+    nothing, and to the right-hand side before this is written; its covariance is that of some other column.
     """
 
     source: int
     target: int
     members: IntArray | slice
-    into: IntArray
     rows: IntArray
+    starts: IntArray
     columns: IntArray
+    corners: IntArray
+
+    def given(self, stack: FloatArray) -> FloatArray:
+        """What the handing fronts have in a stack of the source."""
+        return stack if isinstance(self.members, slice) else stack.take(self.members, axis=0)
 
 
 @dataclass(frozen=True)
@@ -239,15 +246,21 @@ def build_handovers(tree: Tree, shapes: Shapes, stairs: Staircases, depth: IntAr
     order = rising(pair)
     child, pair = child[order], pair[order]
     parent, border = tree.parent[child], shapes.border[child]
+    each, last = np.repeat(parent, border), shapes.own + shapes.border
     rows = padded_runs(tree.edge, stairs.hand_row, child, border, depth[parent] - 1)
-    columns = padded_runs(tree.edge, stairs.hand_column, child, border + 1, shapes.width[parent] - 1)
+    columns = padded_runs(tree.edge, stairs.hand_column, child, border, last[parent])
+    starts = (shapes.slot[each] * shapes.width[each] + columns) * depth[each]
+    right = (shapes.slot[parent] * shapes.width[parent] + last[parent]) * depth[parent]
+    found = np.minimum(columns, last[each] - 1)
+    corners = (shapes.slot[each] * last[each] + found) * last[each]
     bounds = np.append(np.flatnonzero(np.diff(pair, prepend=-1)), len(child))
-    stacks = zip(stacked(rows, bounds, border), stacked(columns, bounds, border + 1), strict=True)
+    stacks = zip(*(stacked(flat, bounds, border) for flat in (rows, starts, found, corners)), strict=True)
     handovers = []
-    for (a, b), (down, across) in zip(pairwise(bounds.tolist()), stacks, strict=True):
+    for (a, b), (down, across, at, corner) in zip(pairwise(bounds.tolist()), stacks, strict=True):
         source, target = int(shapes.home[child[a]]), int(shapes.home[parent[a]])
         members = slice(None) if b - a == len(shapes.members[source]) else shapes.slot[child[a:b]]
-        handovers.append(Handover(source, target, members, shapes.slot[parent[a:b]], down, across))
+        columns_and_right = np.column_stack([across, right[a:b]])
+        handovers.append(Handover(source, target, members, down, columns_and_right, at, corner))
     return tuple(handovers)
 
 

@@ -15,7 +15,10 @@ DENSE_DEGREE = 10.0  # × √groups neighbours, and at least 16: the bound for d
 def groups_of_rows(matrix: scipy.sparse.csr_array, groups: IntArray, count: int) -> tuple[IntArray, IntArray]:
     """Each row's distinct groups, as parallel arrays (row, group) sorted by row and group."""
     row = np.repeat(np.arange(matrix.shape[0]), np.diff(matrix.indptr))
-    code = distinct(row * count + groups[matrix.indices])
+    code = row * count + groups.take(matrix.indices)
+    code = distinct(
+        code[np.diff(code, prepend=-1) != 0]
+    )  # neighbours first: most columns of a group stand side by side
     row = code // count
     return row, code - row * count
 

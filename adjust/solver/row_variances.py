@@ -30,20 +30,22 @@ def quick_row_variances(batch: Batch, elements: FloatArray, covariance: FloatArr
     `elements` are those of the rows, `covariance` (fronts, columns, columns).
     """
     size, flat = covariance.shape[1], covariance.ravel()
-    base = (batch.slots * size)[batch.row_of_element] + batch.columns
+    base = (batch.slots * size).take(batch.row_of_element) + batch.columns
     base *= size
     squares = elements**2 * flat.take(base + batch.columns)
     start = batch.row_starts
     variances = np.add.reduceat(squares, start)
     rounding = np.finfo(float).eps * np.add.reduceat(np.sqrt(np.maximum(squares, 0.0)), start) ** 2
     for run in batch.runs:
-        each, column = elements[run.elements].reshape(-1, run.width), batch.columns[run.elements].reshape(-1, run.width)
+        each = elements[run.elements].reshape(-1, run.width)
+        column, corner = (part[run.elements].reshape(-1, run.width) for part in (batch.columns, base))
         if run.width > WIDE:
             variances[run.rows] = wide_rows(batch.slots[run.rows], column, each, covariance)
-        else:
-            first, second = pairs_within(run.width)
-            place = base[run.elements].reshape(-1, run.width)[:, first] + column[:, second]
-            variances[run.rows] += 2.0 * (each[:, first] * each[:, second] * flat.take(place)).sum(axis=1)
+            continue
+        first, second = pairs_within(run.width)
+        entries = flat.take(corner.take(first, axis=1) + column.take(second, axis=1))
+        products = each.take(first, axis=1) * each.take(second, axis=1) * entries
+        variances[run.rows] += 2.0 * products.sum(axis=1)
     return variances, rounding
 
 
@@ -87,7 +89,7 @@ def squared_norms(factor: Factor, front: int, block: scipy.sparse.coo_array) -> 
     while front >= 0:
         home, slot = int(shapes.home[front]), int(shapes.slot[front])
         batch = factor.layout.batches[home]
-        solved = factor.inverses[home][slot].T @ rest[batch.own[slot]]
+        solved = factor.inverse(home)[slot].T @ rest[batch.own[slot]]
         total += np.einsum("cr,cr->r", solved, solved)
         rest[batch.border[slot]] -= factor.blocks[home][slot, :, batch.own.shape[1] : -1].T @ solved
         rest[-1] = 0.0

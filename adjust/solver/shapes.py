@@ -11,9 +11,7 @@ import numpy as np
 from adjust.arrays import IntArray
 from adjust.solver.tree import Tree
 
-STACK_ELEMENTS = (
-    1 << 19
-)  # in one stack of fronts: many fronts to a call of NumPy, and four megabytes that a cache holds
+STACK_ELEMENTS = 1 << 20  # in one stack of fronts: eight megabytes; most kinds of fronts then make one stack
 ALONE = 300  # columns: a front this large keeps the processor busy by itself, so that padding could only cost
 STEP = 16  # columns: fronts whose sizes differ by less are padded to the same shape; see docs/performance.md
 
@@ -52,7 +50,7 @@ def gather_alike(tree: Tree) -> Shapes:
     """Batches of all fronts, those of the lowest level first, none larger than STACK_ELEMENTS."""
     own, border, height = tree.own_sizes, tree.border_sizes, heights(tree.parent)
     alone = np.where(own + border > ALONE, np.arange(tree.count) + 1, 0)
-    kinds = np.stack([height, alone, -(-own // STEP), -(-border // STEP)])
+    kinds = np.stack([height, alone, own // -STEP, border // -STEP])  # the largest first: the smallest fill the end
     order = np.lexsort(kinds[::-1])
     members: list[IntArray] = []
     for alike in np.split(order, np.flatnonzero((np.diff(kinds[:, order]) != 0).any(axis=0)) + 1):

@@ -3,12 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from adjust.arrays import FloatArray
 from adjust.solver.layout import Layout
 from adjust.solver.triangle import own_triangles, solved
+
+if TYPE_CHECKING:
+    from adjust.solver.factor import Factor
 
 
 def solve_down(layout: Layout, blocks: Sequence[FloatArray]) -> FloatArray:
@@ -22,28 +26,26 @@ def solve_down(layout: Layout, blocks: Sequence[FloatArray]) -> FloatArray:
     return x[:-1]
 
 
-def multiply_inverse(
-    layout: Layout, blocks: Sequence[FloatArray], inverses: Sequence[FloatArray], right: FloatArray
-) -> FloatArray:
-    """R⁻¹ times a block (columns, k) in new order, with the inverses of the own triangles at hand."""
+def multiply_inverse(factor: Factor, right: FloatArray) -> FloatArray:
+    """R⁻¹ times a block (columns, k) in new order, with the inverses of the own triangles."""
     x = np.vstack([right, np.zeros((1, right.shape[1]))])
-    for batch, block, inverse in zip(reversed(layout.batches), reversed(blocks), reversed(inverses), strict=True):
-        x[batch.own] = inverse @ (x[batch.own] - block[:, :, batch.own.shape[1] : -1] @ x[batch.border])
+    for number in reversed(range(len(factor.blocks))):
+        batch, block = factor.layout.batches[number], factor.blocks[number]
+        rest = x[batch.own] - block[:, :, batch.own.shape[1] : -1] @ x[batch.border]
+        x[batch.own] = factor.inverse(number) @ rest
         x[-1] = 0.0
     return x[:-1]
 
 
-def multiply_inverse_transposed(
-    layout: Layout, blocks: Sequence[FloatArray], inverses: Sequence[FloatArray], right: FloatArray
-) -> FloatArray:
-    """R⁻ᵀ times a block (columns, k) in new order, with the inverses of the own triangles at hand."""
+def multiply_inverse_transposed(factor: Factor, right: FloatArray) -> FloatArray:
+    """R⁻ᵀ times a block (columns, k) in new order, with the inverses of the own triangles."""
     width = right.shape[1]
     y = np.vstack([right, np.zeros((1, width))])
     across = np.arange(width)
-    for batch, block, inverse in zip(layout.batches, blocks, inverses, strict=True):
-        solved = inverse.transpose(0, 2, 1) @ y[batch.own]
-        y[batch.own] = solved
-        passed = block[:, :, batch.own.shape[1] : -1].transpose(0, 2, 1) @ solved
+    for number, (batch, block) in enumerate(zip(factor.layout.batches, factor.blocks, strict=True)):
+        here = factor.inverse(number).transpose(0, 2, 1) @ y[batch.own]
+        y[batch.own] = here
+        passed = block[:, :, batch.own.shape[1] : -1].transpose(0, 2, 1) @ here
         np.subtract.at(y.ravel(), (batch.border[:, :, None] * width + across).ravel(), passed.ravel())
         y[-1] = 0.0
     return y[:-1]
