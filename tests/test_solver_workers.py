@@ -27,7 +27,8 @@ def _threads(monkeypatch):
     return pretend
 
 
-def test_results_do_not_depend_on_the_threads(threads):
+def test_results_do_not_depend_on_the_threads(threads, monkeypatch):
+    monkeypatch.setattr(workers, "FEW_COLUMNS", 0)
     problem = grid_problem(400)
     found = []
     for count in (1, 2, 5):
@@ -36,6 +37,13 @@ def test_results_do_not_depend_on_the_threads(threads):
             assert allowed.count == count
         found.append(solve(problem))
     assert found[0] == found[1] == found[2]
+
+
+def test_a_small_system_is_worked_by_one(threads):
+    threads(4)
+    for columns, count in ((workers.FEW_COLUMNS - 1, 1), (workers.FEW_COLUMNS, 4)):
+        with workers.one_blas_thread(columns) as allowed:
+            assert allowed.count == count
 
 
 def test_an_unknown_blas_gets_no_company(threads):

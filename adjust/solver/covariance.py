@@ -49,7 +49,7 @@ def selected_covariance(factor: Factor, first: IntArray, second: IntArray) -> Se
             found = quick_row_variances(batch, factor.elements[batch.elements_here], covariance)
             variances[rows], rounding[rows] = found
 
-    with one_blas_thread() as workers:
+    with one_blas_thread(layout.tree.columns) as workers:
         for level, served in zip(reversed(layout.shapes.levels), reversed(layout.served), strict=True):
             workers.each(work, level)
             for number in served:

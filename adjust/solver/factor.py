@@ -119,7 +119,7 @@ def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatA
         _, own, border = batch.shape
         return stack[:, :, :own].copy().transpose(0, 2, 1), stack[:, own:, own : own + border].copy()
 
-    with one_blas_thread() as workers:
+    with one_blas_thread(layout.tree.columns) as workers:
         for level, consumed in zip(layout.shapes.levels, layout.consumed, strict=True):
             for number, (block, rest) in zip(level, workers.each(work, level), strict=True):
                 blocks.append(block)

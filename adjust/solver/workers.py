@@ -20,6 +20,7 @@ from typing import Any, TypeVar
 import numpy as np
 import scipy
 
+FEW_COLUMNS = 8_000  # a system this small is done before a second thread has paid for waking up: measured
 MOST_WORKERS = 8  # beyond this Python's own share of the work (about a fifth) keeps more threads waiting
 NAMES = ("scipy_openblas_{}_num_threads64_", "scipy_openblas_{}_num_threads", "openblas_{}_num_threads64_")
 
@@ -62,13 +63,14 @@ class Workers:
 
 
 @contextmanager
-def one_blas_thread() -> Iterator[Workers]:
-    """Hold the BLAS to one thread, and have as many workers as it had."""
+def one_blas_thread(columns: int | None = None) -> Iterator[Workers]:
+    """Hold the BLAS to one thread, and have as many workers as it had, or one for a system of few `columns`."""
     threads = blas_threads()
     before = [read() for read, _ in threads]
     for _, write in threads:
         write(1)
-    count = max(1, min([MOST_WORKERS, *before])) if threads else 1
+    few = columns is not None and columns < FEW_COLUMNS
+    count = 1 if few or not threads else max(1, min([MOST_WORKERS, *before]))
     try:
         if count == 1:
             yield Workers(1, None)
