@@ -220,6 +220,7 @@ TWICE = {
     "the same column": ("distances.csv:3,keep,,,", "distances.csv:3,leave_out,,,x"),
     "by another writing of the line": ("distances.csv:3,keep,,,", "./distances.csv:03,keep,,,"),
     "left out and corrected": ("distances.csv:3,leave_out,,,x", "distances.csv:3,correct,target_height_m,1.6,x"),
+    "kept and corrected by its title": ("distances.csv:3,keep,,,", "distances.csv:3,correct,slope_m,316.2,x"),
     "the value by its title": ("distances.csv:3,correct,,316.1,x", "distances.csv:3,correct,slope_m,316.2,x"),
 }
 

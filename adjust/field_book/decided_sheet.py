@@ -118,10 +118,9 @@ class DecidedSheet(Sheet):
     def _carry_out(self, ruling: Ruling, block: Block, row: int) -> None:
         decision = ruling.decision
         column = decision.column or self._only_observed(ruling, block, row)
-        for line, other in self._corrected(ruling):
-            if decision.decision == "correct" and other.column == column:
-                message = f"{decision.source} is decided on line {line} already; keep one of the two rows"
-                self._complain(ruling, "source", message)
+        for line in self._earlier(ruling, column):
+            message = f"{decision.source} is decided on line {line} already; keep one of the two rows"
+            self._complain(ruling, "source", message)
         self.taken[ruling.line] = replace(decision, column=column)
         if column in self.titles:
             cells = block.columns[self.titles.index(column)]
@@ -133,11 +132,12 @@ class DecidedSheet(Sheet):
         if decision.decision == "leave_out" and USE in self.titles:
             block.columns[self.titles.index(USE)][row] = "no"
 
-    def _corrected(self, ruling: Ruling) -> Iterator[tuple[int, Decision]]:
-        """The corrections of the same line of the book that were carried out already."""
+    def _earlier(self, ruling: Ruling, column: str) -> Iterator[int]:
+        """Lines of the table that decided on the same cell under another name: one left it blank."""
         for each in self._rulings[ruling.number]:
-            if each.line in self.taken and self.taken[each.line].decision == "correct":
-                yield each.line, self.taken[each.line]
+            taken = self.taken.get(each.line)
+            if taken and column and taken.column == column and each.decision.column != ruling.decision.column:
+                yield each.line
 
     def _only_observed(self, ruling: Ruling, block: Block, row: int) -> str:
         """The title of the observed value of a line that has only one; blank where a correction has to say which."""
