@@ -12,7 +12,7 @@ from adjust.arrays import IntArray
 from adjust.solver.tree import Tree
 
 STACK_ELEMENTS = 1 << 20  # in one stack of fronts: eight megabytes; most kinds of fronts then make one stack
-ALONE = 300  # columns: a front this large keeps the processor busy by itself, so that padding could only cost
+ALONE = 240  # columns: a front this large keeps the processor busy by itself, so that padding could only cost
 STEP = 16  # columns: fronts whose sizes differ by less are padded to the same shape; see docs/performance.md
 
 
