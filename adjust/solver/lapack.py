@@ -7,6 +7,7 @@ gives their addresses, at which ctypes calls them without the lock.
 from __future__ import annotations
 
 import ctypes
+import re
 from collections.abc import Callable
 from functools import cache
 from typing import Any
@@ -52,4 +53,4 @@ def routine(name: str, arguments: int) -> tuple[Callable[..., None], type[np.sig
     address_of.restype, address_of.argtypes = ctypes.c_void_p, [ctypes.py_object, ctypes.c_char_p]
     signature = name_of(capsule)
     call = ctypes.CFUNCTYPE(None, *[ctypes.c_void_p] * arguments)(address_of(capsule, signature))
-    return call, np.intc if b" int *" in signature.replace(b"(", b" ") else np.int64
+    return call, np.intc if re.search(rb"\bint \*", signature) else np.int64
