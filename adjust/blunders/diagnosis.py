@@ -9,7 +9,7 @@ from adjust.blunders.criterion import Criterion
 from adjust.blunders.evidence import Allowed, Evidence
 from adjust.blunders.proposals import proposal
 from adjust.blunders.search import find_errors, sound
-from adjust.blunders.separability import Replacement, settled, standing
+from adjust.blunders.separability import EQUAL, Replacement, smallest, standing
 
 
 @dataclass(frozen=True)
@@ -31,8 +31,15 @@ class Diagnosis:
         return tuple(standing(self.evidence, self.criterion, self.chosen))
 
     def settled(self) -> Diagnosis:
-        """The set of the smallest errors among those that fit as well."""
-        return replace(self, chosen=settled(self.evidence, self.criterion, self.chosen))
+        """The set of the smallest errors among those that fit as well as the one of least cost."""
+        least, seen = self.allowed.statistic - EQUAL, {self.chosen}
+        diagnosis = self
+        while True:
+            chosen = smallest(self.evidence, diagnosis.chosen, diagnosis.replacements, least)
+            if chosen in seen:
+                return diagnosis
+            seen.add(chosen)
+            diagnosis = replace(diagnosis, chosen=chosen)
 
     def alternatives(self, hypothesis: int) -> tuple[int, ...]:
         """What may stand in the place of one of the chosen, ascending: "one of these"."""

@@ -14,7 +14,7 @@ three say the same.
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -44,22 +44,18 @@ class Replacement:
     chosen: tuple[int, ...]
 
 
-def settled(evidence: Evidence, criterion: Criterion, chosen: tuple[int, ...]) -> tuple[int, ...]:
-    """Of the sets that fit as well as the one of least cost, that of the smallest errors."""
-    least = evidence.allowing(chosen).statistic - EQUAL
-    seen = {chosen}
-    while True:
-        equal = [
-            replacement.chosen
-            for replacement in standing(evidence, criterion, chosen)
-            if sorted(map(evidence.sort, replacement.joined)) == sorted(map(evidence.sort, replacement.removed))
-            and evidence.allowing(replacement.chosen).statistic >= least
-        ]
-        best = min([chosen, *equal], key=lambda one: (size_of_errors(evidence.allowing(one)), one))
-        if best in seen:
-            return chosen
-        seen.add(best)
-        chosen = best
+def smallest(
+    evidence: Evidence, chosen: tuple[int, ...], replacements: Sequence[Replacement], least: float
+) -> tuple[int, ...]:
+    """Of a set and those that `replacements` make of it by as many errors, with T of `least` or more, that of the
+    smallest errors."""
+    equal = [
+        replacement.chosen
+        for replacement in replacements
+        if evidence.sorts_of(replacement.joined) == evidence.sorts_of(replacement.removed)
+        and evidence.allowing(replacement.chosen).statistic >= least
+    ]
+    return min([chosen, *equal], key=lambda one: (size_of_errors(evidence.allowing(one)), one))
 
 
 def size_of_errors(allowed: Allowed) -> float:

@@ -16,6 +16,10 @@ from adjust.blunders.search import COUPLED, most_columns, sound
 STRIDE = 40
 """Rows that may join together: as many as it takes to find most blunders of a large network at once."""
 
+LEAST_LEANING, LEAST_FAILING = 0.2, 0.5
+"""Correlation with an error found, or share of the critical value, from which on a row is looked at closely. One that
+leans less stands in for no error that is not itself near its critical value."""
+
 MOST_CONSIDERED = MOST_DENSE // 2
 """Rows looked at closely, which leaves as many columns to the groups that they belong to."""
 
@@ -56,7 +60,7 @@ def _joining(allowed: Allowed, criterion: Criterion) -> list[int]:
 
 
 def considered(hypotheses: Hypotheses, allowed: Allowed, criterion: Criterion) -> IntArray:
-    """System rows, ascending, to look at closely: those that lean most on an error found, or fit worst beside all.
+    """System rows, ascending, to look at closely: those that lean on an error found, or fit badly beside all of them.
 
     Correlated observations come whole.
     """
@@ -64,9 +68,9 @@ def considered(hypotheses: Hypotheses, allowed: Allowed, criterion: Criterion) -
     by_itself = evidence.information.diagonal
     strips = np.abs(evidence.information.columns(allowed.columns)[:rows])
     strips /= np.sqrt(np.maximum(by_itself[:rows, None], np.finfo(float).tiny))
-    leaning = np.max(strips / np.sqrt(by_itself[allowed.columns]), axis=1, initial=0.0)
-    failing = np.abs(allowed.w[:rows]) / criterion.critical((1, False), evidence.freedom)
+    leaning = np.max(strips / np.sqrt(by_itself[allowed.columns]), axis=1, initial=0.0) / LEAST_LEANING
+    failing = np.abs(allowed.w[:rows]) / criterion.critical((1, False), evidence.freedom) / LEAST_FAILING
     relevance = np.where(evidence.by_itself.testable[:rows], np.maximum(leaning, failing), 0.0)
     relevance[allowed.columns[allowed.columns < rows]] = np.inf
     worst = np.argsort(-relevance, kind="stable")[: max(MOST_CONSIDERED, len(allowed.columns))]
-    return hypotheses.whole_observations(worst)
+    return hypotheses.whole_observations(worst[relevance[worst] >= 1.0])
