@@ -40,9 +40,11 @@ JOBS_OF_A_NETWORK = 10
 
 SMALL, LARGE = 200, 80
 """Jobs for each line of the tables: of networks small enough for the limit, and of the others."""
-ROBUST = 50
+SMALL_TOGETHER, LARGE_TOGETHER = 120, 40
+"""The same where the other ways have to be gone besides."""
+ROBUST = 30
 """The first so many of them also go through robust regression, which takes longest."""
-MOST_SETS = 400_000_000
+MOST_SETS = 200_000_000
 """Sets of four, without leaving out any order, that the limit of three blunders may look at on a line: minutes."""
 QUIET = 400
 """Jobs without a blunder."""
@@ -291,6 +293,11 @@ def usual(shape: Shape) -> int:
     return SMALL if shape.limit else LARGE
 
 
+def together(shape: Shape) -> int:
+    """Jobs of a line that all ways share."""
+    return SMALL_TOGETHER if shape.limit else LARGE_TOGETHER
+
+
 def networks(shapes: Sequence[Shape]) -> str:
     """What the networks are like."""
     lines = table("network", "marks", "observations", "unknowns", "for each unknown", "separable")
@@ -311,8 +318,8 @@ def sections() -> dict[str, Callable[[], str]]:
     return {
         "networks": partial(networks, SHAPES),
         "one": partial(one, SHAPES, usual),
-        "several": partial(several, SHAPES, usual),
-        "close": partial(close, SHAPES, usual),
+        "several": partial(several, SHAPES, together),
+        "close": partial(close, SHAPES, together),
         "none": partial(none, SHAPES, QUIET),
         "whole": partial(whole, WHOLE_JOBS),
         "gross": partial(gross, GROSS_JOBS),

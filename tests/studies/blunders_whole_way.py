@@ -16,8 +16,8 @@ from adjust.simulate import Blunder, observe
 from tests.studies.blunder_networks import SEPARABLE, Network, levels, total_station, traverses, triangulation, vectors
 
 SEED = 20261202
-WHOLE_JOBS = 60
-GROSS_JOBS = 60
+WHOLE_JOBS = 30
+GROSS_JOBS = 30
 GROSS_SHARE = 0.05
 """Of the observations that are grossly wrong."""
 NEAR = 0.02
