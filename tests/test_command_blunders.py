@@ -187,6 +187,8 @@ def test_a_suspect_is_found_explained_decided_and_adjusted(town: Path, tmp_path:
         }
     ]
     assert results["blunders"] == results["suspects"] == []
+    assert not [caution for caution in kept["cautions"] if "by decision" in caution]
+    assert [caution for caution in results["cautions"] if "by decision 1 entry is corrected" in caution]
     assert results["job"]["input_sha256"] != kept["job"]["input_sha256"]
     sentence = (
         "distances.csv:13: horizontal_m 168.561 corrected to 168.651. Reason: digits exchanged, by the carbon copy."
@@ -206,6 +208,7 @@ def test_a_line_left_out_stands_in_the_reports(town: Path, tmp_path: Path) -> No
     assert "1 observation marked `use = no` or left out by decision" in listing
     results = json.loads((out / "results.json").read_text("utf-8"))
     assert results["decisions"][0]["value"] is None
+    assert any("by decision 1 line is left out" in caution for caution in results["cautions"])
     assert "distances.csv:13" not in {record["source"] for record in results["observations"]}
 
 

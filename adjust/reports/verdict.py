@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections import Counter
 from collections.abc import Iterator
 
 import numpy as np
@@ -10,7 +11,7 @@ import numpy as np
 from adjust.adjustment import Adjustment
 from adjust.quality import LEAST_REDUNDANCY
 from adjust.reports.selection import listed_observations
-from adjust.reports.wording import between, what
+from adjust.reports.wording import between, counted, what
 from adjust.unknowns import UP
 
 NAMED = 5
@@ -27,6 +28,12 @@ LARGEST_GAP = 1e-5
 
 FEW_DEGREES_OF_FREEDOM = 10
 """Below this the estimated σ₀ is itself uncertain by more than a fifth: its relative sd is about 1/√(2f)."""
+
+DECIDED = {
+    "correct": ("entry is corrected", "entries are corrected"),
+    "leave_out": ("line is left out", "lines are left out"),
+}
+"""Decisions that change what counts, and what one and several of them do."""
 
 
 def verdict(adjustment: Adjustment) -> str:
@@ -83,6 +90,7 @@ def _cautions(adjustment: Adjustment) -> Iterator[str]:
         yield verdict(adjustment)
     elif adjustment.suspects:
         yield _suspicion(adjustment)
+    yield from _decided(adjustment)
     yield from _unchecked(adjustment)
     yield from _basis(adjustment)
     digits = digits_left(solution.condition_number)
@@ -93,6 +101,14 @@ def _cautions(adjustment: Adjustment) -> Iterator[str]:
         )
     if not solution.second_opinion_gap <= LARGEST_GAP:
         yield f"A second solution of the same system differs by {solution.second_opinion_gap:.1e} m: do not rely on it."
+
+
+def _decided(adjustment: Adjustment) -> Iterator[str]:
+    """That the field book does not stand as it was written."""
+    made: Counter[str] = Counter(each.decision for each in adjustment.job.decisions)
+    parts = [counted(made[name], *words) for name, words in DECIDED.items() if made[name]]
+    if parts:
+        yield f"The field book does not count as written: by decision {' and '.join(parts)}, for the reasons given."
 
 
 def _unchecked(adjustment: Adjustment) -> Iterator[str]:
