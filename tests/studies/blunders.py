@@ -42,6 +42,8 @@ SMALL, LARGE = 200, 80
 """Jobs for each line of the tables: of networks small enough for the limit, and of the others."""
 SMALL_TOGETHER, LARGE_TOGETHER = 120, 40
 """The same where the other ways have to be gone besides."""
+SMALL_CLOSE, LARGE_CLOSE = 60, 20
+"""The same of what can not be told apart, for each number of blunders."""
 ROBUST = 30
 """The first so many of them also go through robust regression, which takes longest."""
 MOST_SETS = 200_000_000
@@ -260,7 +262,7 @@ def close(shapes: Sequence[Shape], jobs: Callable[[Shape], int]) -> str:
     lines = table("network", "blunders", "jobs", "in the sets", "lines in the sets for each blunder", "named outright")
     for shape in shapes:
         for blunders in (1, 2, 3):
-            verdicts = [Verdict.of(job) for job in shape.jobs(jobs(shape) // 2, blunders, apart=False)]
+            verdicts = [Verdict.of(job) for job in shape.jobs(jobs(shape), blunders, apart=False)]
             if verdicts:
                 size = float(np.mean([verdict.size for verdict in verdicts]))
                 shares = [percent([getattr(v, name) for v in verdicts]) for name in ("covered", "right")]
@@ -298,6 +300,11 @@ def together(shape: Shape) -> int:
     return SMALL_TOGETHER if shape.limit else LARGE_TOGETHER
 
 
+def apart_no_more(shape: Shape) -> int:
+    """Jobs of a line with blunders that can not be told from other observations."""
+    return SMALL_CLOSE if shape.limit else LARGE_CLOSE
+
+
 def networks(shapes: Sequence[Shape]) -> str:
     """What the networks are like."""
     lines = table("network", "marks", "observations", "unknowns", "for each unknown", "separable")
@@ -319,7 +326,7 @@ def sections() -> dict[str, Callable[[], str]]:
         "networks": partial(networks, SHAPES),
         "one": partial(one, SHAPES, usual),
         "several": partial(several, SHAPES, together),
-        "close": partial(close, SHAPES, together),
+        "close": partial(close, SHAPES, apart_no_more),
         "none": partial(none, SHAPES, QUIET),
         "whole": partial(whole, WHOLE_JOBS),
         "gross": partial(gross, GROSS_JOBS),
