@@ -40,7 +40,7 @@ JOBS_OF_A_NETWORK = 10
 
 SMALL, LARGE = 200, 80
 """Jobs for each line of the tables: of networks small enough for the limit, and of the others."""
-SMALL_TOGETHER, LARGE_TOGETHER = 120, 40
+SMALL_TOGETHER, LARGE_TOGETHER = 200, 80
 """The same where the other ways have to be gone besides."""
 SMALL_CLOSE, LARGE_CLOSE = 60, 20
 """The same of what can not be told apart, for each number of blunders."""
