@@ -234,7 +234,7 @@ CASES = {
         words=("'002'", "marks.csv:3", "another height", "52 m there, 52.5 m here"),
     ),
     "unprintable name": Broken(
-        "marks.csv", "B,1500.0", "B\x07,1500.0", 5, "mark", words=("'B\\x07'", "cannot be printed")
+        "marks.csv", "B,1500.0", "B\u200b,1500.0", 5, "mark", words=("'B\\u200b'", "cannot be printed")
     ),
     "unknown control": Broken(
         "marks.csv", "52.000,fixed,fixed", "52.000,fixd,fixed", 3, "plan_control", words=("'fixd'", "'weighted'")
