@@ -25,9 +25,16 @@ def advice(
     explanations: Sequence[Explanation],
     alternatives: Sequence[Hypothesis],
     deciding: str | None,
+    all_held: bool,
 ) -> str:
-    """One sentence; `deciding` is the source of the observation whose repetition tells the alternatives apart."""
+    """One sentence; `deciding` is the source of the observation whose repetition tells the alternatives apart.
+
+    `all_held`: the suspect and all that could stand in its place are coordinates of control, which nobody measures
+    again.
+    """
     others = [other for other in alternatives if other.name != suspect.name]
+    if others and all_held:
+        return "Look up each of these coordinates where they came from: all of them are given, none was measured here."
     if others and deciding:
         return f"Measure {deciding} again: that tells which of these it is."
     if others:

@@ -84,7 +84,8 @@ class _Teller:
             further_cells=tuple(lines[1:]),
         )
         alternatives = tuple(map(self.found.hypotheses.hypothesis, self.diagnosis.alternatives(number)))
-        explanations, deciding = explain(context), self._deciding(number)
+        all_held = all(is_held(self.job, each) for each in (suspect, *alternatives))
+        explanations, deciding = explain(context), None if all_held else self._deciding(number)
         return Blunder(
             hypothesis=suspect,
             sources=sources_of(self.job, suspect),
@@ -97,7 +98,13 @@ class _Teller:
             deciding=deciding,
             explanations=explanations,
             booked=booked(context),
-            advice=advice(suspect, explanations, alternatives, None if deciding is None else deciding[0]),
+            advice=advice(
+                suspect,
+                explanations,
+                alternatives,
+                None if deciding is None else deciding[0],
+                all_held,
+            ),
         )
 
     def _test(self, number: int) -> tuple[float, float]:
@@ -113,7 +120,22 @@ class _Teller:
         evidence = self.diagnosis.evidence
         others = [evidence.allowing(other.chosen) for other in self.diagnosis.replacements if number in other.removed]
         found = deciding_row(self.system, self.found.hypotheses.columns, self.diagnosis.allowed, others)
-        return None if found is None else (self.system.model.source(found[0]), found[1])
+        if found is None:
+            return None
+        source = self.system.model.source(found[0])
+        return None if source in given_sources(self.job) else (source, found[1])
+
+
+def given_sources(job: Job) -> frozenset[str]:
+    """Lines of weighted control: coordinates are looked up, no repetition decides about them."""
+    weighted = (each for each in job.observations if isinstance(each, ControlCoordinates))
+    return frozenset(each.provenance.label(row) for each in weighted for row in range(len(each)))
+
+
+def is_held(job: Job, hypothesis: Hypothesis) -> bool:
+    """Whether it is about given coordinates, fixed or weighted, and not about anything observed."""
+    weighted = hypothesis.single and isinstance(job.observations[hypothesis.rows[0][0]], ControlCoordinates)
+    return weighted or hypothesis.nature == "control"
 
 
 def sources_of(job: Job, hypothesis: Hypothesis) -> tuple[str, ...]:

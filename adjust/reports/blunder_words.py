@@ -67,9 +67,15 @@ def findings_verdict(job: Job, findings: Findings) -> str:
     found = findings.blunders
     if not found:
         return none_found(job, findings)
-    names = "; ".join(f"{blunder.name}, {likeliest(blunder)}" for blunder in found[:NAMED])
+    names = "; ".join(map(_named, found[:NAMED]))
     more = f"; and {len(found) - NAMED} more" if len(found) > NAMED else ""
     return f"The search for blunders names {_number(len(found))}: {names}{more}."
+
+
+def _named(blunder: Blunder) -> str:
+    """The name of an error and what explains it; that it may be another one, where the observations cannot tell."""
+    instead = " (or another that cannot be told from it)" if blunder.alternatives else ""
+    return f"{blunder.name}{instead}, {likeliest(blunder)}"
 
 
 def _number(count: int) -> str:
@@ -208,13 +214,19 @@ def odds_words(odds: float) -> str:
 def off_by(blunder: Blunder) -> str:
     """The estimated error with its sd, component by component, in the units of the book."""
     unit = small_unit_of(blunder)
-    sign = unit[1] if unit is _SECONDS else f" {unit[1]}"
     return "; ".join(
-        f"{name} {_sized(error, unit, blunder.hypothesis.unit)} ± {decimals(sd / unit[0], unit[2])}{sign}".strip()
+        f"{name} {_sized(error, unit, blunder.hypothesis.unit)} ± {_sd(sd, unit)}".strip()
         for name, error, sd in zip(
             blunder.hypothesis.components, blunder.estimated_error.tolist(), blunder.sd.tolist(), strict=True
         )
     )
+
+
+def _sd(sd: float, unit: Small) -> str:
+    """An sd in a small unit; one that is none in metres."""
+    if unit is _MILLIMETRES and sd >= LONG:
+        return f"{decimals(sd, 4)} m"
+    return f"{decimals(sd / unit[0], unit[2])}{'' if unit is _SECONDS else ' '}{unit[1]}"
 
 
 def _sized(error: float, unit: Small, si: str) -> str:
