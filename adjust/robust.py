@@ -99,7 +99,10 @@ def _reweighted(job: Job, unknowns: Unknowns, start: Start) -> Outcome | None:
 
 
 def _another(job: Job, unknowns: Unknowns, best: Outcome | None, generator: np.random.Generator) -> Outcome | None:
-    """An outcome from a start that is built from a part of the observations; None where that part builds none."""
+    """An outcome from a start that is built from a part of the observations; None where that part builds none.
+
+    Marks are not searched for: among gross errors a search finds nothing to agree with and takes a second for it.
+    """
     parts = []
     for place, rows in enumerate(job.observations):
         stays = np.full(len(rows), STAYS)
@@ -108,7 +111,7 @@ def _another(job: Job, unknowns: Unknowns, best: Outcome | None, generator: np.r
         chosen: BoolArray = (generator.random(len(rows)) < stays) | (rows.kind == "control")
         parts.append(rows.take(chosen))
     try:
-        start = find_start(replace(job, observations=tuple(parts)), unknowns)
+        start = find_start(replace(job, observations=tuple(parts)), unknowns, searching=False)
     except HubtackError:
         return None
     known = np.isfinite(start.geometry.coordinates[unknowns.sought]).all()

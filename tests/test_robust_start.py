@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -10,8 +11,9 @@ import pytest
 from scipy.special import ndtri
 from statsmodels.robust.norms import HuberT, TukeyBiweight
 
-from adjust import Job, adjust
+from adjust import Job, adjust, read_job
 from adjust.network import Start, find_start
+from adjust.network.assembly import Assembly
 from adjust.robust import BIWEIGHT, HUBER, MEDIAN_TO_SD, biweight, huber, robust_start
 from adjust.simulate import NETWORKS, Blunder, Truth, observe
 from adjust.unknowns import find_unknowns
@@ -109,3 +111,16 @@ def test_the_adjustment_settles_with_gross_errors_in_it() -> None:
     shapes = ("levelling", "triangulation", "total station, plane", "GNSS")
     jobs = [spoilt(shape, 0.05, seed)[0] for shape in shapes for seed in (21, 22)]
     assert all(adjust(job).solution.converged for job in jobs)
+
+
+def test_other_starts_search_for_no_marks(monkeypatch: pytest.MonkeyPatch) -> None:
+    """Control with its axes exchanged: searching for marks in every trial would take minutes."""
+    job = read_job(Path(__file__).parents[1] / "field_data" / "town_traverse")
+    given = job.marks.given.copy()
+    first = job.marks.names.index("K101")
+    given[first, :2] = given[first, 1::-1]
+    job = replace(job, marks=replace(job.marks, given=given))
+    unknowns = find_unknowns(job)
+    start = find_start(job, unknowns)
+    monkeypatch.setattr(Assembly, "_search", lambda self: pytest.fail("searches"))
+    robust_start(job, unknowns, start)

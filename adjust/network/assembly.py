@@ -23,10 +23,13 @@ class Assembly:
 
     `known` marks have points on the working plane; `wanted` marks need one. In a `free` network, without control, the
     largest figure may lie and turn as it was drawn. `world` holds what was found, `figures` what could not be laid
-    over it, `notes` what was decided for the surveyor, `found_by_search` the marks that no construction reached.
+    over it, `notes` what was decided for the surveyor, `found_by_search` the marks that no construction reached. Where
+    not `searching`, these stay without a point.
     """
 
-    def __init__(self, survey: Survey, known: dict[int, complex], wanted: set[int], *, free: bool) -> None:
+    def __init__(
+        self, survey: Survey, known: dict[int, complex], wanted: set[int], *, free: bool, searching: bool = True
+    ) -> None:
         self.survey, self.free = survey, free
         self.world = Figure(survey, scaled=True)
         self.world.find_north()
@@ -38,7 +41,8 @@ class Assembly:
         self._born = 0
         self._looked_at = 0
         self._open = sorted(wanted)
-        self._last_resorts = (self._turn_hinges, self._decide, self._draw_freely, self._search)
+        constructions = (self._turn_hinges, self._decide, self._draw_freely)
+        self._last_resorts = (*constructions, self._search) if searching else constructions
 
     def missing(self) -> list[int]:
         """Wanted marks that have no point yet."""

@@ -38,13 +38,14 @@ class Start:
     notes: tuple[str, ...]
 
 
-def find_start(job: Job, unknowns: Unknowns) -> Start:
+def find_start(job: Job, unknowns: Unknowns, *, searching: bool = True) -> Start:
     """Start coordinates for every unknown, near enough for Gauss–Newton.
 
-    Given coordinates are used as they are. Raises NetworkError, naming the marks and what is missing, where the
+    Given coordinates are used as they are. `searching`: whether marks that no construction reaches are searched for,
+    which takes its time. Raises NetworkError, naming the marks and what is missing, where the
     observations lead to no start.
     """
-    finder = _Finder(job, unknowns)
+    finder = _Finder(job, unknowns, searching)
     estimate = finder.estimate()
     geometry = finder.geometry(estimate)
     finder.note_idle_setups()
@@ -54,8 +55,8 @@ def find_start(job: Job, unknowns: Unknowns) -> Start:
 class _Finder:
     """The search for one job's start."""
 
-    def __init__(self, job: Job, unknowns: Unknowns) -> None:
-        self.job, self.unknowns = job, unknowns
+    def __init__(self, job: Job, unknowns: Unknowns, searching: bool) -> None:
+        self.job, self.unknowns, self.searching = job, unknowns, searching
         self.notes: list[str] = []
         self.sights = SightLines(job)
         self.in_plan = unknowns.sought[:, 0] | _observed_in_plan(job)
@@ -86,7 +87,8 @@ class _Finder:
         """The plan of all marks observed in plan, from the given points."""
         wanted = np.nonzero(self.in_plan)[0].tolist()
         known = {mark: complex(given[mark]) for mark in wanted if not np.isnan(given[mark])}
-        assembly = Assembly(survey, known, set(wanted), free=self.job.datum.mode == "inner")
+        free = self.job.datum.mode == "inner"
+        assembly = Assembly(survey, known, set(wanted), free=free, searching=self.searching)
         assembly.run()
         if missing := assembly.missing():
             raise plan_error(self.job, assembly, missing)
