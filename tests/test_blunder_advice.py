@@ -53,3 +53,11 @@ def test_an_sd_of_metres_is_told_in_metres(tmp_path: Path) -> None:
     blunder = only(found_in(tmp_path, "fen_levels", "BM17,3.4820", "BM17,3.8420"))
     assert off_by(replace(blunder, sd=np.array([2.5]))) == "up +360.19 ± 2.5000 m"
     assert off_by(replace(blunder, sd=np.array([0.0025]))) == "up +360.19 ± 2.50 mm"
+
+
+def test_one_sentence_says_that_the_search_did_not_come_to_rest(tmp_path: Path) -> None:
+    findings = found_in(tmp_path, "fen_levels", "BM17,3.4820", "BM17,3.8420")
+    job = read_job(tmp_path / "fen_levels")
+    doubt = "It did not come to rest: what it names may be wrong in part."
+    assert doubt not in findings_verdict(job, findings)
+    assert findings_verdict(job, replace(findings, settled=False)).endswith(doubt)

@@ -69,7 +69,8 @@ def findings_verdict(job: Job, findings: Findings) -> str:
         return none_found(job, findings)
     names = "; ".join(map(_named, found[:NAMED]))
     more = f"; and {len(found) - NAMED} more" if len(found) > NAMED else ""
-    return f"The search for blunders names {_number(len(found))}: {names}{more}."
+    doubt = "" if findings.settled else " It did not come to rest: what it names may be wrong in part."
+    return f"The search for blunders names {_number(len(found))}: {names}{more}.{doubt}"
 
 
 def _named(blunder: Blunder) -> str:
