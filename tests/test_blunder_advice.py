@@ -9,7 +9,8 @@ from pathlib import Path
 import numpy as np
 
 from adjust import adjust, read_job
-from adjust.blunders import Blunder, Findings, find_blunders
+from adjust.blunders import Blunder, Correction, Explanation, Findings, Hypothesis, find_blunders
+from adjust.blunders.advice import advice
 from adjust.reports.blunder_words import findings_verdict, off_by
 
 FIELD_DATA = Path(__file__).parents[1] / "field_data"
@@ -34,7 +35,9 @@ def test_two_benchmarks_are_looked_up_and_no_rise_is_measured_again(tmp_path: Pa
     """Two held heights and their difference: whichever is wrong, every rise reads the same."""
     blunder = only(found_in(tmp_path, "fen_levels", "BM17,3.4820", "BM17,3.8420"))
     assert [other.name for other in blunder.alternatives] == ["height of control mark BM23"]
-    assert blunder.advice.startswith("Look up each of these coordinates where they came from")
+    assert blunder.advice.startswith("Look at marks.csv:3 in the book: if it should be height_m 3.4820")
+    assert "if not, look up each of these coordinates where they came from" in blunder.advice
+    assert "easure" not in blunder.advice.replace("was measured here", "")
 
 
 def test_a_weighted_coordinate_is_not_measured_again(tmp_path: Path) -> None:
@@ -61,3 +64,29 @@ def test_one_sentence_says_that_the_search_did_not_come_to_rest(tmp_path: Path) 
     doubt = "It did not come to rest: what it names may be wrong in part."
     assert doubt not in findings_verdict(job, findings)
     assert findings_verdict(job, replace(findings, settled=False)).endswith(doubt)
+
+
+def a_line(name: str) -> Hypothesis:
+    return Hypothesis("observation", name, ((0, np.array([0])),), ("",), "m")
+
+
+def exchanged(odds: float) -> Explanation:
+    corrections = (Correction("distances.csv:7", "horizontal_m", "168.651"),)
+    return Explanation("digits 6 and 5 exchanged", ("digits exchanged",), None, corrections, 0.5, odds)
+
+
+def test_the_book_comes_before_measuring_again_where_an_explanation_convinces() -> None:
+    suspect, others = a_line("distances.csv:7"), [a_line("distances.csv:8")]
+    said = advice(suspect, [exchanged(3700.0)], others, "directions.csv:4", all_held=False)
+    assert said == (
+        "Look at distances.csv:7 in the book: if it should be horizontal_m 168.651, correct it, with the reason; "
+        "if not, measure directions.csv:4 again: that tells which of these it is."
+    )
+    doubtful = advice(suspect, [exchanged(3.0)], others, "directions.csv:4", all_held=False)
+    assert doubtful == "Measure directions.csv:4 again: that tells which of these it is."
+
+
+def test_nothing_is_advised_on_sizes_that_do_not_settle(tmp_path: Path) -> None:
+    said = advice(a_line("distances.csv:7"), [exchanged(3700.0)], [], None, all_held=False, settled=False)
+    assert said.startswith("Begin with the closures")
+    assert "distances.csv:7" not in said

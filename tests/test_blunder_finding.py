@@ -12,7 +12,11 @@ import pytest
 from adjust import Adjustment, Job, adjust
 from adjust.arrays import FloatArray
 from adjust.blunders import Blunder, Findings, find_blunders, find_blunders_of
+from adjust.blunders.deciding import separations
+from adjust.blunders.hypotheses import Hypotheses
+from adjust.blunders.system import System, model_of
 from adjust.job import Control
+from adjust.model import State
 from adjust.observations import HeightDifferences, Observations, Vectors
 from adjust.observations.sighted import HeightedSight
 from adjust.quality import critical_tau
@@ -295,6 +299,43 @@ def test_where_one_can_be_told_nothing_has_to_be_decided() -> None:
     found = only(measured("triangulation", blunders=(Planted("directions.csv:40", 3e-4),)))
     assert found.alternatives == ()
     assert found.deciding is None
+
+
+def test_an_error_of_held_coordinates_is_in_every_repetition() -> None:
+    """Two lines from A are both 50 mm off, or the height of A is: repeated they read right, or 50 mm off again."""
+    rows = [("A", "P", 1.05), ("A", "Q", 1.05), ("B", "P", -1.0), ("B", "Q", -1.0)]
+    marks = {"A": (None, None, 0.0), "B": (None, None, 2.0), "P": None, "Q": None}
+    job = build_job(marks, fixed_height=("A", "B"), levels=rows)
+    adjustment = adjust(job)
+    state = State(adjustment.geometry, adjustment.orientations)
+    hypotheses = Hypotheses.of(System.at(job, model_of(job, adjustment.unknowns, state), state))
+    evidence = hypotheses.evidence()
+    lines = evidence.allowing((0, 1))
+    height = evidence.allowing((numbers_of(hypotheses)["height of control mark A"],))
+    apart = separations(hypotheses.system, hypotheses.columns, hypotheses.lasting, lines, height)
+    sd = np.hypot(0.001, np.sqrt(0.5) * 0.001)  # of the reading and of what the net expects
+    np.testing.assert_allclose(apart, [0.05 / sd, 0.05 / sd, 0.0, 0.0], rtol=0, atol=1e-6)  # sds: rounding
+
+
+def numbers_of(hypotheses: Hypotheses) -> dict[str, int]:
+    return {group.hypothesis.name: number for number, group in enumerate(hypotheses.groups, hypotheses.first_group)}
+
+
+def test_shared_errors_stay_within_what_can_be() -> None:
+    """Distances written ten times too long are no scale of minus 107 % of all of them, and no constant of 700 m."""
+    job = measured("traverses", blunders=tuple(Planted(f"distances.csv:{line}", 1500.0) for line in (4, 9, 12)))
+    adjustment = adjust(job)
+    state = State(adjustment.geometry, adjustment.orientations)
+    hypotheses = Hypotheses.of(System.at(job, model_of(job, adjustment.unknowns, state), state))
+    allowed = hypotheses.evidence().by_itself
+    for number, group in enumerate(hypotheses.groups, hypotheses.first_group):
+        if group.width == 1 and allowed.gains[number] > 0.0:
+            (column,) = allowed.evidence.columns_of(number)
+            error = allowed.score[column] / allowed.diagonal[column]
+            assert group.limits[0] <= error <= group.limits[1], group.hypothesis.name
+    constant = numbers_of(hypotheses)["constant of the distances of distances.csv"]
+    assert allowed.testable[allowed.evidence.columns_of(constant)].all()
+    assert allowed.gains[constant] == 0.0
 
 
 def on_estimated_sigma(job: Job) -> Job:

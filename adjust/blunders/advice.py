@@ -20,35 +20,59 @@ _OF_GROUPS = {
 _OF_GROUPS["target height"] = _OF_GROUPS["instrument height"]
 
 
+CONVINCING = 20.0
+"""Odds of an explanation from which on the book is looked at before anything is measured again: one in twenty errs, the
+usual level of a test."""
+
+UNSETTLED = (
+    "Begin with the closures (hubtack check) and with what the book itself shows; mend the plainest error, then search "
+    "again: the sizes here are not to be relied on."
+)
+
+
 def advice(
     suspect: Hypothesis,
     explanations: Sequence[Explanation],
     alternatives: Sequence[Hypothesis],
     deciding: str | None,
     all_held: bool,
+    settled: bool = True,
 ) -> str:
     """One sentence; `deciding` is the source of the observation whose repetition tells the alternatives apart.
 
     `all_held`: the suspect and all that could stand in its place are coordinates of control, which nobody measures
-    again.
+    again. `settled`: the search came to rest.
     """
-    others = [other for other in alternatives if other.name != suspect.name]
-    if others and all_held:
-        return "Look up each of these coordinates where they came from: all of them are given, none was measured here."
-    if others and deciding:
-        return f"Measure {deciding} again: that tells which of these it is."
-    if others:
-        return (
-            "No single repetition tells which of these it is: compare each with the book, and measure them all again."
-        )
+    if not settled:
+        return UNSETTLED
+    others = any(other.name != suspect.name for other in alternatives)
     corrections = explanations[0].corrections if explanations else ()
-    if corrections:
+    if corrections and (not others or explanations[0].odds >= CONVINCING):
         wanted = " and ".join(f"{each.title} {each.text or 'blank'}" for each in corrections)
         where = " and ".join(dict.fromkeys(each.source for each in corrections))
-        otherwise = _ELSE[suspect.single]
+        otherwise = _continued(_among(deciding, all_held)) if others else _ELSE[suspect.single]
         return (
             f"Look at {where} in the book: if it should be {wanted}, correct it, with the reason; if not, {otherwise}."
         )
+    return _among(deciding, all_held) if others else _by_itself(suspect)
+
+
+def _among(deciding: str | None, all_held: bool) -> str:
+    """Where several errors cannot be told apart."""
+    if all_held:
+        return "Look up each of these coordinates where they came from: all of them are given, none was measured here."
+    if deciding:
+        return f"Measure {deciding} again: that tells which of these it is."
+    return "No single repetition tells which of these it is: compare each with the book, and measure them all again."
+
+
+def _continued(sentence: str) -> str:
+    """A sentence as the last part of another."""
+    return sentence[0].lower() + sentence[1:].rstrip(".")
+
+
+def _by_itself(suspect: Hypothesis) -> str:
+    """Where nothing else could be wrong in its place, and no common mistake says how."""
     if suspect.nature == "control":
         return f"Look up the {suspect.name} where it came from; if it stands there as written, hold it no longer."
     if suspect.nature in _OF_GROUPS:

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 import numpy as np
 from scipy.sparse import csr_array
 
-from adjust.arrays import FloatArray
+from adjust.arrays import BoolArray, FloatArray
 from adjust.blunders.evidence import Allowed
 from adjust.blunders.system import System
 
@@ -16,20 +16,23 @@ APART = 4.13
 0.001 with a power of 0.80 (Baarda 1968)."""
 
 
-def separations(system: System, columns: csr_array, named: Allowed, other: Allowed) -> FloatArray:
+def separations(system: System, columns: csr_array, lasting: BoolArray, named: Allowed, other: Allowed) -> FloatArray:
     """By how many of its sds a repetition (rows,) of each system row would differ under two explanations.
 
-    x_S − x_S' = C Ãᵀ(H' ∇' − H ∇); a repetition has the variance 1 of the row and that of the prediction, here the one
-    with no errors allowed for, diag(Ã C Ãᵀ).
+    x_S − x_S' = C Ãᵀ(H' ∇' − H ∇). An error of held coordinates, `lasting` (columns,), is in the repetition as it was
+    in the observation: H_c ∇_c − H'_c ∇'_c comes on top. A repetition has the variance 1 of the row and that of the
+    prediction, here the one with no errors allowed for, diag(Ã C Ãᵀ).
     """
     away = columns[:, other.columns] @ other.errors - columns[:, named.columns] @ named.errors
+    held = columns[:, other.columns] @ (other.errors * lasting[other.columns])
+    held = held - columns[:, named.columns] @ (named.errors * lasting[named.columns])
     moved = system.factor.normal_solve((system.matrix.T @ away)[:, None])[:, 0]
     leverage = np.concatenate([np.einsum("rii->ri", block).ravel() for block in system.leverage])
-    return np.asarray(np.abs(system.matrix @ moved) / np.sqrt(1.0 + leverage), dtype=np.float64)
+    return np.asarray(np.abs(system.matrix @ moved - held) / np.sqrt(1.0 + leverage), dtype=np.float64)
 
 
 def deciding_row(
-    system: System, columns: csr_array, named: Allowed, others: Sequence[Allowed]
+    system: System, columns: csr_array, lasting: BoolArray, named: Allowed, others: Sequence[Allowed]
 ) -> tuple[int, float] | None:
     """The system row whose repetition separates `named` from the nearest of `others` best, and by how many sds.
 
@@ -37,6 +40,6 @@ def deciding_row(
     """
     if not others:
         return None
-    least = np.min([separations(system, columns, named, other) for other in others], axis=0)
+    least = np.min([separations(system, columns, lasting, named, other) for other in others], axis=0)
     row = int(np.argmax(least))
     return (row, float(least[row])) if least[row] > APART else None

@@ -44,12 +44,14 @@ class Evidence:
     """Scores g and information G of all supposed errors.
 
     `members` lists for each number q of columns the hypotheses that have so many, (m, q) indices of columns, and
-    `numbers` their numbers (m,) among all hypotheses; `shared` (hypotheses,) are those of groups. `weight` (columns,)
-    is hᵀh. `square_sum` is eᵀe = vᵀPv, of `freedom` degrees.
+    `numbers` their numbers (m,) among all hypotheses; `shared` (hypotheses,) are those of groups. `limits` (columns, 2)
+    are the least and the largest error that can be; `weight` (columns,) is hᵀh. `square_sum` is eᵀe = vᵀPv, of
+    `freedom` degrees.
     """
 
     score: FloatArray
     information: InformationMatrix
+    limits: FloatArray
     weight: FloatArray
     members: dict[int, IntArray]
     numbers: dict[int, IntArray]
@@ -191,14 +193,25 @@ class Allowed:
         return np.where(self.testable, self.score / np.sqrt(np.where(self.testable, self.diagonal, 1.0)), 0.0)
 
     @cached_property
+    def possible(self) -> BoolArray:
+        """Which columns (columns,) can be tested, and would by themselves be an error within their limits."""
+        error, (least, largest) = self.score / np.where(self.testable, self.diagonal, 1.0), self.evidence.limits.T
+        return np.asarray(self.testable & (least <= error) & (error <= largest), dtype=np.bool_)
+
+    @cached_property
     def gains(self) -> FloatArray:
-        """T (hypotheses,) of each hypothesis on top of the chosen ones; 0 for these and where it can not be tested."""
+        """T (hypotheses,) of each hypothesis on top of the chosen ones; 0 for these, and where it can not be tested, or
+        not be."""
         gains = np.zeros(self.evidence.count)
         for width, members in self.evidence.members.items():
             numbers = self.evidence.numbers[width]
-            gains[numbers] = self.w[members[:, 0]] ** 2 if width == 1 else self._joint(members)
+            gains[numbers] = self._single(members[:, 0]) if width == 1 else self._joint(members)
         gains[list(self.chosen)] = 0.0
         return gains
+
+    def _single(self, columns: IntArray) -> FloatArray:
+        """T (m,) of hypotheses of one column (m,)."""
+        return np.where(self.possible[columns], self.w[columns] ** 2, 0.0)
 
     def _joint(self, members: IntArray) -> FloatArray:
         """T (m,) of hypotheses of several columns (m, q)."""

@@ -7,7 +7,7 @@ it stood minus the mark.
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -24,6 +24,17 @@ FEWEST_ROWS = 2
 """A group of one row is that row's own error under another name."""
 
 PLAN = ("east", "north")
+
+HEIGHT_LIMITS, CONSTANT_LIMITS, SCALE_LIMITS = (-5.0, 5.0), (-1.0, 1.0), (-0.9, 9.0)
+LIMITS: Mapping[Nature, tuple[float, float]] = {
+    "instrument height": HEIGHT_LIMITS,
+    "target height": HEIGHT_LIMITS,
+    "distance constant": CONSTANT_LIMITS,
+    "distance scale": SCALE_LIMITS,
+    "staff scale": SCALE_LIMITS,
+}
+"""Errors that can be: no tripod or pole is out by five metres, no constant by one, no length is a tenth or ten times
+what it was (feet for metres are a ratio of 3.3); common practice, no source. Without limits they explain anything."""
 
 
 @dataclass(frozen=True)
@@ -45,6 +56,16 @@ class Group:
 
     hypothesis: Hypothesis
     effects: tuple[FloatArray, ...]
+
+    @property
+    def width(self) -> int:
+        """Number q of its columns."""
+        return len(self.hypothesis.components)
+
+    @property
+    def limits(self) -> tuple[float, float]:
+        """The least and the largest error that it can be, metres or a ratio."""
+        return LIMITS.get(self.hypothesis.nature, (-np.inf, np.inf))
 
 
 def find_groups(system: System, interesting: BoolArray | None = None) -> Iterator[Group]:

@@ -138,6 +138,19 @@ class Hypotheses:
         return csc_array(columns)
 
     @cached_property
+    def lasting(self) -> BoolArray:
+        """Which columns (columns,) are errors of held coordinates, which no repetition rids of."""
+        singles = np.zeros(self.rows, dtype=np.bool_)
+        parts = [np.full(group.width, group.hypothesis.nature == "control") for group in self.groups]
+        return np.concatenate([singles, *parts])
+
+    @cached_property
+    def limits(self) -> FloatArray:
+        """The least and the largest error (columns, 2) that each column can be."""
+        singles = np.tile([-np.inf, np.inf], (self.rows, 1))
+        return np.concatenate([singles, *(np.tile(group.limits, (group.width, 1)) for group in self.groups)])
+
+    @cached_property
     def information(self) -> InformationMatrix:
         """G of all columns."""
         columns, factor = self.columns, self.system.factor
@@ -182,6 +195,7 @@ class Hypotheses:
         return Evidence(
             score=score + returned,
             information=self.information,
+            limits=self.limits,
             weight=np.asarray(self.columns.multiply(self.columns).sum(axis=0)).ravel(),
             members=members,
             numbers=numbers,

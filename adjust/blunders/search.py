@@ -131,7 +131,7 @@ def sound(evidence: Evidence, hypotheses: Sequence[int]) -> tuple[int, ...]:
 
 def pair_columns(allowed: Allowed) -> IntArray:
     """The columns (k,) that pairs are made of: those that fit worst, `MOST_PAIRED` at most."""
-    candidates = allowed.testable & (allowed.evidence.owner >= 0)
+    candidates = allowed.possible & (allowed.evidence.owner >= 0)
     candidates[allowed.columns] = False
     columns = np.flatnonzero(candidates)
     if len(columns) <= MOST_PAIRED:

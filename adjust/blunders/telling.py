@@ -85,7 +85,8 @@ class _Teller:
         )
         alternatives = tuple(map(self.found.hypotheses.hypothesis, self.diagnosis.alternatives(number)))
         all_held = all(is_held(self.job, each) for each in (suspect, *alternatives))
-        explanations, deciding = explain(context), None if all_held else self._deciding(number)
+        explanations = explain(context)
+        deciding = None if all_held or not self.found.settled else self._deciding(number)
         return Blunder(
             hypothesis=suspect,
             sources=sources_of(self.job, suspect),
@@ -104,6 +105,7 @@ class _Teller:
                 alternatives,
                 None if deciding is None else deciding[0],
                 all_held,
+                self.found.settled,
             ),
         )
 
@@ -119,7 +121,8 @@ class _Teller:
     def _deciding(self, number: int) -> tuple[str, float] | None:
         evidence = self.diagnosis.evidence
         others = [evidence.allowing(other.chosen) for other in self.diagnosis.replacements if number in other.removed]
-        found = deciding_row(self.system, self.found.hypotheses.columns, self.diagnosis.allowed, others)
+        hypotheses = self.found.hypotheses
+        found = deciding_row(self.system, hypotheses.columns, hypotheses.lasting, self.diagnosis.allowed, others)
         if found is None:
             return None
         source = self.system.model.source(found[0])
