@@ -68,6 +68,10 @@ class Expectation:
         misfits[known] = np.sqrt(np.einsum("ri,ri->r", difference[known], solved))
         return misfits
 
+    def covariance_of(self, combinations: FloatArray, columns: IntArray) -> FloatArray:
+        """F C|S Fᵀ (k, k) of combinations F (k, c) of the unknowns in `columns` (c,)."""
+        return np.asarray(self._variances(combinations[None], columns[None])[0])
+
     def _variances(self, entries: FloatArray, columns: IntArray) -> FloatArray:
         """A C|S Aᵀ (rows, c, c) within each row."""
         rows, components = entries.shape[:2]

@@ -5,29 +5,16 @@ from __future__ import annotations
 from pathlib import Path
 
 from adjust.adjustment import Adjustment
-from adjust.blunders.criterion import Criterion
-from adjust.blunders.diagnosis import Diagnosis, diagnose
-from adjust.blunders.evidence import Evidence
 from adjust.blunders.findings import Findings
-from adjust.blunders.hypotheses import MOST_DENSE, Hypotheses
+from adjust.blunders.released import GROSS, doubtful, tell_released
 from adjust.blunders.round import Round
-from adjust.blunders.snooping import considered, snooped
-from adjust.blunders.system import System, model_of
+from adjust.blunders.rounds import Rounds
 from adjust.blunders.telling import tell
 from adjust.job import Job
 from adjust.model import State
 from adjust.network import find_start
 from adjust.robust import robust_start
-from adjust.solver import Analysis
 from adjust.unknowns import Unknowns, find_unknowns
-
-MOST_ROUNDS = 6
-"""Linearisations at most: each follows the network to where it stands without the blunders of the round before."""
-
-
-GROSS = 100.0
-"""vᵀPv over its degrees of freedom from which on the adjusted network may stand too far from the truth to begin there:
-its residuals are ten times as large as they should be."""
 
 
 def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> Findings:
@@ -36,71 +23,28 @@ def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> F
     `folder` is where the job was read from: entries are then quoted as they stand in the book.
     """
     job, unknowns = adjustment.job, adjustment.unknowns
-    adjusted = _Rounds(job, unknowns, State(adjustment.geometry, adjustment.orientations))
+    adjusted = Rounds(job, unknowns, State(adjustment.geometry, adjustment.orientations))
     if (adjustment.solution.variance_factor or 0.0) < GROSS:
-        return tell(adjusted.last(), folder)
-    robust = _Rounds(job, unknowns, _robust_state(job, unknowns)).last()
+        return _told(adjusted.last(), folder)
+    robust = Rounds(job, unknowns, _robust_state(job, unknowns)).last()
     if robust.settled and robust.variance < GROSS:
-        return tell(robust, folder)
-    return tell(min([robust, adjusted.last()], key=lambda found: (not found.settled, found.left)), folder)
+        return _told(robust, folder)
+    return _told(min([robust, adjusted.last()], key=lambda found: (not found.settled, found.left)), folder)
 
 
 def find_blunders_of(job: Job, folder: str | Path | None = None) -> Findings:
     """As `find_blunders`, of a job whose adjustment does not settle. Raises NetworkError where it has no start."""
     unknowns = find_unknowns(job)
-    return tell(_Rounds(job, unknowns, _robust_state(job, unknowns)).last(), folder)
+    return _told(Rounds(job, unknowns, _robust_state(job, unknowns)).last(), folder)
+
+
+def _told(found: Round, folder: str | Path | None) -> Findings:
+    """With a mark's control released, where the round leaves doubt and that explains the job better."""
+    released = tell_released(found, folder) if doubtful(found) else None
+    return tell(found, folder) if released is None else released
 
 
 def _robust_state(job: Job, unknowns: Unknowns) -> State:
     """Where most observations agree."""
     start = robust_start(job, unknowns, find_start(job, unknowns))
     return State(start.geometry, start.orientations)
-
-
-class _Rounds:
-    """Linearise, diagnose, go where the network stands without the errors, until that is where it was."""
-
-    def __init__(self, job: Job, unknowns: Unknowns, state: State) -> None:
-        self.job, self.state = job, state
-        self.model = model_of(job, unknowns, state)
-        self.analysis: Analysis | None = None
-
-    def last(self) -> Round:
-        """The round that settles it, or the first, if the network runs away from one to the next."""
-        first = found = self._round(None)
-        for _ in range(MOST_ROUNDS - 1):
-            if found.settled:
-                return found.of_smallest_errors()
-            if not found.moved <= found.extent:
-                return first.of_smallest_errors()
-            self.state = found.state
-            found = self._round(found)
-        return found.of_smallest_errors()
-
-    def _round(self, before: Round | None) -> Round:
-        """Large networks are snooped in strides, then looked at closely around what that finds."""
-        system = System.at(self.job, self.model, self.state, self.analysis)
-        self.analysis = system.analysis
-        if self.model.observation_rows <= MOST_DENSE // 2:
-            return self._diagnosed(Hypotheses.of(system), before)
-        snooped = self._snooped(Hypotheses(system, ()), before)
-        rows = considered(snooped.hypotheses, snooped.diagnosis.allowed, snooped.diagnosis.criterion)
-        return self._diagnosed(Hypotheses.of(system, snooped.rows, rows), snooped if before is None else before)
-
-    def _snooped(self, every: Hypotheses, before: Round | None) -> Round:
-        evidence, criterion, known = self._tests(every, before)
-        return Round(every, Diagnosis(evidence, criterion, snooped(evidence, criterion, known)))
-
-    def _diagnosed(self, hypotheses: Hypotheses, before: Round | None) -> Round:
-        evidence, criterion, known = self._tests(hypotheses, before)
-        return Round(hypotheses, diagnose(evidence, criterion, hypotheses.rows, known))
-
-    def _tests(self, hypotheses: Hypotheses, before: Round | None) -> tuple[Evidence, Criterion, tuple[int, ...]]:
-        """The tests of all hypotheses. `before` says what is known already, from the same linearisation or another."""
-        statistics = self.job.statistics
-        known = ((), None) if before is None else before.known_to(hypotheses)
-        evidence = hypotheses.evidence(*known)
-        criterion = Criterion(
-            statistics.significance, statistics.sd_basis == "posterior", evidence.square_sum, evidence.freedom
-        )
-        return evidence, criterion, known[0]
