@@ -11,7 +11,7 @@ import numpy as np
 from adjust import adjust, read_job
 from adjust.blunders import Blunder, Correction, Explanation, Findings, Hypothesis, find_blunders
 from adjust.blunders.advice import advice
-from adjust.reports.blunder_words import findings_verdict, off_by
+from adjust.reports.blunder_words import findings_verdict, instead_words, off_by
 
 FIELD_DATA = Path(__file__).parents[1] / "field_data"
 
@@ -90,3 +90,21 @@ def test_nothing_is_advised_on_sizes_that_do_not_settle(tmp_path: Path) -> None:
     said = advice(a_line("distances.csv:7"), [exchanged(3700.0)], [], None, all_held=False, settled=False)
     assert said.startswith("Begin with the closures")
     assert "distances.csv:7" not in said
+
+
+def test_what_could_stand_in_its_place_is_explained_too(tmp_path: Path) -> None:
+    """Of two benchmarks one has two digits exchanged and the other is named: the mistake is told all the same."""
+    blunder = only(found_in(tmp_path, "fen_levels", "BM17,3.4820", "BM17,3.4280"))
+    assert blunder.name == "height of control mark BM23"
+    assert blunder.explanations == ()
+    (explanation,) = blunder.instead_explained
+    assert explanation is not None
+    assert explanation.mistake == "digits 8 and 2 exchanged: 3.4820 in place of 3.4280"
+    assert instead_words(blunder) == [f"height of control mark BM17 ({explanation.mistake})"]
+
+
+def test_a_choice_between_equals_comes_to_rest(tmp_path: Path) -> None:
+    """Of two that fit equally well the smaller error is named, and the network is looked at once more without it."""
+    findings = found_in(tmp_path, "fen_levels", "BM17,3.4820", "BM17,4.3820")
+    assert findings.settled
+    assert only(findings).alternatives

@@ -35,6 +35,8 @@ class Blunder:
     alternatives: tuple[Hypothesis, ...]
     deciding: tuple[str, float] | None
     explanations: tuple[Explanation, ...]
+    instead_explained: tuple[Explanation | None, ...] = ()
+    """For each of the alternatives the likeliest mistake, were it that one; None where no common mistake fits."""
     booked: tuple[Booked, ...] = ()
     """The cells of the book that it rests on, and what the network expects there."""
     advice: str = ""

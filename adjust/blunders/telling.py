@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -10,7 +11,7 @@ import numpy as np
 from adjust.angles import FULL_TURN, wrapped
 from adjust.arrays import FloatArray
 from adjust.blunders.cells import cells_of
-from adjust.blunders.context import Context
+from adjust.blunders.context import Context, Explanation
 from adjust.blunders.criterion import chi_square_price
 from adjust.blunders.deciding import deciding_row
 from adjust.blunders.expectation import Expectation
@@ -23,6 +24,9 @@ from adjust.job import Job
 from adjust.observations import ControlCoordinates
 from adjust.observations.sighted import HeightedSight
 
+MOST_EXPLAINED = 6
+"""Alternatives that the catalogue is asked about: of more no single one stands out."""
+
 COMPONENTS = {"east": 0, "north": 1, "up": 2}
 
 
@@ -31,7 +35,7 @@ def tell(found: Round, folder: str | Path | None = None) -> Findings:
     diagnosis = found.diagnosis
     suspects = [found.hypotheses.hypothesis(number) for number in diagnosis.chosen]
     lines = cells_of(found.system.job, suspects, folder)
-    teller = _Teller(found)
+    teller = _Teller(found, folder)
     blunders = list(map(teller.blunder, diagnosis.chosen, suspects, lines))
     return Findings(
         blunders=tuple(sorted(blunders, key=lambda blunder: -blunder.test / blunder.critical)),
@@ -52,8 +56,8 @@ def unchecked(found: Round) -> tuple[str, ...]:
 class _Teller:
     """Tells of one suspect after the other."""
 
-    def __init__(self, found: Round) -> None:
-        self.found, self.diagnosis = found, found.diagnosis
+    def __init__(self, found: Round, folder: str | Path | None) -> None:
+        self.found, self.diagnosis, self.folder = found, found.diagnosis, folder
         self.system: System = found.system
         self.job: Job = self.system.job
         allowed = self.diagnosis.allowed
@@ -67,22 +71,9 @@ class _Teller:
         from adjust.blunders.booked import booked
         from adjust.blunders.mistakes import explain
 
-        allowed = self.diagnosis.allowed
-        own = allowed.own(number)
-        error, covariance = allowed.errors[own], allowed.covariance[own, own] * self.variance
+        context = self.context(number, suspect, lines)
+        error, covariance = context.estimated_error, context.error_covariance
         test, critical = self._test(number)
-        context = Context(
-            job=self.job,
-            hypothesis=suspect,
-            geometry=self.found.state.geometry,
-            orientations=self.found.state.orientations,
-            estimated_error=error,
-            error_covariance=covariance,
-            cells=lines[0],
-            critical=float(np.sqrt(chi_square_price(self.diagnosis.criterion.significance, len(error)))),
-            fit_of=self.expectation.misfits,
-            further_cells=tuple(lines[1:]),
-        )
         alternatives = tuple(map(self.found.hypotheses.hypothesis, self.diagnosis.alternatives(number)))
         all_held = all(is_held(self.job, each) for each in (suspect, *alternatives))
         explanations = explain(context)
@@ -98,6 +89,7 @@ class _Teller:
             alternatives=alternatives,
             deciding=deciding,
             explanations=explanations,
+            instead_explained=self._explained_instead(number),
             booked=booked(context),
             advice=advice(
                 suspect,
@@ -108,6 +100,46 @@ class _Teller:
                 self.found.settled,
             ),
         )
+
+    def context(self, number: int, suspect: Hypothesis, lines: Sequence[Line]) -> Context:
+        """What the catalogue is told of one of the chosen hypotheses."""
+        allowed = self.diagnosis.allowed
+        own = allowed.own(number)
+        error, covariance = allowed.errors[own], allowed.covariance[own, own] * self.variance
+        return Context(
+            job=self.job,
+            hypothesis=suspect,
+            geometry=self.found.state.geometry,
+            orientations=self.found.state.orientations,
+            estimated_error=error,
+            error_covariance=covariance,
+            cells=lines[0],
+            critical=float(np.sqrt(chi_square_price(self.diagnosis.criterion.significance, len(error)))),
+            fit_of=self.expectation.misfits,
+            further_cells=tuple(lines[1:]),
+        )
+
+    def _explained_instead(self, number: int) -> tuple[Explanation | None, ...]:
+        """The likeliest mistake for each alternative, in their order; none where they are many, or nothing settled."""
+        alternatives = self.diagnosis.alternatives(number)
+        if len(alternatives) > MOST_EXPLAINED or not self.found.settled:
+            return (None,) * len(alternatives)
+        alone = {
+            each.joined[0]: each.chosen
+            for each in self.diagnosis.replacements
+            if each.removed == (number,) and len(each.joined) == 1
+        }
+        return tuple(self._mistake_of(other, alone[other]) if other in alone else None for other in alternatives)
+
+    def _mistake_of(self, other: int, chosen: tuple[int, ...]) -> Explanation | None:
+        """The likeliest mistake of one of another set of errors."""
+        from adjust.blunders.mistakes import explain
+
+        found = replace(self.found, diagnosis=replace(self.diagnosis, chosen=chosen))
+        suspect = found.hypotheses.hypothesis(other)
+        (lines,) = cells_of(self.job, [suspect], self.folder)
+        told = explain(_Teller(found, self.folder).context(other, suspect, lines))
+        return told[0] if told else None
 
     def _test(self, number: int) -> tuple[float, float]:
         """√T given the others, over σ̂₀ of the network with this error left in, and its bound."""

@@ -43,6 +43,7 @@ def blunder_record(job: Job, blunder: Blunder) -> Record:
         "test": number(blunder.test),
         "critical": number(blunder.critical),
         "alternatives": [each.name for each in blunder.alternatives],
+        "alternative_mistakes": [each and each.mistake for each in blunder.instead_explained],
         "deciding": None if blunder.deciding is None else blunder.deciding[0],
         "written": [
             {"source": each.source, "column": each.title, "text": each.text, "expected": each.expected or None}

@@ -187,18 +187,19 @@ def booked_words(blunder: Blunder) -> list[str]:
 
 
 def instead_words(blunder: Blunder) -> list[str]:
-    """The names of what could stand in its place, of many the first ones."""
-    named = list(map(_instead, blunder.alternatives[:MOST_ALTERNATIVES]))
+    """The names of what could stand in its place, with the mistake that it would be; of many the first ones."""
+    mistakes = dict(zip((each.name for each in blunder.alternatives), blunder.instead_explained, strict=False))
+    shown = blunder.alternatives[:MOST_ALTERNATIVES]
+    named = [_instead(each, mistakes.get(each.name)) for each in shown]
     more = len(blunder.alternatives) - MOST_ALTERNATIVES
     return [*named, f"one of {more} more"] if more > 0 else named
 
 
-def _instead(hypothesis: Hypothesis) -> str:
-    """What could stand in the place of a blunder: its name, and the component where it is a vector's."""
-    if hypothesis.nature == "vector":
-        return f"all of {hypothesis.name}"
-    component = hypothesis.components[0] if hypothesis.single else ""
-    return f"{hypothesis.name} {component}".strip()
+def _instead(hypothesis: Hypothesis, explanation: Explanation | None) -> str:
+    """What could stand in the place of a blunder: its name, the component where it is a vector's, and the mistake."""
+    component = hypothesis.components[0] if hypothesis.single and hypothesis.nature != "vector" else ""
+    name = f"{'all of ' if hypothesis.nature == 'vector' else ''}{hypothesis.name} {component}".strip()
+    return f"{name} ({explanation.mistake})" if explanation else name
 
 
 def explained(explanation: Explanation) -> str:

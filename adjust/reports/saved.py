@@ -277,6 +277,7 @@ class BlunderRecord(Saved):
     test: Figure
     critical: Figure
     alternatives: list[str] = Field(description="Sources or groups that could stand in its place")
+    alternative_mistakes: list[str | None] = Field([], description="For each of these the likeliest mistake")
     deciding: str | None = Field(None, description="The observation whose repetition tells these apart")
     written: list[WrittenRecord] = []
     explanations: list[ExplanationRecord] = Field(description="The likeliest first; none: no common mistake")
