@@ -16,6 +16,7 @@ import numpy as np
 from adjust.arrays import IntArray
 from adjust.blunders.findings import Findings
 from adjust.blunders.groups import PLAN
+from adjust.blunders.hypothesis import Hypothesis
 from adjust.blunders.released_mark import ReleasedMark
 from adjust.blunders.round import Round
 from adjust.blunders.rounds import Rounds
@@ -42,20 +43,27 @@ MOST_RELEASED, MOST_RELEASED_OF_LARGE = 10, 3
 
 def doubtful(found: Round) -> bool:
     """Whether the control of the job may be grossly wrong: the search did not come to rest or left gross residuals, or
-    names control so far off that the size is not to be relied on."""
+    names, or leaves standing, control so far off that the size is not to be relied on."""
     return not found.settled or found.variance >= GROSS or _names_control_far_off(found)
 
 
 def _names_control_far_off(found: Round) -> bool:
-    allowed, control = found.diagnosis.allowed, found.system.job.marks.control
-    for number in allowed.chosen:
-        suspect = found.hypotheses.hypothesis(number)
-        if suspect.nature != "control" or suspect.mark is None or not set(suspect.components) <= set(PLAN):
-            continue
-        size = np.abs(allowed.errors[allowed.own(number)]).max()
-        if control[suspect.mark, 0] == Control.FIXED and size > LARGEST_LINEAR:
-            return True
+    """Fixed in plan, by itself or as what may stand in the place of an observation as far off."""
+    diagnosis, hypothesis = found.diagnosis, found.hypotheses.hypothesis
+    for number in diagnosis.chosen:
+        size = np.abs(diagnosis.allowed.errors[diagnosis.allowed.own(number)]).max()
+        if hypothesis(number).unit == "m" and size > LARGEST_LINEAR:
+            suspects = map(hypothesis, (number, *diagnosis.alternatives(number)))
+            if any(_fixed_in_plan(found.system.job, suspect) for suspect in suspects):
+                return True
     return False
+
+
+def _fixed_in_plan(job: Job, suspect: Hypothesis) -> bool:
+    """Whether it is about plan coordinates that are held."""
+    if suspect.nature != "control" or suspect.mark is None or not set(suspect.components) <= set(PLAN):
+        return False
+    return bool(job.marks.control[suspect.mark, 0] == Control.FIXED)
 
 
 def tell_released(found: Round, folder: str | Path | None) -> Findings | None:
