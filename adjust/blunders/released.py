@@ -73,7 +73,7 @@ def tell_released(found: Round, folder: str | Path | None) -> Findings | None:
     if not released or found.left - released[0].cost <= _equal(found):
         return None
     best, others = released[0], released[1:]
-    standing = [other.hypothesis for other in others if other.cost <= best.cost + best.price]
+    standing = [other for other in others if other.cost <= best.cost + best.price]
     findings = tell(best.found, folder)
     blunders = [*findings.blunders, best.blunder(standing, folder)]
     return replace(findings, blunders=tuple(sorted(blunders, key=lambda blunder: -blunder.test / blunder.critical)))

@@ -126,14 +126,15 @@ class ReleasedMark:
         )
         return Hypothesis("control", f"{what} of control mark {name}", rows, components, "m", self.mark)
 
-    def blunder(self, alternatives: Sequence[Hypothesis], folder: str | Path | None) -> Blunder:
-        """All about the error."""
+    def blunder(self, others: Sequence[ReleasedMark], folder: str | Path | None) -> Blunder:
+        """All about the error; `others` may stand in its place."""
         from adjust.blunders.advice import advice
         from adjust.blunders.booked import booked
         from adjust.blunders.mistakes import explain
 
         suspect, context = self.hypothesis, self._context(folder)
-        explanations = explain(context)
+        explanations, alternatives = explain(context), tuple(other.hypothesis for other in others)
+        instead = (explain(other._context(folder)) for other in others)
         test, critical = self._test()
         return Blunder(
             hypothesis=suspect,
@@ -143,9 +144,10 @@ class ReleasedMark:
             expected_value=expected_value(self.job, suspect, context.estimated_error),
             test=test,
             critical=critical,
-            alternatives=tuple(alternatives),
+            alternatives=alternatives,
             deciding=None,
             explanations=explanations,
+            instead_explained=tuple(told[0] if told else None for told in instead),
             booked=booked(context),
             advice=advice(suspect, explanations, alternatives, None, all_held=True),
         )
