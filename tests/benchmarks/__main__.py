@@ -50,7 +50,7 @@ def main() -> None:
 def measure(name: str, marks: int) -> dict[str, object]:
     """Seconds of each part in the quickest repetition, and the peak memory of this process in bytes."""
     problem = grid_problem(marks)
-    repetitions = 5 if marks <= 10_000 else 2
+    repetitions = 20 if marks <= 10_000 else 3
     runs = [CONTENDERS[name](problem) for _ in range(1 if name in ("GTSAM", "LSMR") else repetitions)]
     peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss * (1 if sys.platform == "darwin" else 1024)
     return {"seconds": min(runs, key=lambda run: sum(run.values())), "peak": peak, "rows": problem.matrix.shape[0]}
