@@ -29,7 +29,7 @@ from adjust.iteration import after_step, moved_by, station_of_setups
 from adjust.job import Job
 from adjust.model import State, build_model
 from adjust.network import Start, datum_parts, find_start
-from adjust.solver import Analysis, analyse
+from adjust.solver import Analysis, analyse, rows_weighted
 from adjust.unknowns import Unknowns
 
 HUBER = 1.345
@@ -143,8 +143,7 @@ class _Reweighting:
     def _step(self, name: str) -> State:
         linearisation = self.model.linearise(self.state)
         weights = np.sqrt(self._weights(linearisation.right_side, name))
-        matrix = linearisation.matrix.copy()
-        matrix.data = matrix.data * np.repeat(weights, np.diff(matrix.indptr))
+        matrix = rows_weighted(linearisation.matrix, weights)
         if self.analysis is None:
             groups = self.model.groups(station_of_setups(self.job))
             self.analysis = analyse(matrix, groups, self.state.geometry.coordinates[:, :2])

@@ -11,6 +11,8 @@ from adjust.arrays import BoolArray, IntArray
 from adjust.job import Control, Job
 
 EAST, NORTH, UP = 0, 1, 2
+AXES = ("east", "north", "up")
+"""Their names."""
 
 
 @dataclass(frozen=True)

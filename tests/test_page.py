@@ -130,9 +130,10 @@ def test_observations_on_the_page_are_those_of_the_results(written):
 
 
 def _word(record):
-    from adjust.reports.wording import NAMES, what
+    from adjust.observations import KIND_NAMES
+    from adjust.reports.wording import what
 
-    return what(record) if record["component"] else NAMES[record["kind"]][0]
+    return what(record) if record["component"] else KIND_NAMES[record["kind"]][0]
 
 
 def test_lines_on_the_page_are_those_of_the_results(written):

@@ -25,6 +25,11 @@ class Diagnosis:
         """The tests of everything once the chosen errors are allowed for."""
         return self.evidence.allowing(self.chosen)
 
+    @property
+    def variance(self) -> float:
+        """σ₀² of the network without the chosen errors; 1 where it is known."""
+        return self.criterion.variance(self.allowed.statistic, len(self.allowed.columns))
+
     @cached_property
     def replacements(self) -> tuple[Replacement, ...]:
         """Other sets that the data leave standing."""

@@ -6,8 +6,8 @@ from pathlib import Path
 
 from adjust.adjustment import Adjustment
 from adjust.blunders.findings import Findings
-from adjust.blunders.released import GROSS, doubtful, tell_released
-from adjust.blunders.round import Round
+from adjust.blunders.released import doubtful, tell_released
+from adjust.blunders.round import GROSS, Round
 from adjust.blunders.rounds import Rounds
 from adjust.blunders.telling import tell
 from adjust.job import Job
@@ -27,7 +27,7 @@ def find_blunders(adjustment: Adjustment, folder: str | Path | None = None) -> F
     if (adjustment.solution.variance_factor or 0.0) < GROSS:
         return _told(adjusted.last(), folder)
     robust = Rounds(job, unknowns, _robust_state(job, unknowns)).last()
-    if robust.settled and robust.variance < GROSS:
+    if robust.plausible:
         return _told(robust, folder)
     return _told(min([robust, adjusted.last()], key=lambda found: (not found.settled, found.left)), folder)
 

@@ -19,11 +19,13 @@ from adjust.blunders.system import System
 from adjust.job import Control
 from adjust.observations import ControlCoordinates, Directions, Observations
 from adjust.observations.sighted import HeightedSight
+from adjust.unknowns import AXES
 
 FEWEST_ROWS = 2
 """A group of one row is that row's own error under another name."""
 
-PLAN = ("east", "north")
+PLAN = AXES[:2]
+COORDINATES = dict(zip(AXES, ("easting", "northing", "height"), strict=True))
 
 HEIGHT_LIMITS, CONSTANT_LIMITS, SCALE_LIMITS = (-5.0, 5.0), (-1.0, 1.0), (-0.9, 9.0)
 LIMITS: Mapping[Nature, tuple[float, float]] = {
@@ -66,6 +68,12 @@ class Group:
     def limits(self) -> tuple[float, float]:
         """The least and the largest error that it can be, metres or a ratio."""
         return LIMITS.get(self.hypothesis.nature, (-np.inf, np.inf))
+
+
+def control_name(mark: str, components: Sequence[str]) -> str:
+    """What an error of some held coordinates of a mark is called."""
+    what = "position" if len(components) > 1 else COORDINATES[components[0]]
+    return f"{what} of control mark {mark}"
 
 
 def find_groups(system: System, interesting: BoolArray | None = None) -> Iterator[Group]:
@@ -201,12 +209,11 @@ class _Finder:
 
     def _coordinates(self, mark: int, parts: list[Entries], components: Sequence[str]) -> Iterator[Group]:
         name = self.names[mark]
-        words = {"east": "easting", "north": "northing", "up": "height"}
         for number, component in enumerate(components):
             single = [Entries(p.table, p.rows, p.key, p.effect[:, :, number : number + 1]) for p in parts]
-            yield self._group("control", f"{words[component]} of control mark {name}", single, (component,), mark)
+            yield self._group("control", control_name(name, (component,)), single, (component,), mark)
         if len(components) > 1:
-            yield self._group("control", f"position of control mark {name}", parts, components, mark)
+            yield self._group("control", control_name(name, components), parts, components, mark)
 
     def weighted_control(self) -> Iterator[Group]:
         """All coordinates of a weighted mark together; each by itself is an observation."""
@@ -216,7 +223,7 @@ class _Finder:
             for mark in np.unique(rows.marks[:, 0]).tolist():
                 here = np.flatnonzero(rows.marks[:, 0] == mark)
                 if len(here) > 1 and self._concerned(place, here):
-                    components = tuple(("east", "north", "up")[component] for component in rows.component[here])
+                    components = tuple(AXES[component] for component in rows.component[here])
                     effect = np.eye(len(here))[:, None, :]
                     part = Entries(place, here, np.full(len(here), mark), effect)
                     yield self._group(

@@ -6,6 +6,9 @@ from dataclasses import dataclass
 from typing import Literal
 
 from adjust.arrays import IntArray
+from adjust.job import Job
+from adjust.observations import ControlCoordinates
+from adjust.unknowns import AXES
 
 Nature = Literal[
     "observation",
@@ -45,3 +48,13 @@ class Hypothesis:
     def single(self) -> bool:
         """Whether it concerns one row of the field book, not a group."""
         return self.nature in ("observation", "vector")
+
+    def given_axes(self, job: Job) -> tuple[int, ...]:
+        """The axes (east 0, north 1, up 2) of the given coordinates, fixed or weighted, that it is about; none where it
+        is about anything observed."""
+        if self.nature == "control":
+            return tuple(map(AXES.index, self.components))
+        kind, rows = self.rows[0]
+        observations = job.observations[kind]
+        weighted = self.single and isinstance(observations, ControlCoordinates)
+        return (int(observations.component[rows[0]]),) if weighted else ()  # type: ignore[attr-defined]

@@ -29,10 +29,6 @@ from adjust.network import find_start
 from adjust.robust import MOST_MARKS, robust_start
 from adjust.unknowns import find_unknowns
 
-GROSS = 100.0
-"""vᵀPv over its degrees of freedom from which on the adjusted network may stand too far from the truth to begin there:
-its residuals are ten times as large as they should be."""
-
 LARGEST_LINEAR = 1.0
 """Metres that a fixed mark may be off in plan for its effect to be linear: across a sight of 50 m the neglected second
 order is s²/2D, a centimetre. Free marks are linearised again where they stand, a fixed one is not."""
@@ -44,7 +40,7 @@ MOST_RELEASED, MOST_RELEASED_OF_LARGE = 10, 3
 def doubtful(found: Round) -> bool:
     """Whether the control of the job may be grossly wrong: the search did not come to rest or left gross residuals, or
     names, or leaves standing, control so far off that the size is not to be relied on."""
-    return not found.settled or found.variance >= GROSS or _names_control_far_off(found)
+    return not found.plausible or _names_control_far_off(found)
 
 
 def _names_control_far_off(found: Round) -> bool:
@@ -130,4 +126,4 @@ def _searched(job: Job) -> Round | None:
         found = Rounds(job, unknowns, State(start.geometry, start.orientations)).last()
     except HubtackError:
         return None
-    return found if found.settled and found.variance < GROSS else None
+    return found if found.plausible else None

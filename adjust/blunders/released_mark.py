@@ -19,13 +19,12 @@ from adjust.blunders.criterion import Criterion, chi_square_price
 from adjust.blunders.evidence import Sort
 from adjust.blunders.expectation import Expectation
 from adjust.blunders.findings import Blunder
+from adjust.blunders.groups import control_name
 from adjust.blunders.hypothesis import Hypothesis
 from adjust.blunders.round import Round
-from adjust.blunders.telling import expected_value, sources_of
+from adjust.blunders.telling import context_of, expectation_of, expected_value, sources_of
 from adjust.job import Job
-
-AXES = ("east", "north", "up")
-WORDS = {"east": "easting", "north": "northing", "up": "height"}
+from adjust.unknowns import AXES
 
 
 @dataclass(frozen=True)
@@ -51,9 +50,8 @@ class ReleasedMark:
 
     @cached_property
     def expectation(self) -> Expectation:
-        """What the network expects of observations, with σ₀² as 1."""
-        allowed = self.found.diagnosis.allowed
-        return Expectation(self.found.system, self.found.state, allowed, self.found.columns_of(allowed))
+        """What the network without the mark's coordinates expects of observations."""
+        return expectation_of(self.found)
 
     @cached_property
     def covariance(self) -> FloatArray:
@@ -93,8 +91,7 @@ class ReleasedMark:
     @property
     def variance(self) -> float:
         """σ₀² where it is estimated, else 1."""
-        allowed = self.found.diagnosis.allowed
-        return self.criterion.variance(allowed.statistic, len(allowed.columns))
+        return self.found.diagnosis.variance
 
     @property
     def sort(self) -> Sort:
@@ -116,15 +113,14 @@ class ReleasedMark:
     @property
     def hypothesis(self) -> Hypothesis:
         """The error, named as where the job is searched as it is."""
-        components, name = self.components, self.job.marks.names[self.mark]
-        what = "position" if len(components) > 1 else WORDS[components[0]]
+        components, name = self.components, control_name(self.job.marks.names[self.mark], self.components)
         rows = tuple(
             (place, here)
             for place, each in enumerate(self.job.observations)
             if (each.determines_plan if self.part == 0 else each.determines_height)
             and len(here := np.flatnonzero((each.marks == self.mark).any(axis=1)))
         )
-        return Hypothesis("control", f"{what} of control mark {name}", rows, components, "m", self.mark)
+        return Hypothesis("control", name, rows, components, "m", self.mark)
 
     def blunder(self, others: Sequence[ReleasedMark], folder: str | Path | None) -> Blunder:
         """All about the error; `others` may stand in its place."""
@@ -155,18 +151,8 @@ class ReleasedMark:
     def _context(self, folder: str | Path | None) -> Context:
         _, error, covariance, _ = self.fitted
         (lines,) = cells_of(self.job, [self.hypothesis], folder)
-        return Context(
-            job=self.job,
-            hypothesis=self.hypothesis,
-            geometry=self.found.state.geometry,
-            orientations=self.found.state.orientations,
-            estimated_error=error,
-            error_covariance=covariance * self.variance,
-            cells=lines[0],
-            critical=float(np.sqrt(chi_square_price(self.criterion.significance, len(error)))),
-            fit_of=replace(self.expectation, variance=self.variance).misfits,
-            further_cells=tuple(lines[1:]),
-        )
+        estimate = (error, covariance * self.variance)
+        return context_of(self.job, self.hypothesis, self.found, self.expectation, estimate, lines)
 
     def _test(self) -> tuple[float, float]:
         """√T over σ̂₀ of the network with this error left in, and its bound."""

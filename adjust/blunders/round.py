@@ -19,6 +19,10 @@ NEAR = 0.01
 """Metres: a network that moves by less than this when its blunders are allowed for is linear enough. Across a sight of
 50 m the neglected second order is s²/2D, a thousandth of a millimetre."""
 
+GROSS = 100.0
+"""vᵀPv over its degrees of freedom from which on a network may stand too far from the truth to go on from there: its
+residuals are ten times as large as they should be."""
+
 
 @dataclass(frozen=True)
 class Round:
@@ -86,6 +90,11 @@ class Round:
     def settled(self) -> bool:
         """Whether the network without the errors stands where it was linearised."""
         return self.moved <= NEAR
+
+    @property
+    def plausible(self) -> bool:
+        """Whether it is settled and leaves no gross residuals."""
+        return self.settled and self.variance < GROSS
 
     @property
     def extent(self) -> float:

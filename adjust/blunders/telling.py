@@ -27,8 +27,6 @@ from adjust.observations.sighted import HeightedSight
 MOST_EXPLAINED = 6
 """Alternatives that the catalogue is asked about: of more no single one stands out."""
 
-COMPONENTS = {"east": 0, "north": 1, "up": 2}
-
 
 def tell(found: Round, folder: str | Path | None = None) -> Findings:
     """The findings of the round that settled it; entries are quoted from `folder`, where there is one."""
@@ -47,6 +45,36 @@ def tell(found: Round, folder: str | Path | None = None) -> Findings:
     )
 
 
+def expectation_of(found: Round) -> Expectation:
+    """What the network without the errors found expects of observations."""
+    allowed = found.diagnosis.allowed
+    return Expectation(found.system, found.state, allowed, found.columns_of(allowed), found.diagnosis.variance)
+
+
+def context_of(
+    job: Job,
+    suspect: Hypothesis,
+    found: Round,
+    expectation: Expectation,
+    error: tuple[FloatArray, FloatArray],
+    lines: Sequence[Line],
+) -> Context:
+    """What the catalogue is told of a suspect with its estimated `error` (q,) and the covariance (q, q) of that."""
+    size, covariance = error
+    return Context(
+        job=job,
+        hypothesis=suspect,
+        geometry=found.state.geometry,
+        orientations=found.state.orientations,
+        estimated_error=size,
+        error_covariance=covariance,
+        cells=lines[0],
+        critical=float(np.sqrt(chi_square_price(found.diagnosis.criterion.significance, len(size)))),
+        fit_of=expectation.misfits,
+        further_cells=tuple(lines[1:]),
+    )
+
+
 def unchecked(found: Round) -> tuple[str, ...]:
     """Sources of the rows in which a blunder shows in no residual, in the order of the book."""
     rows = found.hypotheses.untestable_rows
@@ -60,10 +88,7 @@ class _Teller:
         self.found, self.diagnosis, self.folder = found, found.diagnosis, folder
         self.system: System = found.system
         self.job: Job = self.system.job
-        allowed = self.diagnosis.allowed
-        self.variance = self.diagnosis.criterion.variance(allowed.statistic, len(allowed.columns))
-        columns = found.columns_of(allowed)
-        self.expectation = Expectation(self.system, found.state, allowed, columns, self.variance)
+        self.expectation = expectation_of(found)
 
     def blunder(self, number: int, suspect: Hypothesis, lines: Sequence[Line]) -> Blunder:
         """All about one of the chosen hypotheses. What only a suspect needs is imported when there is one."""
@@ -105,19 +130,8 @@ class _Teller:
         """What the catalogue is told of one of the chosen hypotheses."""
         allowed = self.diagnosis.allowed
         own = allowed.own(number)
-        error, covariance = allowed.errors[own], allowed.covariance[own, own] * self.variance
-        return Context(
-            job=self.job,
-            hypothesis=suspect,
-            geometry=self.found.state.geometry,
-            orientations=self.found.state.orientations,
-            estimated_error=error,
-            error_covariance=covariance,
-            cells=lines[0],
-            critical=float(np.sqrt(chi_square_price(self.diagnosis.criterion.significance, len(error)))),
-            fit_of=self.expectation.misfits,
-            further_cells=tuple(lines[1:]),
-        )
+        covariance = allowed.covariance[own, own] * self.diagnosis.variance
+        return context_of(self.job, suspect, self.found, self.expectation, (allowed.errors[own], covariance), lines)
 
     def _explained_instead(self, number: int) -> tuple[Explanation | None, ...]:
         """The likeliest mistake for each alternative, in their order; none where they are many, or nothing settled."""
@@ -169,8 +183,7 @@ def given_sources(job: Job) -> frozenset[str]:
 
 def is_held(job: Job, hypothesis: Hypothesis) -> bool:
     """Whether it is about given coordinates, fixed or weighted, and not about anything observed."""
-    weighted = hypothesis.single and isinstance(job.observations[hypothesis.rows[0][0]], ControlCoordinates)
-    return weighted or hypothesis.nature == "control"
+    return bool(hypothesis.given_axes(job))
 
 
 def sources_of(job: Job, hypothesis: Hypothesis) -> tuple[str, ...]:
@@ -184,12 +197,12 @@ def expected_value(job: Job, hypothesis: Hypothesis, error: FloatArray) -> Float
 
     Of control it is the coordinate along the grid's axes, None in a geographic CRS.
     """
-    if hypothesis.nature == "control" and hypothesis.mark is not None:
-        return _coordinates(job, hypothesis.mark, [COMPONENTS[name] for name in hypothesis.components], error)
     kind, rows = hypothesis.rows[0]
     observations, row = job.observations[kind], int(rows[0])
-    if isinstance(observations, ControlCoordinates) and hypothesis.single:
-        return _coordinates(job, int(observations.marks[row, 0]), [int(observations.component[row])], error)
+    axes = hypothesis.given_axes(job)
+    if axes:
+        mark = int(observations.marks[row, 0]) if hypothesis.mark is None else hypothesis.mark
+        return _coordinates(job, mark, axes, error)
     if hypothesis.single:
         components = [observations.components.index(name) for name in hypothesis.components]
         written: FloatArray = observations.observed[row, components]

@@ -5,7 +5,7 @@ from __future__ import annotations
 import posixpath
 from dataclasses import dataclass
 
-from adjust.field_book.columns import TableRows, plain_sheet, read_table
+from adjust.field_book.columns import TableRows, read_table
 from adjust.field_book.decisions import Decisions
 from adjust.field_book.folder import Folder
 from adjust.field_book.job_file import JobFile, JobFileReader
@@ -43,9 +43,9 @@ class BookReader:
         job_file: JobFile,
         reader: JobFileReader,
         mistakes: Mistakes,
-        decisions: Decisions | None = None,
+        decisions: Decisions,
     ) -> None:
-        self.sheet_of = plain_sheet if decisions is None else decisions.sheet
+        self.decisions = decisions
         self.folder = folder
         self.job_file = job_file
         self.reader = reader
@@ -97,7 +97,7 @@ class BookReader:
         """The rows of one table, or None where it has no file that can be read."""
         found = ((file, self.folder.text(file)) for file in self._files(table))
         texts = {file: text for file, text in found if text is not None}
-        return read_table(table, texts, words, self.mistakes, self.sheet_of) if texts else None
+        return read_table(table, texts, words, self.mistakes, self.decisions.sheet) if texts else None
 
     def _files(self, table: Table) -> list[str]:
         """The files of a table: those that the job file names, or the one of its own name where there is one."""

@@ -8,13 +8,13 @@ from itertools import repeat
 
 import numpy as np
 
+from adjust.angles import FULL_TURN
 from adjust.arrays import FloatArray, IntArray
 from adjust.units import ANGLE_ENDINGS, LENGTH_ENDINGS, format_dms
 
 Table = dict[str, list[str]]
 """Cells of a table column by column, under the titles of the header row; all columns of one length."""
 
-TURN = 2 * np.pi
 
 FULL_SECONDS = 9
 """Decimals of a second of arc, 5e-15 rad, about what double precision holds of an angle of one radian."""
@@ -46,7 +46,7 @@ class Style:
         unit = ANGLE_ENDINGS["arcsec" if self.sexagesimal else "deg"]
         if full_circle and name in self.decimals:
             step = unit / 10 ** self.decimals[name]
-            radians = np.round(radians / step) % round(TURN / step) * step
+            radians = np.round(radians / step) % round(FULL_TURN / step) * step
         if not self.sexagesimal:
             return {f"{name}_deg": self.numbers(name, radians, unit)}
         decimals = self.decimals.get(name, FULL_SECONDS)

@@ -46,9 +46,10 @@ _SOURCE = re.compile(r"(.+):([0-9]+)((?:\+[0-9]+)*)")
 
 
 class Decisions:
-    """The rulings of one table of decisions, and what became of them in the files of the book."""
+    """The rulings of one table of decisions, and what became of them in the files of the book; none where nothing is
+    decided."""
 
-    def __init__(self, name: str, rulings: tuple[Ruling, ...], mistakes: Mistakes) -> None:
+    def __init__(self, mistakes: Mistakes, name: str = "", rulings: tuple[Ruling, ...] = ()) -> None:
         self.name = name
         self.rulings = rulings
         self._mistakes = mistakes
@@ -92,14 +93,14 @@ def read_decisions(path: str | Path, folder: Folder, mistakes: Mistakes) -> Deci
     """The decisions in a file; mistakes are noted, not raised."""
     name, text = str(path), folder.text_of_another(Path(path))
     if text is None:
-        return Decisions(name, (), mistakes)
+        return Decisions(mistakes, name)
     words = {column.name: Vocabulary(column.name) for column in DECISIONS.columns}
     rows = read_table(DECISIONS, {name: text}, words, mistakes)
     if mistakes.any_in(name):
-        return Decisions(name, (), mistakes)
+        return Decisions(mistakes, name)
     rulings = tuple(_rulings(rows, {name: (*word.names, "") for name, word in words.items()}, mistakes))
     _check_twice(rulings, name, mistakes)
-    return Decisions(name, rulings, mistakes)
+    return Decisions(mistakes, name, rulings)
 
 
 def _rulings(rows: TableRows, words: dict[str, tuple[str, ...]], mistakes: Mistakes) -> Iterator[Ruling]:

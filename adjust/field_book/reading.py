@@ -45,7 +45,7 @@ def read_job(path: str | Path, decisions: str | Path | None = None) -> Job:
     if job_file is None:
         mistakes.raise_if_any()
         raise AssertionError("a job file that cannot be read leaves a mistake behind")
-    decided = None if decisions is None else read_decisions(decisions, folder, mistakes)
+    decided = Decisions(mistakes) if decisions is None else read_decisions(decisions, folder, mistakes)
     return JobReader(folder, job_file, reader, mistakes, decided).read()
 
 
@@ -58,11 +58,10 @@ class JobReader:
         job_file: JobFile,
         reader: JobFileReader,
         mistakes: Mistakes,
-        decisions: Decisions | None = None,
+        decisions: Decisions,
     ) -> None:
         self.decisions = decisions
-        if decisions is not None:
-            mistakes.blame = decisions.blamed
+        mistakes.blame = decisions.blamed
         self.folder = folder
         self.job_file = job_file
         self.reader = reader
@@ -77,8 +76,7 @@ class JobReader:
         frame, grid = self.settings.frame(), self.settings.geoid_grid()
         tolerances = read_tolerances(self.job_file.tolerances, self.reader)
         book = self.tables.read()
-        if self.decisions is not None:
-            self.decisions.check_sources()
+        self.decisions.check_sources()
         marks = self._marks(book, frame)
         in_use, left_out = self._observations(book)
         if frame is None or marks is None:
@@ -111,7 +109,7 @@ class JobReader:
             refraction_coefficient=self.job_file.frame.refraction_coefficient,
             target_constants={name: target.constant_mm * MILLIMETRE for name, target in self.job_file.targets.items()},
             left_out=left_out,
-            decisions=() if self.decisions is None else self.decisions.taken,
+            decisions=self.decisions.taken,
             notes=tuple(self.notes),
             reduction=self.raw.reduction,
             input_sha256=self.folder.fingerprint(),

@@ -7,7 +7,6 @@ from pathlib import Path
 
 from adjust.adjustment import Adjustment
 from adjust.blunders import Findings
-from adjust.frames import EllipsoidFrame
 from adjust.job import Job
 from adjust.reports.blunder_records import blunder_records
 from adjust.reports.blunder_words import blunder_lines, findings_verdict, none_found
@@ -15,7 +14,7 @@ from adjust.reports.decision_words import decision_records, decision_section
 from adjust.reports.detectability import detectability, detectability_lines, unchecked_words
 from adjust.reports.layout import paragraph, title
 from adjust.reports.publish import publish
-from adjust.reports.records import Record
+from adjust.reports.records import Record, job_record
 from adjust.reports.results import write_list
 
 BLUNDER_REPORTS = ("blunders.json", "blunders.txt")
@@ -94,13 +93,7 @@ def _write_records(job: Job, findings: Findings, adjustment: Adjustment | None, 
 def _summary(job: Job, findings: Findings, adjustment: Adjustment | None) -> Record:
     """The job, and by what level it was searched."""
     return {
-        "job": {
-            "title": job.title,
-            "frame": job.frame.kind,
-            "crs": job.frame.crs if isinstance(job.frame, EllipsoidFrame) else None,
-            "input_sha256": job.input_sha256,
-            "date": job.date,
-        },
+        "job": job_record(job),
         "adjusted": adjustment is not None,
         "settled": findings.settled,
         "significance": findings.significance,

@@ -15,8 +15,6 @@ from adjust.reports.records import CONTROL_COMPONENTS, Record, number
 if TYPE_CHECKING:
     from adjust.blunders import Blunder, Explanation, Findings, Hypothesis
 
-_ALONG = dict(zip(("east", "north", "up"), CONTROL_COMPONENTS, strict=True))
-
 
 def blunder_records(job: Job, findings: Findings) -> Iterator[Record]:
     """One record a blunder, the plainest first."""
@@ -56,10 +54,7 @@ def blunder_record(job: Job, blunder: Blunder) -> Record:
 
 def _components(job: Job, suspect: Hypothesis) -> tuple[str, ...]:
     """Names of the components: easting, northing and height of control."""
-    observations = job.observations[suspect.rows[0][0]]
-    if suspect.single and observations.kind == "control":
-        return (CONTROL_COMPONENTS[int(observations.component[suspect.rows[0][1][0]])],)  # type: ignore[attr-defined]
-    return tuple(_ALONG[name] for name in suspect.components) if suspect.nature == "control" else suspect.components
+    return tuple(CONTROL_COMPONENTS[axis] for axis in suspect.given_axes(job)) or suspect.components
 
 
 def _figure(suspect: Hypothesis, names: Sequence[str], values: FloatArray | None) -> Any:

@@ -6,9 +6,10 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
 from adjust.job import Job
+from adjust.observations import KIND_NAMES
 from adjust.reports.check_words import by_file
 from adjust.reports.layout import facts, paragraph, title
-from adjust.reports.wording import NAMES, between, counted, decimals
+from adjust.reports.wording import between, counted, decimals
 from adjust.units import (
     ANGLE_ENDINGS,
     ARCSEC,
@@ -150,7 +151,7 @@ def what_of(job: Job, hypothesis: Hypothesis) -> str:
     names = [job.marks.names[mark] for mark in marks_of(job, hypothesis)]
     roles = dict.fromkeys(("at", "from", "to")) | dict(zip(observations.roles, names, strict=True))
     component = f" {hypothesis.components[0]}" if hypothesis.components[0] and len(hypothesis.components) == 1 else ""
-    return f"{NAMES[observations.kind][0]}{component} {between(roles)}"
+    return f"{KIND_NAMES[observations.kind][0]}{component} {between(roles)}"
 
 
 def marks_of(job: Job, hypothesis: Hypothesis) -> tuple[int, ...]:

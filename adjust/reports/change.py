@@ -12,6 +12,7 @@ from adjust.arrays import FloatArray
 from adjust.reports.layout import Column, table
 from adjust.reports.records import MILLIMETRES, known_coordinates, records, scalar_figures
 from adjust.reports.wording import between, counted, decimals, what
+from adjust.unknowns import AXES
 
 MOVED = 1e-5
 """Metres: the iteration's own standstill, below which two runs of the same data may differ."""
@@ -19,7 +20,7 @@ MOVED = 1e-5
 NAMED = 10
 """Marks or suspects that are named: enough to find the place, few enough to read."""
 
-COLUMNS = (Column("mark", text=True), *(Column(axis, "mm") for axis in ("east", "north", "up")))
+COLUMNS = (Column("mark", text=True), *(Column(axis, "mm") for axis in AXES))
 
 Key = tuple[str | int | None, ...]
 

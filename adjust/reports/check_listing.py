@@ -10,7 +10,6 @@ import numpy as np
 from adjust.network.closures.check import Check
 from adjust.network.closures.closures import Judged
 from adjust.reports.check_words import (
-    MILLIMETRES,
     NAMES,
     by_file,
     check_verdict,
@@ -22,6 +21,7 @@ from adjust.reports.check_words import (
     walk,
 )
 from adjust.reports.layout import GAP, Column, facts, paragraph, table, title
+from adjust.reports.records import MILLIMETRES
 from adjust.reports.wording import counted, decimals
 from adjust.tolerances import STANDARDS
 from adjust.units import format_dms

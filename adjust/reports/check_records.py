@@ -9,11 +9,10 @@ from pathlib import Path
 import numpy as np
 
 from adjust.arrays import FloatArray
-from adjust.frames import EllipsoidFrame
 from adjust.network.closures.check import Check
 from adjust.network.closures.closures import Judged
 from adjust.reports.check_words import observations, rests_on
-from adjust.reports.records import Record, number
+from adjust.reports.records import Record, job_record, number
 from adjust.reports.results import write_list
 from adjust.tolerances import STANDARDS
 
@@ -44,13 +43,7 @@ def summary_record(check: Check) -> Record:
     """The job, whether it passed, and by what it was judged."""
     job, tolerances = check.job, check.job.tolerances
     return {
-        "job": {
-            "title": job.title,
-            "frame": job.frame.kind,
-            "crs": job.frame.crs if isinstance(job.frame, EllipsoidFrame) else None,
-            "input_sha256": job.input_sha256,
-            "date": job.date,
-        },
+        "job": job_record(job),
         "passed": check.passed,
         "exceeding": check.exceeding,
         "standards": [{"name": name, "source": STANDARDS[name].source} for name in tolerances.standards],

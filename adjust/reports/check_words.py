@@ -10,6 +10,7 @@ import numpy as np
 from adjust.network.closures.check import Check
 from adjust.network.closures.closures import Judged
 from adjust.network.closures.suspicion import Suspicion
+from adjust.reports.records import MILLIMETRES
 from adjust.reports.wording import SHORT_NAMES, counted
 from adjust.units import ARCSEC
 
@@ -47,7 +48,6 @@ WALKED = 7
 """Marks of a walk that are named; of a longer one the first ones and the last."""
 NAMED = 3
 """Observations named in one sentence of those that nothing tells apart; check.json names all."""
-MILLIMETRES = 1000.0
 
 
 @dataclass(frozen=True)

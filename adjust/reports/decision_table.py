@@ -17,8 +17,9 @@ from adjust.reports.blunder_words import MOST_ALTERNATIVES, likeliest, off_by, w
 from adjust.reports.publish import publish
 
 HEIGHTS = {"instrument height": "instrument_height", "target height": "target_height"}
-COORDINATES = {"east": ("easting", "longitude"), "north": ("northing", "latitude"), "up": ("height",)}
-HELD = {"east": "plan_control", "north": "plan_control", "up": "height_control"}
+COORDINATES = (("easting", "longitude"), ("northing", "latitude"), ("height",))
+HELD = ("plan_control", "plan_control", "height_control")
+"""Columns of a mark by axis: east, north, up."""
 FREE = "free"
 READINGS = {
     "direction": {"direction", "circle"},
@@ -137,7 +138,7 @@ def _rows(job: Job, blunder: Blunder, suspect: Hypothesis, lines: Mapping[Place,
         if name in _names(job, suspect)
     }
     for source, title in dict.fromkeys((*cells, *proposals)):
-        proposal = proposals.get((source, title), FREE if title in HELD.values() else "")
+        proposal = proposals.get((source, title), FREE if title in HELD else "")
         yield Row(
             source=source,
             column=title,
@@ -159,17 +160,15 @@ def _text(lines: Mapping[Place, Line], source: str, title: str) -> str:
 
 def _names(job: Job, suspect: Hypothesis) -> set[str]:
     """Plain names of the columns that a suspect is a matter of."""
-    observations = job.observations[suspect.rows[0][0]]
     if suspect.nature in HEIGHTS:
         return {HEIGHTS[suspect.nature]}
-    if suspect.nature == "control" or observations.kind == "control":
-        along = suspect.components
-        if suspect.nature != "control":
-            along = (tuple(COORDINATES)[int(observations.component[suspect.rows[0][1][0]])],)  # type: ignore[attr-defined]
-        return {name for each in along for name in (*COORDINATES[each], HELD[each])}
-    if observations.kind == "vector":
+    axes = suspect.given_axes(job)
+    if axes:
+        return {name for axis in axes for name in (*COORDINATES[axis], HELD[axis])}
+    kind = job.observations[suspect.rows[0][0]].kind
+    if kind == "vector":
         return {f"d{component}" for component in suspect.components if component in AXES}
-    return READINGS[observations.kind]
+    return READINGS[kind]
 
 
 def _proposals(blunder: Blunder, suspect: Hypothesis, lines: Mapping[Place, Line]) -> dict[tuple[str, str], str]:

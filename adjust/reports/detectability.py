@@ -7,11 +7,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from adjust.adjustment import Adjustment
+from adjust.observations import KIND_NAMES
 from adjust.quality import LEAST_REDUNDANCY
 from adjust.reports.check_words import by_file
 from adjust.reports.layout import Column, paragraph, table
-from adjust.reports.records import Record, number
-from adjust.reports.wording import ARCSECONDS, MILLIMETRES, NAMES, counted, decimals
+from adjust.reports.records import MILLIMETRES, Record, number
+from adjust.reports.wording import ARCSECONDS, counted, decimals
 from adjust.residuals import Residuals
 
 WORST = 3
@@ -101,4 +102,4 @@ def _cells(kind: Detectability) -> list[str]:
     scale, unit = (MILLIMETRES, "mm") if kind.unit == "m" else (ARCSECONDS, '"')
     sizes = [decimals(None if size is None else size * scale, 2) or "–" for size in (kind.median, kind.largest)]
     counts = [str(kind.observations), str(kind.unchecked)]
-    return [NAMES[kind.kind][1], *counts, *sizes, unit, by_file(kind.worst)]
+    return [KIND_NAMES[kind.kind][1], *counts, *sizes, unit, by_file(kind.worst)]

@@ -12,6 +12,7 @@ from adjust.adjustment import Adjustment
 from adjust.frames import EllipsoidFrame, PlaneFrame
 from adjust.job import Job
 from adjust.network.closures.check import Check
+from adjust.observations import KIND_NAMES
 from adjust.quality import critical_tau, critical_w
 from adjust.reports import listing_marks, listing_observations
 from adjust.reports.blunder_words import blunder_section
@@ -22,7 +23,7 @@ from adjust.reports.reduction_text import listed_reduction
 from adjust.reports.selection import Order
 from adjust.reports.verdict import cautions, digits_left, verdict
 from adjust.reports.weights import component_section
-from adjust.reports.wording import NAMES, counted
+from adjust.reports.wording import counted
 
 if TYPE_CHECKING:
     from adjust.blunders import Findings
@@ -158,7 +159,7 @@ def _observation_words(adjustment: Adjustment) -> str:
             if table.observations.setup is not None
             else ""
         )
-        parts.append(f"{counted(rows, *NAMES[kind])}{setups}")
+        parts.append(f"{counted(rows, *KIND_NAMES[kind])}{setups}")
     return f"{adjustment.solution.observations}: {', '.join(parts)}"
 
 

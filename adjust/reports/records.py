@@ -13,6 +13,8 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.arrays import FloatArray, IntArray
+from adjust.frames import EllipsoidFrame
+from adjust.job import Job
 from adjust.observations import ControlCoordinates, Observations
 from adjust.quality import Ellipse
 from adjust.residuals import Residuals
@@ -30,6 +32,17 @@ ROWS_AT_ONCE = 20_000
 """Rows made from arrays together: enough to spread NumPy's overhead, few enough to spare the memory."""
 
 CONTROL_COMPONENTS = ("easting", "northing", "height")
+
+
+def job_record(job: Job) -> Record:
+    """The job by its name, its frame and its files; `crs` is None in a plane frame."""
+    return {
+        "title": job.title,
+        "frame": job.frame.kind,
+        "crs": job.frame.crs if isinstance(job.frame, EllipsoidFrame) else None,
+        "input_sha256": job.input_sha256,
+        "date": job.date,
+    }
 
 
 def plain(values: FloatArray) -> list[Any]:

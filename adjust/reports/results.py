@@ -8,10 +8,17 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any, TextIO
 
 from adjust.adjustment import Adjustment
-from adjust.frames import EllipsoidFrame
 from adjust.reports.blunder_records import blunder_records
 from adjust.reports.decision_words import decision_records
-from adjust.reports.records import Figures, Record, line_figures, mark_figures, number, observation_figures
+from adjust.reports.records import (
+    Figures,
+    Record,
+    job_record,
+    line_figures,
+    mark_figures,
+    number,
+    observation_figures,
+)
 from adjust.reports.specification import specification_record, specified
 from adjust.reports.weights import component_records, weight_records
 
@@ -42,7 +49,7 @@ def write_results(
     """
     with path.open("w", encoding="utf-8", newline="\n") as file:
         file.write(f'{{\n"schema": {_ENCODER.encode(SCHEMA)},\n')
-        file.write(f'"job": {_ENCODER.encode(job_record(adjustment))},\n')
+        file.write(f'"job": {_ENCODER.encode(job_record(adjustment.job) | {"heights": _heights(adjustment)})},\n')
         file.write(f'"solution": {_ENCODER.encode(solution_record(adjustment))},\n')
         _write_records(file, "marks", mark_figures(adjustment))
         _write_records(file, "observations", observation_figures(adjustment))
@@ -102,19 +109,6 @@ def _texts(column: Any) -> list[str]:
         known = {entry: _ENCODER.encode(entry) for entry in dict.fromkeys(column)}
         return [known[entry] for entry in column]
     return _ENCODER.encode(column)[1:-1].split(", ")
-
-
-def job_record(adjustment: Adjustment) -> Record:
-    """What was adjusted; `crs` is None in a plane frame."""
-    job = adjustment.job
-    return {
-        "title": job.title,
-        "frame": job.frame.kind,
-        "crs": job.frame.crs if isinstance(job.frame, EllipsoidFrame) else None,
-        "input_sha256": job.input_sha256,
-        "date": job.date,
-        "heights": _heights(adjustment),
-    }
 
 
 def _heights(adjustment: Adjustment) -> str | None:

@@ -4,12 +4,8 @@ from __future__ import annotations
 
 import math
 
-from adjust.observations import KIND_NAMES
-from adjust.reports.records import Record
+from adjust.reports.records import MILLIMETRES, Record
 from adjust.units import format_dms
-
-NAMES = KIND_NAMES
-"""Of each kind: one, and many."""
 
 SHORT_NAMES = {
     "slope_distance": "slope",
@@ -24,8 +20,6 @@ _AXES = {"easting": "E", "northing": "N", "height": "H"}
 
 ARCSECONDS = 3600.0
 """In a degree."""
-MILLIMETRES = 1000.0
-"""In a metre."""
 
 
 def decimals(value: float | None, places: int, *, signed: bool = False) -> str:

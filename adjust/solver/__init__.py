@@ -2,8 +2,8 @@
 
 from adjust.solver.analysis import Analysis, analyse
 from adjust.solver.covariance import SelectedCovariance
-from adjust.solver.factor import Factor
+from adjust.solver.factor import Factor, rows_weighted
 from adjust.solver.opinion import SecondOpinion
 from adjust.solver.rank import RankDefect
 
-__all__ = ["Analysis", "Factor", "RankDefect", "SecondOpinion", "SelectedCovariance", "analyse"]
+__all__ = ["Analysis", "Factor", "RankDefect", "SecondOpinion", "SelectedCovariance", "analyse", "rows_weighted"]

@@ -52,9 +52,7 @@ class Factor:
 
     def reweighted(self, weights: FloatArray) -> Factor:
         """The factor of the same system with its rows multiplied by `weights` (rows,). Raises RankDefect."""
-        matrix = self.matrix.copy()
-        matrix.data = matrix.data * np.repeat(weights, np.diff(matrix.indptr))
-        return factorise(self.layout, matrix, self.right_side * weights)
+        return factorise(self.layout, rows_weighted(self.matrix, weights), self.right_side * weights)
 
     def selected_covariance(self, first: IntArray, second: IntArray) -> SelectedCovariance:
         """Entries C[first, second] of C = (AᵀA)⁻¹, and diag(A C Aᵀ).
@@ -97,6 +95,13 @@ class Factor:
     def in_callers_columns(self, inside: FloatArray) -> FloatArray:
         """Values (columns, …) put back from the order of elimination and from the scaling."""
         return (inside[self.layout.tree.place].T * self.scale).T
+
+
+def rows_weighted(matrix: scipy.sparse.csr_array, weights: FloatArray) -> scipy.sparse.csr_array:
+    """A matrix of the same pattern, its rows multiplied by `weights` (rows,)."""
+    weighted = matrix.copy()
+    weighted.data = matrix.data * np.repeat(weights, np.diff(matrix.indptr))
+    return weighted
 
 
 def factorise(layout: Layout, matrix: scipy.sparse.csr_array, right_side: FloatArray) -> Factor:

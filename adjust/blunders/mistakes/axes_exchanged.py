@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import numpy as np
 
-from adjust.blunders.mistakes.control import placed, suspected_axes, written_minus
+from adjust.blunders.mistakes.control import placed, written_minus
 from adjust.blunders.mistakes.interface import Candidates, Remedy
 from adjust.blunders.mistakes.suspect import Suspect
 
@@ -28,7 +28,8 @@ class AxesExchanged:
         given = suspect.job.marks.given[suspect.mark : suspect.mark + 1]
         once = placed(suspect.context, given, pair[0], np.array([second.value]))
         twice = placed(suspect.context, once, pair[1], np.array([first.value]))
-        errors = written_minus(suspect.context, suspect.mark, twice)[:, suspected_axes(suspect.context)]
+        axes = list(suspect.context.hypothesis.given_axes(suspect.job))
+        errors = written_minus(suspect.context, suspect.mark, twice)[:, axes]
         corrections = (first.correction(second.cell.text), second.correction(first.cell.text))
         what, detail = f"{pair[0]} and {pair[1]} exchanged", f"{second.cell.text} and {first.cell.text}"
         return Candidates.listed(errors, [Remedy(what, detail, corrections)]) if np.isfinite(errors).all() else None

@@ -13,22 +13,12 @@ from adjust.frames import EllipsoidFrame
 
 AXES = {"easting": 0, "northing": 1, "longitude": 0, "latitude": 1, "height": 2}
 """The place of each coordinate among those of a frame."""
-ALONG = ("east", "north", "up")
-
-
-def suspected_axes(context: Context) -> list[int]:
-    """The axes (q,) east 0, north 1, up 2 of a suspect among control."""
-    hypothesis = context.hypothesis
-    if hypothesis.nature == "control":
-        return [ALONG.index(component) for component in hypothesis.components]
-    component: int = context.observations.component[context.row]  # type: ignore[attr-defined]
-    return [int(component)]
 
 
 def alternative_coordinates(context: Context, mark: int, name: str) -> Callable[[FloatArray], FloatArray] | None:
     """Errors (k, q) of a mark's control, grid axes, if its coordinate `name` had other values (k,); None where that
     does not move it along a suspected axis."""
-    axes = suspected_axes(context)
+    axes = list(context.hypothesis.given_axes(context.job))
     if AXES[name] not in axes and (name in ("easting", "northing", "height") or not {0, 1} & set(axes)):
         return None
 

@@ -6,7 +6,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from adjust.angles import wrapped
+from adjust.angles import FULL_TURN, wrapped
 from adjust.arrays import FloatArray, IntArray
 from adjust.network.closures.closures import Closures
 from adjust.network.closures.differences import walking_lengths
@@ -15,8 +15,6 @@ from adjust.network.closures.orientation import Orientations
 from adjust.network.closures.ragged import Ragged
 from adjust.network.closures.short_cycles import Cycles, short_cycles
 from adjust.tolerances import Quantity
-
-FULL_TURN = 2.0 * np.pi
 
 
 @dataclass(frozen=True)

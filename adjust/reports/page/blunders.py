@@ -20,13 +20,13 @@ from adjust.reports.blunder_words import (
     what_of,
 )
 from adjust.reports.page.content import Figure
-from adjust.reports.records import Record
-from adjust.reports.wording import decimals
+from adjust.reports.records import MILLIMETRES, Record
+from adjust.reports.wording import ARCSECONDS, decimals
 
 if TYPE_CHECKING:
     from adjust.blunders import Blunder, Findings
 
-SMALL = {"m": (1e3, "mm"), "deg": (3600.0, "″"), "1": (1e6, "ppm")}
+SMALL = {"m": (MILLIMETRES, "mm"), "deg": (ARCSECONDS, "″"), "1": (1e6, "ppm")}
 """By which figures of `results.json` are multiplied to be printed, by their unit."""
 
 

@@ -9,7 +9,7 @@ from scipy.special import ndtr
 
 from adjust.adjustment import Adjustment
 from adjust.arrays import FloatArray
-from adjust.reports.wording import NAMES
+from adjust.observations import KIND_NAMES
 
 WIDTH, HEIGHT = 420.0, 190.0
 """Units of a chart."""
@@ -103,7 +103,7 @@ class Strip:
 def strips(adjustment: Adjustment) -> tuple[Strip, ...]:
     """One strip for each kind."""
     return tuple(
-        _strip(NAMES[table.observations.kind][1], table.redundancy.ravel())
+        _strip(KIND_NAMES[table.observations.kind][1], table.redundancy.ravel())
         for table in adjustment.residuals
         if table.redundancy.size
     )

@@ -9,19 +9,18 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.network.closures.check import Check
+from adjust.observations import KIND_NAMES
 from adjust.quality import critical_tau, critical_w, non_centrality
 from adjust.reports.check_records import check_record
 from adjust.reports.check_words import NAMES as CLOSURES
 from adjust.reports.check_words import check_verdict
-from adjust.reports.records import Record
+from adjust.reports.records import MILLIMETRES, Record
 from adjust.reports.selection import listed_observations
 from adjust.reports.specification import EDITION, Specified, specification_record
 from adjust.reports.verdict import cautions, verdict
 from adjust.reports.weights import component_records, weight_records
 from adjust.reports.wording import (
     ARCSECONDS,
-    MILLIMETRES,
-    NAMES,
     between,
     counted,
     decimals,
@@ -208,7 +207,7 @@ def _suspect(adjustment: Adjustment, record: Record, key: str, shift: float) -> 
     error = dict(record, error=-record["w"] * record["minimal_detectable_bias"] / shift)
     return Suspect(
         source=record["source"],
-        what=what(record) if record["component"] else NAMES[record["kind"]][0],
+        what=what(record) if record["component"] else KIND_NAMES[record["kind"]][0],
         between=between(record),
         marks=tuple(index[record[role]] for role in ("at", "from", "to") if record[role] is not None),
         observed=observed(record),
@@ -251,7 +250,7 @@ def weight_rows(adjustment: Adjustment) -> list[WeightRow]:
             Figure(decimals(record[key], 2) or "–", record[key], f"weights[{place}].{key}")
             for key in ("redundancy", "weighted_square_sum")
         ]
-        rows.append(WeightRow(NAMES[record["kind"]][1], record, tuple(cells), unit))
+        rows.append(WeightRow(KIND_NAMES[record["kind"]][1], record, tuple(cells), unit))
     return rows
 
 

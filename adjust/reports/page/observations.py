@@ -8,11 +8,12 @@ import numpy as np
 
 from adjust.adjustment import Adjustment
 from adjust.arrays import IntArray
+from adjust.observations import KIND_NAMES
 from adjust.reports.page.table import Heading, PageTable
 from adjust.reports.page.tables import MOST_ROWS, fixed, page_table
-from adjust.reports.records import Figures, records, scalar_figures
+from adjust.reports.records import MILLIMETRES, Figures, records, scalar_figures
 from adjust.reports.selection import tested, worst_first
-from adjust.reports.wording import ARCSECONDS, MILLIMETRES, NAMES, between, dms, what
+from adjust.reports.wording import ARCSECONDS, between, dms, what
 from adjust.residuals import Residuals
 
 SECONDS = "″"
@@ -110,4 +111,4 @@ def _texts(table: Residuals, figures: Figures) -> Columns:
 
 def _kinds(figures: Figures) -> list[str]:
     kinds = records({"kind": figures["kind"], "component": figures["component"]})
-    return [what(record) if record["component"] is not None else NAMES[record["kind"]][0] for record in kinds]
+    return [what(record) if record["component"] is not None else KIND_NAMES[record["kind"]][0] for record in kinds]
