@@ -94,7 +94,7 @@ def suspects(adjustment: Adjustment, most: int) -> list[str]:
     lines = [*title("Suspect observations"), *table(columns, cells)]
     lines += paragraph(
         "Off by: observed minus true, if this observation alone is wrong. One blunder makes its neighbours look bad "
-        "too: look into the first, mend it or set its `use` to `no`, and adjust again."
+        "too: look into the first, decide on it with its reason (--decisions), and adjust again."
     )
     return lines + shown_of(len(found), _suspect_scalars(adjustment), "the worst", "residuals.csv")
 
